@@ -91,14 +91,14 @@ type ElementKind int
 
 // The kinds of element.
 const (
-	Resistor      ElementKind = iota // Value in ohm, > 0
-	Link                             // a resistance of 0
-	CurrentSource                    // Value in A, flows along the arrow
-	Drop                             // Value in V, falls along the arrow
-	Cell                             // Value in V, rises along the arrow
-	JunctionPart                     // a part of Shape Junction
-	TransistorPart                   // a part of Shape Transistor
-	Open                             // a resistance still to be chosen (? E24)
+	Resistor       ElementKind = iota // Value in ohm, > 0
+	Link                              // a resistance of 0
+	CurrentSource                     // Value in A, flows along the arrow
+	Drop                              // Value in V, falls along the arrow
+	Cell                              // Value in V, rises along the arrow
+	JunctionPart                      // a part of Shape Junction
+	TransistorPart                    // a part of Shape Transistor
+	Open                              // a resistance still to be chosen (? E24)
 )
 
 // An Element is one designator of the file. A row of n is one Element with n
