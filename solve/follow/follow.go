@@ -291,11 +291,14 @@ func (w *walk) correct(y []float64, plain bool, goal aim) (correction, bool) {
 		if i == 1 && size > limit {
 			c.contraction = size / last
 		}
-		if size <= limit && balanced {
+		// Where rounding makes the moves tremble above the limit they no longer
+		// halve, and there is nothing to gain.
+		trembling := i >= 3 && size <= looseMove && size > last/2
+		if balanced && (size <= limit || trembling) {
 			return c, true
 		}
-		// Newton's method that does not contract has lost its branch. A refined
-		// point may tremble by rounding.
+		// Newton's method that does not contract has lost its branch. Refined
+		// points start beside theirs.
 		if goal == loose && i > 0 && size > last {
 			return c, false
 		}

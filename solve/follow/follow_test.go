@@ -100,8 +100,7 @@ func outcome(t reporter, r Result, want Outcome) {
 
 // cusp is the normal form λ + μ x - x³ of the cusp catastrophe. For μ > 0 it has
 // folds at x = ±sqrt(μ/3), λ = ±2 (μ/3)^(3/2).
-// Source: any text on catastrophes, e.g. R. Seydel, Practical Bifurcation and
-// Stability Analysis, section 2.
+// Source: differentiate; the name is R. Thom's.
 func cusp(mu float64) *system {
 	return scalar(func(x, l float64) (f, fx, fl float64) { return l + mu*x - x*x*x, mu - 3*x*x, 1 })
 }
@@ -172,8 +171,8 @@ func TestNaturalEndsAtFold(t *testing.T) {
 // Bratu's problem u” + λ exp(u) = 0, u(0) = u(1) = 0. Its solutions are
 // u = 2 ln(cosh θ / cosh(θ(1-2x))) with λ = 8 (θ/cosh θ)², so that the fold is
 // at θ tanh θ = 1: λ = 3.513830719125…
-// Source: U. M. Ascher, R. M. M. Mattheij and R. D. Russell, Numerical Solution
-// of Boundary Value Problems for Ordinary Differential Equations, 1988, p. 134.
+// The figure is from memory (it is the customary check of continuation codes);
+// the test derives it anew from the closed form.
 func bratu(cells int) *system {
 	n := cells - 1
 	h2 := 1 / float64(cells*cells)
@@ -230,14 +229,18 @@ func TestBratu(t *testing.T) {
 // Freudenstein and Roth's system from the start (15, -2) by the homotopy
 // F(x) - (1-λ) F(x0): Newton's method fails from there, and the path has folds;
 // the solution is (5, 4).
-// Source: F. Freudenstein and B. Roth, Numerical solution of systems of nonlinear
-// equations, J. ACM 10 (1963) 550-556; the path: W. C. Rheinboldt, Numerical
-// Analysis of Parametrized Nonlinear Equations, 1986.
+// Source, from memory: F. Freudenstein and B. Roth, Numerical solutions of systems
+// of nonlinear equations, J. ACM 10 (1963) 550-556; the path, W. C. Rheinboldt,
+// Numerical Analysis of Parametrized Nonlinear Equations, 1986. That (5, 4) is a
+// solution is checked by inserting it.
 func TestFreudensteinRoth(t *testing.T) {
 	roth := func(x, y float64) (f, g float64) {
 		return x - y*y*y + 5*y*y - 2*y - 13, x + y*y*y + y*y - 14*y - 29
 	}
 	x0 := []float64{15, -2}
+	if f, g := roth(5, 4); f != 0 || g != 0 {
+		t.Fatalf("(5, 4) leaves %g and %g", f, g)
+	}
 	f0, g0 := roth(x0[0], x0[1])
 	p := newSystem(2, 0, 1e-12, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
 		a, b := roth(x[0], x[1])
@@ -262,8 +265,8 @@ func TestFreudensteinRoth(t *testing.T) {
 // Chandrasekhar's H equation, discretised by the midpoint rule. Summing it shows
 // that the mean of H is (2/c)(1 ± sqrt(1-c)) for any number of points, so that it
 // folds at c = 1 with mean 2.
-// Source: C. T. Kelley, Solution of the Chandrasekhar H-equation by Newton's
-// method, J. Math. Phys. 21 (1980) 1625-1628.
+// Source, from memory: C. T. Kelley, Solution of the Chandrasekhar H-equation by
+// Newton's method, J. Math. Phys. 21 (1980) 1625-1628.
 func TestChandrasekhar(t *testing.T) {
 	const n = 24
 	p := newSystem(n, 0, 1e-12, func(h []float64, c float64, f, dl []float64, add func(i, j int, v float64)) {
