@@ -50,7 +50,6 @@ type walk struct {
 	h             float64   // length of the next step
 	y, u          []float64 // the point tried, its tangent
 	probe, uProbe []float64 // the point located inside a step, its tangent
-	reversed      int       // steps in a row that seemed to change branch
 	crossed       bool      // the step tried passes a point where branches cross
 }
 
@@ -110,7 +109,7 @@ func (w *walk) run() Outcome {
 			continue
 		}
 		w.res.Stats.Steps++
-		if w.reversed = 0; w.crossed {
+		if w.crossed {
 			w.res.Stats.BranchPoints++
 		}
 		for _, h := range hits {
@@ -220,20 +219,18 @@ func (w *walk) try() (ratio float64, ok bool) {
 	if !w.opposed(w.u) {
 		return ratio, true
 	}
-	if w.reversed++; w.reversed <= maxReversed && w.h > minReversed {
+	if w.h > closestCrossing {
 		return 2 * worstRatio, true
 	}
 	w.crossed = true
 	return ratio, true
 }
 
-// A step that seems to change branch is shortened to a quarter this many times,
-// to a thousandth, before it is taken for a crossing; it is never made
-// shorter than minReversed on that account.
-const (
-	maxReversed = 5
-	minReversed = 1e-7
-)
+// closestCrossing is the length of a step that may pass a crossing of branches.
+// Branches that miss each other by less are not told from ones that cross; and
+// no closer to a crossing than about this are points corrected, as their error
+// there is that of the balances over the distance.
+const closestCrossing = 1e-5
 
 // opposed reports whether the sense of the walk changed between z and the point
 // linearised last, whose tangent is u. On a regular branch det [J b; tᵀ] keeps
