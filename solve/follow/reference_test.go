@@ -233,6 +233,24 @@ func TestReferenceSupplies(t *testing.T) {
 	}
 }
 
+// The same for the walk in the gains. Without gains a ramp of the supplies has
+// no fold in its way and gives the start.
+func TestReferenceGains(t *testing.T) {
+	for _, r := range references(t) {
+		t.Run(r.ID, func(t *testing.T) {
+			s, _ := r.system(func(_ string, volts, l float64) (float64, float64) { return l * volts, volts }, fixed(0))
+			start := Follow(s, make([]float64, s.Size()), 0, Options{Mode: Natural, Target: 1, Use: FirstPassage})
+			outcome(t, start, Reached)
+			s, index := r.system(func(_ string, volts, _ float64) (float64, float64) { return volts, 0 },
+				func(l float64) (float64, float64) { return l, 1 })
+			// Far beyond real gains, conductances turn negative and nothing is to
+			// be learned.
+			res := Follow(s, start.X, 0, Options{Low: -1, High: 1.2, Target: 1, Use: EveryPassage, MaxSteps: 1000})
+			r.passages(t, res, index)
+		})
+	}
+}
+
 func (r *reference) passages(t *testing.T, res Result, index map[string]int) {
 	t.Helper()
 	if len(res.Targets) == 0 {
