@@ -18,6 +18,7 @@ type system struct {
 	scale  []float64
 	plan   *sparse.Plan
 	values []float64
+	at     []int // positions of the entries (i, j), row by row
 	f, dl  []float64
 	tol    []float64
 	direct *sparse.Factors
@@ -47,6 +48,9 @@ func newSystem(n, band int, tol float64, eval func(x []float64, lambda float64, 
 	}
 	for i := range n {
 		s.tol[i], s.scale[i] = tol, 1
+		for j := range n {
+			s.at = append(s.at, plan.Index(i, j))
+		}
 	}
 	return s
 }
@@ -63,7 +67,7 @@ func (s *system) Size() int         { return len(s.f) }
 func (s *system) XScale() []float64 { return s.scale }
 func (s *system) Linearise(x []float64, lambda float64) bool {
 	clear(s.values)
-	s.eval(x, lambda, s.f, s.dl, func(i, j int, v float64) { s.values[s.plan.Index(i, j)] += v })
+	s.eval(x, lambda, s.f, s.dl, func(i, j int, v float64) { s.values[s.at[i*len(s.f)+j]] += v })
 	s.used = s.direct
 	if s.used.Factor(s.values) {
 		return true
