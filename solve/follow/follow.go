@@ -53,8 +53,8 @@ type walk struct {
 	crossed       bool      // the step tried passes a point where branches cross
 }
 
-// Follow walks along a branch of p from the solution near x0 at lambda0, which
-// it does not modify.
+// Follow walks along a branch of p from the solution near x0 at lambda0; x0 is
+// not modified. The start must not be a fold: λ must be able to move.
 func Follow(p Problem, x0 []float64, lambda0 float64, o Options) Result {
 	o.complete(lambda0)
 	n := p.Size()
@@ -200,15 +200,15 @@ func (w *walk) try() (ratio float64, ok bool) {
 	if w.o.Mode == Natural {
 		w.y[w.n] = w.snap(w.y[w.n])
 	}
-	c, ok := w.correct(w.y, w.o.Mode == Natural, loose)
+	contraction, ok := w.correct(w.y, w.o.Mode == Natural, loose)
 	if !ok || !w.tangent(w.u) {
 		return 1, false
 	}
 	distance := 0.0
-	for i := range w.y {
-		distance = max(distance, math.Abs(w.y[i]-w.z[i]-w.h*w.t[i])/w.scale[i])
+	for i, s := range w.scale {
+		distance = max(distance, math.Abs(w.y[i]-w.z[i]-w.h*w.t[i])/s)
 	}
-	ratio = math.Sqrt(max(distance/w.o.Error, c.contraction/nominalContraction))
+	ratio = math.Sqrt(max(distance/w.o.Error, contraction/nominalContraction))
 	ratio = max(ratio, w.angle(w.t, w.u)/nominalAngle)
 	if ratio > worstRatio {
 		return ratio, true
@@ -246,39 +246,34 @@ func (w *walk) opposed(u []float64) bool {
 // at the same double.
 const flat = 1e-6
 
-// A correction says what Newton's method did.
-type correction struct {
-	contraction float64 // second move over first
-}
-
-// An aim is how well a point is to be corrected.
-type aim int
+// A goal is how well a point is to be corrected.
+type goal int
 
 const (
-	loose   aim = iota // well enough to walk on
+	loose   goal = iota // well enough to walk on
 	tight              // to rounding
 	settled            // to rounding, and all balances are met
 )
 
 // correct moves y to the branch within the plane through y of the border, or at
-// its λ if plain.
-func (w *walk) correct(y []float64, plain bool, goal aim) (correction, bool) {
-	var c correction
+// its λ if plain, by Newton's method. contraction is the size of its second move
+// over that of the first.
+func (w *walk) correct(y []float64, plain bool, g goal) (contraction float64, ok bool) {
 	limit, count := tightMove, tightCorrections
-	if goal == loose {
+	if g == loose {
 		limit, count = looseMove, looseCorrections
 	}
 	last := 0.0
 	for i := range count {
 		w.res.Stats.Corrections++
 		if !w.p.Linearise(y[:w.n], y[w.n]) || !w.sys.prepare(w.border, plain) {
-			return c, false
+			return contraction, false
 		}
 		f, tol := w.p.Residual()
-		balanced := goal != settled || within(f, tol)
+		balanced := g != settled || within(f, tol)
 		move, ok := w.sys.solve(f, -1, 0)
 		if !ok {
-			return c, false
+			return contraction, false
 		}
 		size := 0.0
 		for j, m := range move {
@@ -286,22 +281,22 @@ func (w *walk) correct(y []float64, plain bool, goal aim) (correction, bool) {
 			size = max(size, math.Abs(m)/w.scale[j])
 		}
 		if i == 1 && size > limit {
-			c.contraction = size / last
+			contraction = size / last
 		}
 		// Where rounding makes the moves tremble above the limit they no longer
 		// halve, and there is nothing to gain.
 		trembling := i >= 3 && size <= looseMove && size > last/2
 		if balanced && (size <= limit || trembling) {
-			return c, true
+			return contraction, true
 		}
 		// Newton's method that does not contract has lost its branch. Refined
 		// points start beside theirs.
-		if goal == loose && i > 0 && size > last {
-			return c, false
+		if g == loose && i > 0 && size > last {
+			return contraction, false
 		}
 		last = size
 	}
-	return c, false
+	return contraction, false
 }
 
 // tangent stores the unit tangent at the point corrected last, in the sense of

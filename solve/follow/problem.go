@@ -100,8 +100,10 @@ type Options struct {
 	Error float64
 	// LambdaScale is a typical size of λ; 0 means 1.
 	LambdaScale float64
-	// OnPoint, where set, is shown each point of the walk in order. It must not
-	// keep x. Where it returns false the walk ends.
+	// OnPoint, where set, is shown each point of the walk in order, the first
+	// and the last included. It must not keep x. Ordinary points are within about
+	// 1e-6 scales of the branch, and mostly much nearer. Where it returns false
+	// the walk ends.
 	OnPoint func(x []float64, lambda float64) (goOn bool)
 }
 
@@ -180,7 +182,9 @@ type Crossing struct {
 // A Result says how a walk went.
 type Result struct {
 	Outcome Outcome
-	Point   // the last point
+	// Point is the last one: refined if the walk ended at something it looked
+	// for, otherwise an ordinary point.
+	Point
 	// Targets are the passages through Options.Target, in order; with
 	// FirstPassage one, the last point.
 	Targets   []Point
