@@ -251,8 +251,8 @@ type goal int
 
 const (
 	loose   goal = iota // well enough to walk on
-	tight              // to rounding
-	settled            // to rounding, and all balances are met
+	tight               // to rounding
+	settled             // to rounding, and all balances are met
 )
 
 // correct moves y to the branch within the plane through y of the border, or at
