@@ -22,7 +22,7 @@ type binder struct {
 
 // deepestExpr bounds the recursion over a tree. A sum of that many terms is no
 // deeper; nothing written by hand is.
-const deepestExpr = 10000
+const deepestExpr = 1000
 
 // exponentLimit bounds the powers of a unit, which are held in eight bits.
 const exponentLimit = 100
@@ -292,7 +292,7 @@ func (r *resolver) slotNamed(s *scope, w syntax.Word) (SlotID, bool) {
 	}
 	t := r.find(s, w)
 	if t == nil {
-		r.unknown(w, s.near(aGiven, aRail, anElement), "there is no value %s", w.Text)
+		r.unknown(w, s.nearer(aGiven, aRail, anElement), "there is no value %s", w.Text)
 		return None, false
 	}
 	if t.sort == aNode || t.sort == aPart {

@@ -42,6 +42,14 @@ func (r *resolver) elementValue(l *laid) {
 	}
 }
 
+// partWord is the word that may name an element's part.
+func (l *laid) partWord() syntax.Word {
+	if l.place != nil {
+		return l.place.Part
+	}
+	return l.syn.Ref
+}
+
 // elementNamed is an element whose second word is a name: a part or a given
 // value, or else a resistance code that looks like a name (R22).
 func (r *resolver) elementNamed(l *laid, ref syntax.Word) {
@@ -68,7 +76,7 @@ func (r *resolver) elementNamed(l *laid, ref syntax.Word) {
 		r.errorf("wrong-place", ref.Span, "", "%s is %s; a part, a given value or a number says what %s is", ref.Text, t.sort, l.name)
 		r.broken = true
 	default:
-		r.unknown(ref, r.local.near(aPart, aGiven), "there is no part or given value %s", ref.Text)
+		r.unknown(ref, r.local.nearer(aPart, aGiven), "there is no part or given value %s", ref.Text)
 		r.broken = true
 	}
 }
@@ -157,7 +165,7 @@ func (r *resolver) openResistance(l *laid) {
 func (r *resolver) elementPart(l *laid, ref syntax.Word) {
 	t := r.find(r.local, ref)
 	if t == nil {
-		r.unknown(ref, r.local.near(aPart), "there is no part %s", ref.Text)
+		r.unknown(ref, r.local.nearer(aPart), "there is no part %s", ref.Text)
 		r.broken = true
 		return
 	}
@@ -373,7 +381,7 @@ func (r *resolver) besides() {
 			t := r.local.names[w.Text]
 			switch {
 			case t == nil || t.sort != anElement:
-				r.unknown(*w, r.local.near(anElement), "there is no element %s", w.Text)
+				r.unknown(*w, r.local.nearer(anElement), "there is no element %s", w.Text)
 			case t.element == nil || !t.element.sound:
 			case t == l.thing:
 				r.errorf("circle", w.Span, "", "%s stands beside itself", e.Name)

@@ -61,12 +61,13 @@ type scope struct {
 	// taken are the parts and given values that `use` brought in; a name of
 	// names hides them. A name brought in twice is refused only where it is used.
 	taken map[string][]*thing
-	from  string // what the text is called, for messages
-	local bool   // the circuit's own text
+	made  map[string]NodeID // nodes that no word names
+	from  string            // what the text is called, for messages
+	local bool              // the circuit's own text
 }
 
 func newScope(from string, local bool) *scope {
-	return &scope{names: map[string]*thing{}, taken: map[string][]*thing{}, from: from, local: local}
+	return &scope{names: map[string]*thing{}, taken: map[string][]*thing{}, made: map[string]NodeID{}, from: from, local: local}
 }
 
 // take brings a part or given value in; the same one by two ways is one.
@@ -135,6 +136,11 @@ func (s *scope) near(sorts ...sortOf) []string {
 		}
 	}
 	return out
+}
+
+// nearer is near put off until it is needed.
+func (s *scope) nearer(sorts ...sortOf) func() []string {
+	return func() []string { return s.near(sorts...) }
 }
 
 // reserved are the words that nothing may be called; partWords those that a part
@@ -233,6 +239,10 @@ func (r *resolver) node(w syntax.Word) NodeID {
 }
 
 func (r *resolver) addNode(n Node) NodeID {
+	id := NodeID(len(r.c.Nodes))
 	r.c.Nodes = append(r.c.Nodes, n)
-	return NodeID(len(r.c.Nodes) - 1)
+	if n.Made {
+		r.local.made[n.Name] = id
+	}
+	return id
 }

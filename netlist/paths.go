@@ -1,6 +1,7 @@
 package netlist
 
 import (
+	"slices"
 	"strconv"
 
 	"biaswright/netlist/diag"
@@ -206,6 +207,7 @@ func (r *resolver) nodesInARow(segments []syntax.Segment, i, j int, skip map[int
 		k := suspects[n]
 		skip[k] = true
 		w := segments[k].Node
+		r.forgotten[w.Text] = true
 		if n+1 < len(suspects) && readsAsQuantity(segments[suspects[n+1]].Node.Text) {
 			value := segments[suspects[n+1]].Node
 			skip[suspects[n+1]] = true
@@ -320,14 +322,10 @@ func (r *resolver) pins(p *syntax.Place, kind *Kind, have map[string]NodeID, wan
 	}
 	hint := p.Name.Text + " " + p.Part.Text + usage
 	for i := range p.Pins {
-		key := p.Pins[i].Key
-		known := false
-		for _, w := range want {
-			known = known || w == key.Text
-		}
-		if !known {
+		if key := p.Pins[i].Key; !slices.Contains(want, key.Text) {
 			r.errorf("pins", key.Span, hint, "%s is %s, which has no pin %s", p.Name.Text, article(kind.Name), key.Text)
 			r.broken = true
+			return // the pins it should have are missing then
 		}
 	}
 	for _, w := range want {
@@ -347,6 +345,8 @@ func secondWordHint(u quantity.Unit, text string) string {
 		return "a rating stands behind the resistance: 47 " + text
 	case quantity.Siemens:
 		return "write its resistance"
+	case quantity.One:
+		return "a given value has the unit that it is written with: 1 kohm"
 	}
 	return "an element is given in ohms or amps, or by a part"
 }

@@ -100,11 +100,11 @@ func (c *Circuit) refOf(s *scope, q *syntax.QuantityExpr) (Ref, *diag.Diagnostic
 	default:
 		t := s.names[name]
 		if t == nil {
-			if id, ok := c.madeNode(name); ok {
+			if id, ok := s.made[name]; ok {
 				ref.Subject, ref.Index, symbols, is = OfNode, int(id), nodeSymbols, "a node"
 				break
 			}
-			return ref, c.noSubject(s, q)
+			return ref, refusal("unknown-name", q.Subject.Span, "", "there is no node, element or rail called "+name)
 		}
 		switch t.sort {
 		case aNode:
@@ -143,29 +143,13 @@ func (c *Circuit) member(ref Ref, q *syntax.QuantityExpr) *diag.Diagnostic {
 	return nil
 }
 
-// madeNode finds a node that no word of the text names.
-func (c *Circuit) madeNode(name string) (NodeID, bool) {
-	if !strings.Contains(name, ":") {
-		return None, false
+// subjects lists what quantities may be of, for the spelling helper.
+func (s *scope) subjects(like string) []string {
+	names := s.near(aNode, aRail, anElement)
+	if strings.Contains(like, ":") {
+		names = append(names, sortedKeys(s.made)...)
 	}
-	for i := range c.Nodes {
-		if c.Nodes[i].Made && c.Nodes[i].Name == name {
-			return NodeID(i), true
-		}
-	}
-	return None, false
-}
-
-func (c *Circuit) noSubject(s *scope, q *syntax.QuantityExpr) *diag.Diagnostic {
-	candidates := s.near(aNode, aRail, anElement)
-	if strings.Contains(q.Subject.Text, ":") {
-		for i := range c.Nodes {
-			if c.Nodes[i].Made {
-				candidates = append(candidates, c.Nodes[i].Name)
-			}
-		}
-	}
-	return refusal("unknown-name", q.Subject.Span, didYouMean(q.Subject.Text, candidates), "there is no node, element or rail called "+q.Subject.Text)
+	return names
 }
 
 func refusal(code string, at diag.Span, hint, message string) *diag.Diagnostic {
@@ -185,8 +169,10 @@ func (r *resolver) quantityRef(q *syntax.QuantityExpr) (Ref, bool) {
 	if d == nil {
 		return ref, true
 	}
-	if d.Code != "unknown-name" || !r.partial {
-		r.diags = append(r.diags, *d)
+	if d.Code == "unknown-name" {
+		r.unknown(q.Subject, func() []string { return r.local.subjects(q.Subject.Text) }, "%s", d.Message)
+		return ref, false
 	}
+	r.diags = append(r.diags, *d)
 	return ref, false
 }

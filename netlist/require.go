@@ -413,7 +413,7 @@ func (r *resolver) assume(item *syntax.Param, text string) {
 func (r *resolver) assumedPart(item *syntax.Param, ideal idealisation) (int, bool) {
 	t := r.find(r.local, *item.Of)
 	if t == nil || t.sort != aPart {
-		r.unknown(*item.Of, r.local.near(aPart), "there is no part %s", item.Of.Text)
+		r.unknown(*item.Of, r.local.nearer(aPart), "there is no part %s", item.Of.Text)
 		return None, false
 	}
 	at, ok := r.partOf(t)
@@ -455,7 +455,7 @@ func (r *resolver) elementNamedBy(w syntax.Word) (*thing, bool) {
 	t := r.local.names[w.Text]
 	switch {
 	case t == nil:
-		r.unknown(w, r.local.near(anElement), "there is no element %s", w.Text)
+		r.unknown(w, r.local.nearer(anElement), "there is no element %s", w.Text)
 		return nil, false
 	case t.sort != anElement:
 		d := r.errorf("wrong-place", w.Span, "", "%s is %s, not an element", w.Text, t.sort)

@@ -48,6 +48,9 @@ type resolver struct {
 	// partial tells that the tree lacks statements that did not parse: what may
 	// be missing for that reason is not complained of.
 	partial bool
+	hints   int // given for unknown names
+	// forgotten are words that stand as nodes and must be elements.
+	forgotten map[string]bool
 	// partsOnly asks for the parts and given values alone.
 	partsOnly bool
 }
@@ -90,12 +93,13 @@ func ReadParts(name string, text []byte, cat *Catalogue, src Source) (*Circuit, 
 
 func newResolver(f *syntax.File, cat *Catalogue, lib *library) *resolver {
 	return &resolver{
-		c:       &Circuit{File: f.Name, Ambient: None},
-		cat:     cat,
-		library: lib,
-		tree:    f,
-		local:   newScope(f.Name, true),
-		scopes:  map[string]*scope{},
+		c:         &Circuit{File: f.Name, Ambient: None},
+		cat:       cat,
+		library:   lib,
+		tree:      f,
+		local:     newScope(f.Name, true),
+		scopes:    map[string]*scope{},
+		forgotten: map[string]bool{},
 	}
 }
 
@@ -122,6 +126,7 @@ func (r *resolver) run() (*Circuit, diag.List) {
 }
 
 func (r *resolver) finish() (*Circuit, diag.List) {
+	r.diags = r.diags.Unique()
 	inOrder(r.diags, r.c.File)
 	if r.diags.HasErrors() {
 		return nil, r.diags
@@ -153,12 +158,20 @@ func (r *resolver) errorf(code string, at diag.Span, hint, format string, args .
 
 // unknown says that a name is not known, with the nearest one that is. Where
 // statements did not parse, the name may well stand in one of them.
-func (r *resolver) unknown(w syntax.Word, candidates []string, format string, args ...any) {
+func (r *resolver) unknown(w syntax.Word, candidates func() []string, format string, args ...any) {
+	const mostHints = 50 // to compare every name with every unknown one takes long in a large file
+	if r.forgotten[w.Text] {
+		return // an element without a value, told of already
+	}
 	if r.partial {
 		r.broken = true
 		return
 	}
-	r.errorf("unknown-name", w.Span, didYouMean(w.Text, candidates), format, args...)
+	hint := ""
+	if r.hints++; r.hints <= mostHints {
+		hint = didYouMean(w.Text, candidates())
+	}
+	r.errorf("unknown-name", w.Span, hint, format, args...)
 }
 
 func (r *resolver) warnf(code string, at diag.Span, hint, format string, args ...any) {
@@ -258,10 +271,26 @@ func (r *resolver) values() {
 			r.partOf(t)
 		}
 	}
+	r.makeRoom()
 	for i := range r.laid {
 		r.element(r.laid[i])
 	}
 	r.besides()
+}
+
+// makeRoom grows the tables of slots once for all elements: most slots are the
+// elements' own parameters.
+func (r *resolver) makeRoom() {
+	const ofItsOwn = 2 // a part's size; a resistor's value and rating
+	more := 0
+	for _, l := range r.laid {
+		more += ofItsOwn
+		if kind, ok := r.kindOf(l.partWord()); ok {
+			more += len(kind.Params)
+		}
+	}
+	p := &r.c.priv
+	r.c.Slots, p.rules, p.followers = slices.Grow(r.c.Slots, more), slices.Grow(p.rules, more), slices.Grow(p.followers, more)
 }
 
 // unused warns of parts, given values and rails that nothing uses. What `use`

@@ -490,10 +490,14 @@ func (c *Circuit) ParseExpr(text string) (*Expr, diag.List) {
 				return Ref{}, false
 			}
 			ref, d := c.refOf(c.priv.scope, q)
-			if d != nil {
-				diags = append(diags, *d)
+			if d == nil {
+				return ref, true
 			}
-			return ref, d == nil
+			if d.Code == "unknown-name" {
+				d.Hint = didYouMean(q.Subject.Text, c.priv.scope.subjects(q.Subject.Text))
+			}
+			diags = append(diags, *d)
+			return ref, false
 		},
 	}
 	e, ok := b.bind(x)

@@ -104,8 +104,15 @@ func (c *Circuit) settle() {
 		values := c.Values()
 		c.Propagate(values)
 		for i := range c.priv.followers {
-			id := c.priv.followers[i].slot
-			c.Slots[id].Value = values[id]
+			f := &c.priv.followers[i]
+			s := &c.Slots[f.slot]
+			s.Value = values[f.slot]
+			if f.expr == nil {
+				s.Stated = c.Slots[f.from].Stated
+			}
+			if f.expr == nil && math.IsNaN(s.Value) { // a rival has come into force
+				s.Bounds = Bounds{}
+			}
 		}
 	}
 	for i := range c.Slots {

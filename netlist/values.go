@@ -17,7 +17,7 @@ const zeroKelvin = -273.15
 
 // deepest is how many values may stand behind each other, each defined by the
 // next: far more than any design has, and few enough for the stack.
-const deepest = 1000
+const deepest = 200
 
 func (r *resolver) newSlot(s Slot, keep rule) SlotID {
 	c := r.c
@@ -173,7 +173,7 @@ func (r *resolver) givenNamed(w syntax.Word, home *scope) (SlotID, bool) {
 	t := r.find(home, w)
 	switch {
 	case t == nil:
-		r.unknown(w, home.near(aGiven), "there is no given value %s", w.Text)
+		r.unknown(w, home.nearer(aGiven), "there is no given value %s", w.Text)
 		return None, false
 	case t.sort != aGiven:
 		d := r.errorf("wrong-place", w.Span, "", "%s is %s; a number or a given value belongs here", w.Text, t.sort)
@@ -186,21 +186,24 @@ func (r *resolver) givenNamed(w syntax.Word, home *scope) (SlotID, bool) {
 
 // number checks a literal against the unit and the sign that are wanted.
 func (r *resolver) number(l *syntax.Literal, want quantity.Unit, keep rule, what string) (float64, bool) {
-	switch {
-	case l.Infinite && !keep.infinite:
-		r.errorf("sign", l.Span, "", "%s cannot be infinite", what)
-		return math.NaN(), false
-	case l.Infinite:
-		return l.Value, true
-	case l.Unit != want:
+	if l.Infinite {
+		if !keep.infinite {
+			r.errorf("sign", l.Span, "", "%s cannot be infinite", what)
+		}
+		return l.Value, keep.infinite
+	}
+	value := l.Value
+	if ohms, ok := asOhms(l); ok && want == quantity.Ohm && !l.Bare {
+		value = ohms
+	} else if l.Unit != want || l.Bare && want != quantity.One {
 		r.errorf("unit", l.Span, unitHint(l, want), "%s", unitMessage(l, want, what))
 		return math.NaN(), false
 	}
-	if says := keep.breach(want, l.Value); says != "" {
+	if says := keep.breach(want, value); says != "" {
 		r.errorf("sign", l.Span, "", "%s %s", what, says)
 		return math.NaN(), false
 	}
-	return l.Value, true
+	return value, true
 }
 
 // unitMessage says that a literal has the wrong unit, or none.
@@ -265,9 +268,12 @@ func (r *resolver) bounds(id SlotID, b *syntax.Bounds, what string) bool {
 		out.Relative = b.Relative.Value
 		out.Low, out.High = ends(s.Value, out.Relative)
 	case b.Low != nil && b.High != nil:
-		low, okLow := r.bound(b.Low, s.Unit, "the lower end of "+what)
-		high, okHigh := r.bound(b.High, s.Unit, "the upper end of "+what)
-		if !okLow || !okHigh {
+		low, ok := r.bound(b.Low, s.Unit, "the lower end of "+what)
+		if !ok {
+			return false // what is wrong with one end is so with the other
+		}
+		high, ok := r.bound(b.High, s.Unit, "the upper end of "+what)
+		if !ok {
 			return false
 		}
 		if low > high {
