@@ -18,7 +18,7 @@ type system struct {
 	scale  []float64
 	plan   *sparse.Plan
 	values []float64
-	at     []int // positions of the entries (i, j), row by row
+	at     []int // positions of the entries in the order in which eval adds them
 	f, dl  []float64
 	tol    []float64
 	direct *sparse.Factors
@@ -26,17 +26,12 @@ type system struct {
 	used   sparse.Solver
 }
 
-// newSystem makes a system of order n; band is the half width of its Jacobian,
-// 0 for a full one.
-func newSystem(n, band int, tol float64, eval func(x []float64, lambda float64, f, dl []float64, add func(i, j int, v float64))) *system {
+// newSystem makes a system of order n. Its pattern is what eval adds.
+func newSystem(n int, tol float64, eval func(x []float64, lambda float64, f, dl []float64, add func(i, j int, v float64))) *system {
 	var entries []sparse.Entry
-	for i := range n {
-		for j := range n {
-			if band == 0 || max(i-j, j-i) <= band {
-				entries = append(entries, sparse.Entry{Row: i, Col: j})
-			}
-		}
-	}
+	eval(make([]float64, n), 0, make([]float64, n), make([]float64, n), func(i, j int, _ float64) {
+		entries = append(entries, sparse.Entry{Row: i, Col: j})
+	})
 	plan, err := sparse.Analyse(n, entries)
 	if err != nil {
 		panic(err)
@@ -48,15 +43,15 @@ func newSystem(n, band int, tol float64, eval func(x []float64, lambda float64, 
 	}
 	for i := range n {
 		s.tol[i], s.scale[i] = tol, 1
-		for j := range n {
-			s.at = append(s.at, plan.Index(i, j))
-		}
+	}
+	for _, e := range entries {
+		s.at = append(s.at, plan.Index(e.Row, e.Col))
 	}
 	return s
 }
 
 func scalar(eval func(x, lambda float64) (f, fx, fl float64)) *system {
-	return newSystem(1, 0, 1e-13, func(x []float64, lambda float64, f, dl []float64, add func(i, j int, v float64)) {
+	return newSystem(1, 1e-13, func(x []float64, lambda float64, f, dl []float64, add func(i, j int, v float64)) {
 		var fx float64
 		f[0], fx, dl[0] = eval(x[0], lambda)
 		add(0, 0, fx)
@@ -67,7 +62,11 @@ func (s *system) Size() int         { return len(s.f) }
 func (s *system) XScale() []float64 { return s.scale }
 func (s *system) Linearise(x []float64, lambda float64) bool {
 	clear(s.values)
-	s.eval(x, lambda, s.f, s.dl, func(i, j int, v float64) { s.values[s.at[i*len(s.f)+j]] += v })
+	next := 0
+	s.eval(x, lambda, s.f, s.dl, func(_, _ int, v float64) {
+		s.values[s.at[next]] += v
+		next++
+	})
 	s.used = s.direct
 	if s.used.Factor(s.values) {
 		return true
@@ -181,7 +180,7 @@ func bratu(cells int) *system {
 	n := cells - 1
 	h2 := 1 / float64(cells*cells)
 	// Numerov's scheme, of fourth order: u₋ - 2u + u₊ + h²/12 (g₋ + 10 g + g₊) = 0.
-	return newSystem(n, 1, 1e-13, func(u []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
+	return newSystem(n, 1e-13, func(u []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
 		at := func(i int) float64 {
 			if i < 0 || i >= n {
 				return 0
@@ -246,7 +245,7 @@ func TestFreudensteinRoth(t *testing.T) {
 		t.Fatalf("(5, 4) leaves %g and %g", f, g)
 	}
 	f0, g0 := roth(x0[0], x0[1])
-	p := newSystem(2, 0, 1e-12, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
+	p := newSystem(2, 1e-12, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
 		a, b := roth(x[0], x[1])
 		f[0], f[1] = a-(1-l)*f0, b-(1-l)*g0
 		dl[0], dl[1] = f0, g0
@@ -273,7 +272,7 @@ func TestFreudensteinRoth(t *testing.T) {
 // Newton's method, J. Math. Phys. 21 (1980) 1625-1628.
 func TestChandrasekhar(t *testing.T) {
 	const n = 24
-	p := newSystem(n, 0, 1e-12, func(h []float64, c float64, f, dl []float64, add func(i, j int, v float64)) {
+	p := newSystem(n, 1e-12, func(h []float64, c float64, f, dl []float64, add func(i, j int, v float64)) {
 		for i := range n {
 			mu := float64(i) + 0.5
 			sum := 0.0
@@ -535,7 +534,7 @@ func TestBorderedNearSingular(t *testing.T) {
 		}
 		d.SetDiag(n-1, gap)
 		j.Product(q, d, rr.T())
-		p := newSystem(n, 0, 1, func(_ []float64, _ float64, _, dl []float64, add func(i, k int, v float64)) {
+		p := newSystem(n, 1, func(_ []float64, _ float64, _, dl []float64, add func(i, k int, v float64)) {
 			for i := range n {
 				dl[i] = q.At(i, n-1) + 0.1*rnd.NormFloat64()
 				for k := range n {

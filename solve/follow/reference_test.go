@@ -105,7 +105,7 @@ func (r *reference) system(source func(name string, volts, l float64) (v, dv flo
 	var s *system
 	largest := make([]float64, n)
 	rounding := make([]float64, n)
-	s = newSystem(n, 0, 0, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
+	s = newSystem(n, 0, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
 		clear(f)
 		clear(dl)
 		clear(largest)
@@ -190,6 +190,9 @@ func (r *reference) system(source func(name string, volts, l float64) (v, dv flo
 					}
 				}
 			}
+		}
+		if s == nil {
+			return // asked for the pattern
 		}
 		for i := range s.tol {
 			s.tol[i] = 1e-12*largest[i] + 8*epsilon*rounding[i]

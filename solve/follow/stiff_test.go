@@ -21,7 +21,7 @@ func regenerative() *system {
 		e := math.Exp(80)
 		return e * (1 + v/vt - 80), e / vt
 	}
-	p := newSystem(4, 0, 1e-14, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
+	p := newSystem(4, 1e-14, func(x []float64, l float64, f, dl []float64, add func(i, j int, v float64)) {
 		clear(f)
 		clear(dl)
 		resist := func(a, b int, va, vb, g float64) {
