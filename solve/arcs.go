@@ -1,0 +1,63 @@
+package solve
+
+import (
+	"fmt"
+
+	"biaswright/solve/follow"
+	"biaswright/solve/mna"
+	"biaswright/solve/newton"
+)
+
+// An arc may run past the real circuit, at 1, and fold back to it. Supplies are
+// followed to twice their size both ways. Gains much above 1 make conductances
+// negative, where branches have no end: they are followed a little beyond.
+const (
+	sourceHigh, sourceLow = 2, -2
+	gainHigh, gainLow     = 1.2, -1
+	arcSteps              = 3000 // a few dozen junctions need some hundred
+)
+
+// gainArc follows the circuit from gains of zero, where it has one point, to its
+// real gains, through folds, and collects every passage.
+func (l *ladder) gainArc() (int, string) {
+	x := l.zero()
+	l.s.SetRamp(mna.Ramp{Source: 1, Gain: 0})
+	l.s.Restart()
+	r := l.iterate(x, newton.Options{})
+	if r.Outcome != newton.Converged {
+		x = l.zero()
+		l.s.From(x)
+		again := l.iterate(x, newton.Options{MaxSteps: 300, Damped: true})
+		again.Steps += r.Steps
+		if r = again; r.Outcome != newton.Converged {
+			l.s.SetRamp(mna.Full)
+			return r.Steps, "without gains it " + r.Outcome.String()
+		}
+	}
+	return l.arc(l.s.Gains(), x, gainLow, gainHigh, r.Steps)
+}
+
+// supplyArc follows the circuit from no supply, where every voltage is 0, to its
+// real supplies, through folds, and collects every passage.
+func (l *ladder) supplyArc() (int, string) {
+	return l.arc(l.s.Sources(), l.zero(), sourceLow, sourceHigh, 0)
+}
+
+func (l *ladder) arc(f *mna.Family, x []float64, low, high float64, before int) (steps int, ended string) {
+	w := follow.Follow(f, x, 0, follow.Options{
+		Mode: follow.ArcLength, Target: 1, Use: follow.EveryPassage,
+		Low: low, High: high, MaxSteps: arcSteps,
+	})
+	steps = before + w.Stats.Corrections
+	l.tracef("  the walk %s at %.4g: %d steps, %d folds, %d passages", w.Outcome, w.Lambda, w.Stats.Steps, len(w.Folds), len(w.Targets))
+	l.s.SetRamp(mna.Full)
+	if len(w.Targets) == 0 {
+		return steps, fmt.Sprintf("the walk %s at %.3g of the way", w.Outcome, w.Lambda)
+	}
+	for _, p := range w.Targets {
+		at := append([]float64(nil), p.X...)
+		l.s.From(at)
+		steps, ended = l.land(at, steps, newton.Options{})
+	}
+	return steps, ended
+}

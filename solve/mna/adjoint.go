@@ -1,0 +1,185 @@
+package mna
+
+import (
+	"errors"
+	"math"
+
+	"biaswright/devices"
+	"biaswright/netlist"
+)
+
+// Sensitivity gives an expression's value at the state and its derivative with
+// respect to every slot, in the expression's unit over the slot's, by one
+// solution with the transposed Jacobian (the adjoint; S. W. Director and R. A.
+// Rohrer, IEEE Trans. Circuit Theory 16, 1969). Followers are chained to what
+// they follow. The error says why there is none.
+//
+// With L the adjoint (J^T L = dQ/dx), dQ/dp = dQ/dp|x - L·dF/dp: every device's
+// terminal current therefore enters with the weight that Q gives it, less the
+// adjoint of the balance it flows into, and one pass over the devices collects
+// all derivatives.
+func (st *State) Sensitivity(q *netlist.Expr) (value float64, d []float64, err error) {
+	s := st.s
+	seed := s.newSeed()
+	ok := true
+	value, found := q.Grad(st,
+		func(id netlist.SlotID, w float64) { seed.slot[id] += w },
+		func(r netlist.Ref, w float64) {
+			if _, has := st.measure(r, seed, w); !has {
+				ok = false
+			}
+		})
+	if !found || !ok {
+		return math.NaN(), nil, errors.New(q.Text + " has no number here")
+	}
+	adjoint, err := st.adjoint(seed)
+	if err != nil {
+		return value, nil, err
+	}
+	d = seed.slot
+	offsets := append([]float64(nil), seed.v...)
+	var r devices.Response
+	for i := range s.devices {
+		dev := &s.devices[i]
+		w := seed.i[i]
+		for j := 0; j < dev.terminals(); j++ {
+			w[j] -= adjoint[s.row[dev.node[j]]]
+		}
+		s.collect(st, i, w, &r, offsets, d)
+	}
+	// An offset moves its node and all nodes behind it.
+	s.forest.behind(offsets)
+	for _, b := range s.forest.branches {
+		if b.slot != netlist.None {
+			d[b.slot] += b.rise * offsets[b.child]
+		}
+	}
+	s.circuit.ChainAt(s.values, d)
+	return value, d, nil
+}
+
+// adjoint solves J^T L = dQ/dx; the entry behind the last, for known rows, is 0.
+func (st *State) adjoint(seed *Seed) ([]float64, error) {
+	s := st.s
+	// Weights on ideal branches are weights on the currents of the nodes behind.
+	s.forest.spread(seed.branch)
+	for i := range s.devices {
+		d := &s.devices[i]
+		for j := 0; j < d.terminals(); j++ {
+			seed.i[i][j] += seed.branch[d.node[j]]
+		}
+	}
+	x := make([]float64, s.n+1)
+	for node, w := range seed.v {
+		x[s.row[node]] += w
+	}
+	var r devices.Response
+	for i := range s.devices {
+		s.respond(st, i, &r)
+		d := &s.devices[i]
+		for j := 0; j < d.terminals(); j++ {
+			for k := 0; k < d.terminals(); k++ {
+				if w := seed.i[i][j]; w != 0 {
+					x[s.row[d.node[k]]] += w * r.DV[j][k]
+				}
+			}
+		}
+	}
+	x[s.n] = 0
+	s.currents(st.unknowns())
+	if !s.factor() {
+		return nil, errUndetermined
+	}
+	s.active.SolveT(x[:s.n])
+	if !finite(x) {
+		return nil, errUndetermined
+	}
+	return x, nil
+}
+
+var errUndetermined = errors.New("the balances do not determine the voltages here")
+
+// unknowns are the state's unknowns.
+func (st *State) unknowns() []float64 {
+	x := make([]float64, st.s.n)
+	for i, node := range st.s.rowName {
+		x[i] = st.V[node] - st.s.offset[node]
+	}
+	return x
+}
+
+// respond gives a device's derivatives with respect to its terminal voltages (all
+// kinds) and parameters (junctions and transistors).
+func (s *System) respond(st *State, i int, r *devices.Response) {
+	d := &s.devices[i]
+	e := &s.circuit.Elements[d.element]
+	switch d.kind {
+	case junctionDevice, bipolarDevice:
+		var v [3]float64
+		for j := 0; j < d.terminals(); j++ {
+			v[j] = st.V[d.node[j]]
+		}
+		devices.Evaluate(s.kind(e), s.params(e), s.values[e.Size], v[:d.terminals()], s.kelvin[i], r)
+		return
+	case bulkDevice:
+		devices.Evaluate(s.kind(e), s.params(e), s.values[e.Size], []float64{0, 0}, s.kelvin[i], r)
+	}
+	g := 0.0
+	if d.kind != sourceDevice {
+		g = s.resistors[d.at].g
+	}
+	r.DV = [][]float64{{g, -g}, {-g, g}}
+}
+
+// collect adds one device's share to the derivatives: weight[j] is what a unit
+// of current into terminal j is worth.
+func (s *System) collect(st *State, i int, weight [3]float64, r *devices.Response, offsets, d []float64) {
+	dev := &s.devices[i]
+	e := &s.circuit.Elements[dev.element]
+	s.respond(st, i, r)
+	for j := 0; j < dev.terminals(); j++ {
+		for k := 0; k < dev.terminals(); k++ {
+			offsets[dev.node[k]] += weight[j] * r.DV[j][k]
+		}
+	}
+	through := weight[0] - weight[1] // of a current from terminal 0 to 1
+	switch dev.kind {
+	case sourceDevice:
+		d[e.Value] += through
+	case resistorDevice:
+		s.collectResistor(st, i, e, through, d)
+	case bulkDevice:
+		g, current := s.resistors[dev.at].g, st.I[i][0]
+		for p, id := range e.Params {
+			if r.RbulkDP[p] != 0 {
+				d[id] -= through * current * g * r.RbulkDP[p]
+			}
+		}
+		d[e.Size] -= through * current * g * r.RbulkDArea
+	default:
+		for j := 0; j < dev.terminals(); j++ {
+			for p, id := range e.Params {
+				if r.DP[j][p] != 0 {
+					d[id] += weight[j] * r.DP[j][p]
+				}
+			}
+			d[e.Size] += weight[j] * r.DArea[j]
+			d[s.circuit.Ambient] += weight[j] * r.DT[j]
+		}
+	}
+}
+
+// collectResistor differentiates i = v/R, R = r (1 + tc (T - T0)).
+func (s *System) collectResistor(st *State, i int, e *netlist.Element, through float64, d []float64) {
+	value := s.values[e.Value]
+	current := st.I[i][0]
+	d[e.Value] -= through * current / value
+	if e.TC == netlist.None {
+		return
+	}
+	tc := s.values[e.TC]
+	rise := s.kelvin[i] - referenceKelvin
+	factor := 1 + tc*rise
+	d[e.TC] -= through * current * rise / factor
+	d[s.circuit.Ambient] -= through * current * tc / factor
+}

@@ -1,0 +1,145 @@
+package mna
+
+import (
+	"math"
+
+	"biaswright/netlist"
+)
+
+// A Tuner moves some slots of a system without rebuilding it, and touches only
+// what hangs on them: a sweep sets a rail at the cost of a few additions.
+type Tuner struct {
+	s        *System
+	slots    []netlist.SlotID
+	follow   bool    // other slots follow the moved ones
+	offsets  bool    // ideal branches move
+	base     bool    // resistors or sources move
+	devices  []int32 // devices whose coefficients move
+	resistor []netlist.SlotID
+	scale    float64
+}
+
+// NewTuner prepares to move these slots of s, each a number of its own.
+func (s *System) NewTuner(slots ...netlist.SlotID) *Tuner {
+	t := &Tuner{s: s, slots: slots, scale: s.startCurrent()}
+	moved := s.touched(slots)
+	own := 0
+	for _, is := range moved {
+		if is {
+			own++
+		}
+	}
+	t.follow = own > len(slots)
+	for _, b := range s.forest.branches {
+		if b.slot != netlist.None && moved[b.slot] {
+			t.offsets = true
+		}
+	}
+	for i := range s.devices {
+		d := &s.devices[i]
+		if !s.depends(d, moved) {
+			continue
+		}
+		t.devices = append(t.devices, int32(i))
+		switch d.kind {
+		case resistorDevice:
+			t.base = true
+			t.resistor = append(t.resistor, s.circuit.Elements[d.element].Value)
+		case bulkDevice, sourceDevice:
+			t.base = true
+		}
+	}
+	return t
+}
+
+// touched marks the slots and all that follow them: a NaN put in spreads to just
+// those.
+func (s *System) touched(slots []netlist.SlotID) []bool {
+	values := append([]float64(nil), s.values...)
+	for _, id := range slots {
+		values[id] = math.NaN()
+	}
+	s.circuit.Propagate(values)
+	moved := make([]bool, len(values))
+	for i, v := range values {
+		moved[i] = math.IsNaN(v) && !math.IsNaN(s.values[i])
+	}
+	for _, id := range slots {
+		moved[id] = true
+	}
+	return moved
+}
+
+// depends tells whether a device's coefficients hang on a moved slot.
+func (s *System) depends(d *device, moved []bool) bool {
+	e := &s.circuit.Elements[d.element]
+	if d.kind == sourceDevice {
+		return moved[e.Value]
+	}
+	if moved[s.circuit.Ambient] {
+		return true
+	}
+	if d.kind == resistorDevice {
+		return moved[e.Value] || e.TC != netlist.None && moved[e.TC]
+	}
+	if moved[e.Size] {
+		return true
+	}
+	for _, id := range e.Params {
+		if moved[id] {
+			return true
+		}
+	}
+	return false
+}
+
+// Set puts the slots' new numbers in force, in the order given to NewTuner. It
+// reports false, with the system unchanged in structure, where a number does not
+// fit the structure: a resistance that is no longer positive, or a model without
+// finite coefficients. Junctions keep their iteration state.
+func (t *Tuner) Set(numbers ...float64) bool {
+	s := t.s
+	for i, id := range t.slots {
+		s.values[id] = numbers[i]
+	}
+	if t.follow {
+		s.circuit.Propagate(s.values)
+	}
+	if t.offsets {
+		s.setOffsets()
+	}
+	if len(t.devices) == 0 {
+		return true
+	}
+	kelvin := s.values[s.circuit.Ambient] + zeroCelsius
+	ok := kelvin > 0
+	for _, id := range t.resistor {
+		ok = ok && s.values[id] > 0
+	}
+	if !ok {
+		return false
+	}
+	for _, i := range t.devices {
+		d := &s.devices[i]
+		s.kelvin[i] = kelvin
+		s.setDevice(d, kelvin, t.scale)
+		if d.kind <= bulkDevice {
+			if g := s.resistors[d.at].g; !(g > 0) || math.IsInf(g, 0) {
+				return false
+			}
+		}
+	}
+	if t.base {
+		s.setBase()
+	}
+	return true
+}
+
+// Numbers are the moved slots' numbers in force.
+func (t *Tuner) Numbers() []float64 {
+	out := make([]float64, len(t.slots))
+	for i, id := range t.slots {
+		out[i] = t.s.values[id]
+	}
+	return out
+}
