@@ -39,20 +39,31 @@ func (d *Diode) At(v float64) (i, g float64) {
 // breakdown is (exp(y) - e0)/(1 - e0) with y = -(v + Vz)/(nz V_T), and its
 // derivative by y: 1 at v = -Vz, 0 at v = 0.
 func (d *Diode) breakdown(v float64) (f, df float64) {
+	e, above, beyond := d.aboveRest(v)
+	df = e * d.Inv1mE0
+	f = above * d.Inv1mE0
+	if beyond > 0 {
+		f += df * beyond
+	}
+	return f, df
+}
+
+// aboveRest gives e = exp(y) and e - e0, both at the knee where y is beyond it, and
+// how far beyond.
+func (d *Diode) aboveRest(v float64) (e, above, beyond float64) {
 	// About v = 0 the difference is e0 times an expm1, which keeps its digits.
 	if t := -v * d.InvNzVt; math.Abs(t) < 1 {
-		e, em1 := physics.ExpExpm1(t)
-		scale := d.E0 * d.Inv1mE0
-		return scale * em1, scale * e
+		e, above = physics.ExpExpm1(t)
+		return d.E0 * e, d.E0 * above, 0
 	}
 	// The sum of the two large voltages comes first: it is exact near breakdown.
 	y := -(v + d.Vz) * d.InvNzVt
-	e := physics.Exp(math.Min(y, d.KneeZ))
-	f, df = (e-d.E0)*d.Inv1mE0, e*d.Inv1mE0
 	if y > d.KneeZ {
-		f += df * (y - d.KneeZ)
+		e = physics.Exp(d.KneeZ)
+		return e, e - d.E0, y - d.KneeZ
 	}
-	return f, df
+	e = physics.Exp(y)
+	return e, e - d.E0, 0
 }
 
 // DiodeOf makes the junction of kind k ("diode", "led", "zener") from its

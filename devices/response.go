@@ -137,15 +137,18 @@ func exponential(isat, x, knee float64) (byLog, byX float64) {
 func (d *Diode) addBreakdown(p []float64, area, v, kelvin float64, out *Response) {
 	t0 := kelvinOf(p[pT0])
 	dp := out.DP[0]
+	e, above, _ := d.aboveRest(v)
 	scale := d.Iz * d.Inv1mE0
-	y := -(v + d.Vz) * d.InvNzVt
-	e := physics.Exp(math.Min(y, d.KneeZ))
-	byLog := -scale * (e - d.E0) // by ln(S)
-	byY := -scale * e
-	byE0 := scale + byLog*d.Inv1mE0
-	e0ByV := -d.E0 * d.InvNzVt
-	byV := byY*-d.InvNzVt + byE0*e0ByV
-	byLogW := byY*-y + byE0*-e0ByV*d.Vz // by ln(w)
+	byLog := -scale * above // by ln(S)
+	byV := -byLog * d.Inv1mE0 * d.InvNzVt
+	// By ln(w) there are two forms of one formula: the first has digits left
+	// about v = 0, the second near breakdown.
+	t, vw := -v*d.InvNzVt, d.Vz*d.InvNzVt
+	byLogW := scale*e*t + byLog*d.Inv1mE0*vw
+	if math.Abs(t) >= 1 {
+		y := -(v + d.Vz) * d.InvNzVt
+		byLogW = scale * (e*y + d.Inv1mE0*d.E0*(1-e)*vw)
+	}
 
 	dp[pVzAt] = byLog / p[pVzAt]
 	out.DArea[0] += byLog / area
@@ -249,14 +252,15 @@ func (b *Bipolar) addGains(p []float64, at *BipolarPoint, vbc, kelvin float64, o
 }
 
 // addRecombination adds what comes through the base's recombination current. The
-// derivative by Irec is there also where Irec is 0.
+// derivative by Irec is there also where Irec is 0; a current that is not there has
+// no knee, so the transport's ends its exponential.
 func (b *Bipolar) addRecombination(p []float64, area, vbe, kelvin float64, out *Response) {
 	d := out.DP[base]
 	said := recombinationStatement(p)
 	l := said.at(kelvin)
 	x := vbe * b.InvNrecVt
 	if p[qIrec] == 0 {
-		byIrec, _ := exponential(area*l.sat.Ratio(), x, physics.Knee(0))
+		byIrec, _ := exponential(area*l.sat.Ratio(), x, b.Knee)
 		d[qIrec] = byIrec
 		return
 	}

@@ -43,6 +43,9 @@ func Exp(x float64) float64 {
 // 1.5 units in the last place; one costs hardly more than both.
 func ExpExpm1(x float64) (e, em1 float64) {
 	if !(math.Abs(x) < tableLimit) {
+		if x < 0 {
+			return math.Exp(x), -1
+		}
 		return math.Exp(x), math.Expm1(x)
 	}
 	// As in Exp, which stands apart only because a shared part would not inline.

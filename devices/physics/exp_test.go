@@ -99,6 +99,10 @@ func TestExpOutsideTheTable(t *testing.T) {
 		if got, want := Exp(x), math.Exp(x); got != want && !(math.IsNaN(got) && math.IsNaN(want)) {
 			t.Errorf("Exp(%v) = %v, want %v", x, got, want)
 		}
+		_, got := ExpExpm1(x)
+		if want := math.Expm1(x); got != want && !(math.IsNaN(got) && math.IsNaN(want)) {
+			t.Errorf("ExpExpm1(%v) = %v, want %v", x, got, want)
+		}
 	}
 }
 
