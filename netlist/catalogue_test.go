@@ -16,25 +16,25 @@ func testCatalogue() *Catalogue {
 		{Name: "RthJA", Unit: quantity.KelvinPerW, Default: nan, Sign: Positive, Rating: true},
 	}
 	diode := []Param{
-		{Name: "Isat", Unit: quantity.Ampere, Default: 1e-14, Sign: Positive, Rivals: []string{"drop"}},
-		{Name: "drop", Unit: quantity.Volt, Default: nan, Sign: Positive, At: "dropAt", Rivals: []string{"Isat"}},
-		{Name: "dropAt", Unit: quantity.Ampere, Default: nan, Sign: Positive, Hidden: true},
+		{Name: "Isat", Unit: quantity.Ampere, Default: 1e-14, Sign: Positive, Rivals: []string{"drop", "drop.at"}},
+		{Name: "drop", Unit: quantity.Volt, Default: nan, Sign: Positive, At: "drop.at", Rivals: []string{"Isat"}},
+		{Name: "drop.at", Unit: quantity.Ampere, Default: nan, Sign: Positive, Hidden: true},
 		{Name: "n", Unit: quantity.One, Default: 1, Sign: Positive},
 		{Name: "Rbulk", Unit: quantity.Ohm, Default: 0, Sign: NotNegative},
 		{Name: "Egap", Unit: quantity.EV, Default: 1.12, Sign: Positive},
 	}
 	zener := append(append([]Param(nil), diode...),
-		Param{Name: "Vz", Unit: quantity.Volt, Default: 5.6, Sign: Positive, At: "VzAt"},
-		Param{Name: "VzAt", Unit: quantity.Ampere, Default: 5e-3, Sign: Positive, Hidden: true},
+		Param{Name: "Vz", Unit: quantity.Volt, Default: 5.6, Sign: Positive, At: "Vz.at"},
+		Param{Name: "Vz.at", Unit: quantity.Ampere, Default: 5e-3, Sign: Positive, Hidden: true},
 		Param{Name: "nz", Unit: quantity.One, Default: 1, Sign: Positive, Rivals: []string{"rz"}},
 		Param{Name: "rz", Unit: quantity.Ohm, Default: nan, Sign: Positive, Rivals: []string{"nz"}},
 		Param{Name: "drift", Unit: quantity.VoltPerK, Default: 0},
 	)
 	bipolar := func(point string) []Param {
 		return []Param{
-			{Name: "Isat", Unit: quantity.Ampere, Default: 1e-14, Sign: Positive, Rivals: []string{point}},
-			{Name: point, Unit: quantity.Volt, Default: nan, Sign: Positive, At: point + "At", Rivals: []string{"Isat"}},
-			{Name: point + "At", Unit: quantity.Ampere, Default: nan, Sign: Positive, Hidden: true},
+			{Name: "Isat", Unit: quantity.Ampere, Default: 1e-14, Sign: Positive, Rivals: []string{point, point + ".at"}},
+			{Name: point, Unit: quantity.Volt, Default: nan, Sign: Positive, At: point + ".at", Rivals: []string{"Isat"}},
+			{Name: point + ".at", Unit: quantity.Ampere, Default: nan, Sign: Positive, Hidden: true},
 			{Name: "betaF", Unit: quantity.One, Default: 100, Sign: Positive, Infinite: true},
 			{Name: "betaR", Unit: quantity.One, Default: 1, Sign: Positive, Infinite: true},
 			{Name: "VA", Unit: quantity.Volt, Default: math.Inf(1), Sign: Positive, Infinite: true},

@@ -61,6 +61,7 @@ type scope struct {
 	// taken are the parts and given values that `use` brought in; a name of
 	// names hides them. A name brought in twice is refused only where it is used.
 	taken map[string][]*thing
+	ready []*thing // what was taken in, in the order of its texts
 	made  map[string]NodeID // nodes that no word names
 	from  string            // what the text is called, for messages
 	local bool              // the circuit's own text
@@ -74,21 +75,22 @@ func newScope(from string, local bool) *scope {
 func (s *scope) take(t *thing) {
 	if !slices.Contains(s.taken[t.name], t) {
 		s.taken[t.name] = append(s.taken[t.name], t)
+		s.ready = append(s.ready, t)
 	}
 }
 
-// exports are the parts and given values that the text hands on, its own and
-// those it took in, in a fixed order.
+// exports are the parts and given values that the text hands on: those it took in
+// and its own.
 func (s *scope) exports() []*thing {
 	var out []*thing
-	for _, t := range s.order {
-		if t.sort == aPart || t.sort == aGiven {
+	for _, t := range s.ready {
+		if s.names[t.name] == nil {
 			out = append(out, t)
 		}
 	}
-	for _, name := range sortedKeys(s.taken) {
-		if s.names[name] == nil {
-			out = append(out, s.taken[name]...)
+	for _, t := range s.order {
+		if t.sort == aPart || t.sort == aGiven {
+			out = append(out, t)
 		}
 	}
 	return out
@@ -130,9 +132,9 @@ func (s *scope) near(sorts ...sortOf) []string {
 			out = append(out, t.name)
 		}
 	}
-	for _, name := range sortedKeys(s.taken) {
-		if slices.Contains(sorts, s.taken[name][0].sort) {
-			out = append(out, name)
+	for _, t := range s.ready {
+		if slices.Contains(sorts, t.sort) {
+			out = append(out, t.name)
 		}
 	}
 	return out

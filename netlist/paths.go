@@ -13,6 +13,9 @@ import (
 // memory; a string of lamps has a few dozen.
 const longestRow = 1000
 
+// mostInRows bounds the parts in all rows together, for the same reason.
+const mostInRows = 100000
+
 // A laid is an element on its way: between its nodes already, its kind and its
 // values still to come.
 type laid struct {
@@ -131,6 +134,24 @@ func (r *resolver) begin(l *laid, from NodeID, path int) {
 	if n, ok := r.rows[l.name]; ok {
 		r.c.Elements[l.index].Row = n
 	}
+	r.countRow(l)
+}
+
+// countRow keeps the rows together within their bound. It is said once.
+func (r *resolver) countRow(l *laid) {
+	row := &r.c.Elements[l.index].Row
+	if *row == 1 {
+		return
+	}
+	fitted := r.inRows <= mostInRows
+	r.inRows += *row
+	if r.inRows <= mostInRows {
+		return
+	}
+	if fitted {
+		r.errorf("row", l.span, "", "the rows up to %s hold more than %d parts", l.name, mostInRows)
+	}
+	*row = 1
 }
 
 // row reads the count of a row.

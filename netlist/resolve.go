@@ -41,7 +41,8 @@ type resolver struct {
 	nodeWords map[string]int // how often each word stands as a node
 	// busy are the values being resolved, outermost first: what a circle is
 	// made of.
-	busy []*thing
+	busy   []*thing
+	inRows int // parts in rows so far
 	// broken tells that an error has left the structure incomplete, so that its
 	// topology says nothing.
 	broken bool
@@ -268,6 +269,11 @@ func (r *resolver) values() {
 	}
 	for _, t := range r.local.order {
 		if t.sort == aPart {
+			r.partOf(t)
+		}
+	}
+	for _, t := range r.local.ready {
+		if t.sort == aPart && r.local.names[t.name] == nil && len(r.local.taken[t.name]) == 1 {
 			r.partOf(t)
 		}
 	}

@@ -160,6 +160,11 @@ func (ch *change) apply(s Setting) {
 		return
 	}
 	kind, params, at := ch.c.paramOf(s.Name)
+	if kind != nil && kind.owner(at) >= 0 && math.IsNaN(ch.c.Slots[params[kind.owner(at)]].Value) {
+		p := kind.Params[kind.owner(at)].Name
+		ch.errorf(s, "", "it is where %s is stated, and %s is not", p, p)
+		return
+	}
 	if kind == nil || kind.Params[at].At == "" {
 		if v.At != nil {
 			ch.errorf(s, "", "%s is one number, not a point of a curve", s.Name)
@@ -228,10 +233,8 @@ func (c *Circuit) owner(name string) *thing {
 	if t := c.priv.scope.names[name]; t != nil {
 		return t
 	}
-	for _, t := range c.priv.scope.taken[name] {
-		if t.used {
-			return t
-		}
+	if taken := c.priv.scope.taken[name]; len(taken) == 1 {
+		return taken[0]
 	}
 	return nil
 }
