@@ -2,7 +2,6 @@ package netlist
 
 import (
 	"fmt"
-	"math"
 
 	"biaswright/netlist/diag"
 	"biaswright/netlist/quantity"
@@ -23,9 +22,6 @@ type binder struct {
 // deepestExpr bounds the recursion over a tree. A sum of that many terms is no
 // deeper; nothing written by hand is.
 const deepestExpr = 1000
-
-// exponentLimit bounds the powers of a unit, which are held in eight bits.
-const exponentLimit = 100
 
 // bind binds one expression. It returns false where something in it was refused;
 // the expression then has no steps.
@@ -101,94 +97,44 @@ func (b *binder) binary(x *syntax.Binary, depth int) (int32, quantity.Unit, bool
 	if !okLeft || !okRight {
 		return 0, quantity.One, false
 	}
+	// The rules of units look at no numbers but an exponent.
+	l, r := quantity.Quantity{Value: 1, Unit: lu}, quantity.Quantity{Value: 1, Unit: ru}
+	code, rule := opAdd, quantity.Add
 	switch x.Op {
-	case '+', '-':
-		unit, hint, ok := addUnits(x.Op, lu, ru)
-		if !ok {
-			b.errorf("unit", x.Span, hint, "%s", addMessage(x.Op, lu, ru))
-			return 0, quantity.One, false
-		}
-		code := opAdd
-		if x.Op == '-' {
-			code = opSubtract
-		}
-		return b.push(op{code: code, a: left, b: right}), unit, true
+	case '-':
+		code, rule = opSubtract, quantity.Sub
+	case '*':
+		code, rule = opMultiply, quantity.Mul
+	case '/':
+		code, rule = opDivide, quantity.Div
 	case '^':
-		return b.power(x, left, right, lu, ru)
-	}
-	if lu.Absolute || ru.Absolute {
-		b.errorf("unit", x.Span, "take a difference of two temperatures, which is in K",
-			"degrees Celsius cannot be multiplied or divided")
-		return 0, quantity.One, false
-	}
-	code, sign := opMultiply, 1
-	if x.Op == '/' {
-		code, sign = opDivide, -1
-	}
-	unit, ok := combine(lu, ru, sign)
-	if !ok {
-		b.errorf("unit", x.Span, "", "the unit of this has powers beyond %d", exponentLimit)
-		return 0, quantity.One, false
-	}
-	return b.push(op{code: code, a: left, b: right}), unit, true
-}
-
-// addUnits is the unit of a sum or difference. A Celsius temperature moves by a
-// difference in kelvin; two of them have a difference and no sum.
-func addUnits(operator byte, a, b quantity.Unit) (unit quantity.Unit, hint string, ok bool) {
-	switch {
-	case a == quantity.Celsius && b == quantity.Celsius && operator == '-':
-		return quantity.Kelvin, "", true
-	case a == quantity.Celsius && b == quantity.Celsius:
-		return a, "add a difference in K instead", false
-	case a == quantity.Celsius && b == quantity.Kelvin:
-		return a, "", true
-	case a == quantity.Kelvin && b == quantity.Celsius && operator == '+':
-		return b, "", true
-	}
-	return a, "", a == b
-}
-
-func addMessage(operator byte, a, b quantity.Unit) string {
-	if operator == '+' {
-		return noun(b) + " cannot be added to " + noun(a)
-	}
-	return noun(b) + " cannot be taken from " + noun(a)
-}
-
-// combine is the unit of a product (sign 1) or quotient (sign -1).
-func combine(a, b quantity.Unit, sign int) (quantity.Unit, bool) {
-	return unitOf(
-		int(a.Volt)+sign*int(b.Volt), int(a.Ampere)+sign*int(b.Ampere),
-		int(a.Kelvin)+sign*int(b.Kelvin), int(a.ElectronVolt)+sign*int(b.ElectronVolt))
-}
-
-func unitOf(volt, ampere, kelvin, electronVolt int) (quantity.Unit, bool) {
-	for _, p := range []int{volt, ampere, kelvin, electronVolt} {
-		if p > exponentLimit || p < -exponentLimit {
-			return quantity.One, false
+		code, rule = opPower, quantity.Pow
+		if lu != quantity.One {
+			value, constant := b.constantAt(right)
+			if !constant {
+				b.errorf("unit", x.Y.Where(), "", "the exponent of what is in %s must be a number", noun(lu))
+				return 0, quantity.One, false
+			}
+			r.Value, right = value, b.push(op{code: opNumber, x: value})
 		}
 	}
-	return quantity.Unit{Volt: int8(volt), Ampere: int8(ampere), Kelvin: int8(kelvin), ElectronVolt: int8(electronVolt)}, true
+	result, err := rule(l, r)
+	if err != nil {
+		b.errorf("unit", x.Span, unitRuleHint(x.Op, lu, ru), "%v", err)
+		return 0, quantity.One, false
+	}
+	return b.push(op{code: code, a: left, b: right}), result.Unit, true
 }
 
-// power binds a^b. Only a plain number has any power; what has a unit needs one
-// that is written as a number and leaves whole powers of the units.
-func (b *binder) power(x *syntax.Binary, base, exponent int32, bu, eu quantity.Unit) (int32, quantity.Unit, bool) {
-	if eu != quantity.One {
-		b.errorf("unit", x.Y.Where(), "", "an exponent is a plain number, not in %s", noun(eu))
-		return 0, quantity.One, false
+// unitRuleHint tells how degrees Celsius are reckoned with.
+func unitRuleHint(operator byte, a, b quantity.Unit) string {
+	switch {
+	case operator == '+' && a.Absolute && b.Absolute:
+		return "add a difference in K instead"
+	case a.Absolute || b.Absolute:
+		return "a difference of two temperatures is in K"
 	}
-	if bu == quantity.One {
-		return b.push(op{code: opPower, a: base, b: exponent}), quantity.One, true
-	}
-	value, constant := b.constantAt(exponent)
-	unit, ok := powerUnit(bu, value)
-	if !constant || !ok || bu.Absolute {
-		b.errorf("unit", x.Span, "the exponent of what has a unit is a whole number", "%s cannot have that power", noun(bu))
-		return 0, quantity.One, false
-	}
-	return b.push(op{code: opPower, a: base, b: b.push(op{code: opNumber, x: value})}), unit, true
+	return ""
 }
 
 // constantAt is the number at a step, or minus the number that it negates.
@@ -198,18 +144,6 @@ func (b *binder) constantAt(at int32) (float64, bool) {
 		return -b.e.ops[o.a].x, true
 	}
 	return o.x, o.code == opNumber
-}
-
-func powerUnit(u quantity.Unit, p float64) (quantity.Unit, bool) {
-	var powers [4]int
-	for i, d := range []int8{u.Volt, u.Ampere, u.Kelvin, u.ElectronVolt} {
-		whole := float64(d) * p
-		if whole != math.Trunc(whole) || math.Abs(whole) > exponentLimit {
-			return quantity.One, false
-		}
-		powers[i] = int(whole)
-	}
-	return unitOf(powers[0], powers[1], powers[2], powers[3])
 }
 
 func (b *binder) call(x *syntax.Call, depth int) (int32, quantity.Unit, bool) {
@@ -234,38 +168,29 @@ func (b *binder) call(x *syntax.Call, depth int) (int32, quantity.Unit, bool) {
 	case !all:
 		return 0, quantity.One, false
 	}
-	unit := units[0]
-	if unit.Absolute {
-		b.errorf("unit", x.Args[0].Where(), "take a difference of two temperatures, which is in K", "%s of degrees Celsius means nothing", name)
-		return 0, quantity.One, false
-	}
-	switch name {
-	case "parallel":
+	if name == "parallel" {
 		return b.parallel(x, steps, units)
-	case "sqrt":
-		root, ok := powerUnit(unit, 0.5) // the square root is the power one half
-		if !ok {
-			b.errorf("unit", x.Args[0].Where(), "", "%s have no square root", noun(unit))
-			return 0, quantity.One, false
-		}
-		return b.push(op{code: opSqrt, a: steps[0]}), root, true
 	}
-	if unit != quantity.One {
-		b.errorf("unit", x.Args[0].Where(), "divide by a value of the same unit first", "%s takes a plain number, not %s", name, noun(unit))
+	code, rule := opSqrt, quantity.Sqrt
+	switch name {
+	case "ln":
+		code, rule = opLn, quantity.Ln
+	case "exp":
+		code, rule = opExp, quantity.Exp
+	}
+	result, err := rule(quantity.Quantity{Value: 1, Unit: units[0]})
+	if err != nil {
+		b.errorf("unit", x.Args[0].Where(), "", "%v", err)
 		return 0, quantity.One, false
 	}
-	code := opLn
-	if name == "exp" {
-		code = opExp
-	}
-	return b.push(op{code: code, a: steps[0]}), quantity.One, true
+	return b.push(op{code: code, a: steps[0]}), result.Unit, true
 }
 
 func (b *binder) parallel(x *syntax.Call, steps []int32, units []quantity.Unit) (int32, quantity.Unit, bool) {
 	at := steps[0]
 	for i := 1; i < len(steps); i++ {
-		if units[i] != units[0] {
-			b.errorf("unit", x.Args[i].Where(), "", "parallel takes values of one unit, not %s beside %s", noun(units[i]), noun(units[0]))
+		if _, err := quantity.Parallel(quantity.Quantity{Value: 1, Unit: units[0]}, quantity.Quantity{Value: 1, Unit: units[i]}); err != nil {
+			b.errorf("unit", x.Args[i].Where(), "", "%v", err)
 			return 0, quantity.One, false
 		}
 		at = b.push(op{code: opParallel, a: at, b: steps[i]})

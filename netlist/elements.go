@@ -151,7 +151,7 @@ func (r *resolver) ohms(v *syntax.Value, unit quantity.Unit) (syntax.Literal, bo
 
 func (r *resolver) openResistance(l *laid) {
 	s := l.syn
-	if !knownSeries(s.Series.Text) {
+	if _, ok := quantity.Series(s.Series.Text); !ok {
 		r.errorf("unknown-name", s.Series.Span, "the series of IEC 60063 are E3, E6, E12, E24, E48, E96 and E192", "there is no series %s", s.Series.Text)
 	}
 	id := r.newSlot(Slot{Name: l.name, Unit: quantity.Ohm, Value: math.NaN(), Span: s.Span}, rule{sign: NotNegative})

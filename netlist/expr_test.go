@@ -85,9 +85,14 @@ func TestGradAgainstDifferences(t *testing.T) {
 			code := rapid.SampledFrom(codes).Draw(t, "code")
 			e.ops = append(e.ops, op{code: code, a: last, b: rapid.Int32Range(0, last).Draw(t, "other")})
 		}
-		value, ok := e.Eval(env)
-		if !ok || math.Abs(value) > 1e3 {
-			t.Skip("out of the range in which differences are exact enough")
+		vals := make([]float64, len(e.ops))
+		if _, ok := e.run(vals, nil, env); !ok {
+			t.Skip("no number")
+		}
+		for _, v := range vals {
+			if !(math.Abs(v) < 1e3) {
+				t.Skip("near a pole, where differences are not exact enough")
+			}
 		}
 		grad := make([]float64, leaves)
 		e.Grad(env, func(id SlotID, d float64) { grad[id] += d }, func(r Ref, d float64) { grad[r.Index] += d })

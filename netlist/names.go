@@ -5,6 +5,7 @@ import (
 	"sort"
 
 	"biaswright/netlist/diag"
+	"biaswright/netlist/quantity"
 	"biaswright/netlist/syntax"
 )
 
@@ -61,7 +62,7 @@ type scope struct {
 	// taken are the parts and given values that `use` brought in; a name of
 	// names hides them. A name brought in twice is refused only where it is used.
 	taken map[string][]*thing
-	ready []*thing // what was taken in, in the order of its texts
+	ready []*thing          // what was taken in, in the order of its texts
 	made  map[string]NodeID // nodes that no word names
 	from  string            // what the text is called, for messages
 	local bool              // the circuit's own text
@@ -167,7 +168,7 @@ func (r *resolver) declare(s *scope, w syntax.Word, sort sortOf) *thing {
 		r.errorf("reserved-name", w.Span, "", "%s is a word of the language and cannot name %s", w.Text, sort)
 	case (sort == aPart || sort == aGiven) && slices.Contains(partWords, w.Text):
 		r.errorf("reserved-name", w.Span, "", "%s is a word of the language and cannot name %s", w.Text, sort)
-	case readsAsQuantity(w.Text):
+	case quantity.Reads(w.Text):
 		r.errorf("reserved-name", w.Span, quantityName(w.Text), "%s reads as a quantity and cannot name %s", w.Text, sort)
 	}
 	first := s.names[w.Text]

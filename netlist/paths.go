@@ -229,14 +229,14 @@ func (r *resolver) nodesInARow(segments []syntax.Segment, i, j int, skip map[int
 		skip[k] = true
 		w := segments[k].Node
 		r.forgotten[w.Text] = true
-		if n+1 < len(suspects) && readsAsQuantity(segments[suspects[n+1]].Node.Text) {
+		if n+1 < len(suspects) && quantity.Reads(segments[suspects[n+1]].Node.Text) {
 			value := segments[suspects[n+1]].Node
 			skip[suspects[n+1]] = true
 			n++
 			r.errorf("side-by-side", value.Span, "write "+w.Text+" "+value.Text, "the value of %s stands behind it with no arrow between", w.Text)
 			continue
 		}
-		if readsAsQuantity(w.Text) {
+		if quantity.Reads(w.Text) {
 			r.errorf("side-by-side", w.Span, "give it a designator: R1 "+w.Text, "%s has no name", w.Text)
 			continue
 		}

@@ -1,6 +1,7 @@
 package netlist
 
 import (
+	"errors"
 	"fmt"
 	"maps"
 	"math"
@@ -88,7 +89,7 @@ func (c *Circuit) isElement(name string) bool {
 }
 
 func (ch *change) row(name string, s Setting) {
-	v, ok := ch.value(s, quantity.One)
+	v, ok := ch.value(s)
 	if !ok {
 		return
 	}
@@ -107,24 +108,36 @@ func (ch *change) row(name string, s Setting) {
 	}
 }
 
-// value reads the value of a setting: a number in the unit wanted, or without one.
-func (ch *change) value(s Setting, want quantity.Unit) (*syntax.Value, bool) {
-	v, diags := parseValue(s.Value, want)
-	if diags.HasErrors() {
-		for _, d := range diags {
-			ch.errorf(s, d.Hint, "%s", d.Message)
-		}
-		return nil, false
+// value reads the value of a setting: a number, with or without its unit, and for a
+// point of a curve the second one behind "at".
+func (ch *change) value(s Setting) (*syntax.Value, bool) {
+	first, second, point := strings.Cut(s.Value, " at ")
+	v := &syntax.Value{}
+	var ok bool
+	if v.Literal, ok = ch.literal(s, first); !ok || !point {
+		return v, ok
 	}
+	v.At = &syntax.Value{}
+	v.At.Literal, ok = ch.literal(s, second)
+	return v, ok
+}
+
+func (ch *change) literal(s Setting, text string) (*syntax.Literal, bool) {
+	r, err := quantity.Parse(text)
+	var wrong *quantity.Error
 	switch {
-	case v.Bounds != nil:
-		ch.errorf(s, "", "a setting is a value; the stated tolerances stay")
+	case errors.As(err, &wrong):
+		hint := wrong.Hint
+		if strings.ContainsAny(text, "%(") {
+			hint = "a setting is a value; the stated tolerances stay"
+		}
+		ch.errorf(s, hint, "%s", wrong.Message)
 		return nil, false
-	case v.Literal == nil:
-		ch.errorf(s, "", "a setting is a number, not a name")
+	case err != nil:
+		ch.errorf(s, "", "%v", err)
 		return nil, false
 	}
-	return v, true
+	return &syntax.Literal{Quantity: r.Quantity, Text: strings.TrimSpace(text), Bare: r.Bare, Infinite: r.Infinite}, true
 }
 
 // number is a literal in a unit; a bare one counts in the unit itself.
@@ -151,7 +164,7 @@ func (ch *change) apply(s Setting) {
 		return
 	}
 	slot := &ch.c.Slots[id]
-	v, ok := ch.value(s, slot.Unit)
+	v, ok := ch.value(s)
 	if !ok {
 		return
 	}
@@ -250,10 +263,6 @@ func (ch *change) point(s Setting, kind *Kind, params []SlotID, at int, v *synta
 			return false
 		}
 		return true
-	}
-	if v.Literal == nil || v.Bounds != nil {
-		ch.errorf(s, "", "a setting is a number")
-		return false
 	}
 	value, ok := ch.number(s, v.Literal, slot.Unit, ch.c.priv.rules[id])
 	if ok {

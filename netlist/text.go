@@ -7,18 +7,15 @@ import (
 	"biaswright/netlist/quantity"
 )
 
-// nouns are the units as sentences speak of them.
-var nouns = map[quantity.Unit]string{
-	quantity.One: "a plain number", quantity.Volt: "volts", quantity.Ampere: "amps", quantity.Watt: "watts",
-	quantity.Ohm: "ohms", quantity.Siemens: "siemens", quantity.Kelvin: "kelvin", quantity.Celsius: "degrees Celsius",
-	quantity.EV: "electronvolts",
-}
+// messageDigits are the significant digits of a number in a message.
+const messageDigits = 6
 
-func noun(u quantity.Unit) string {
-	if n, ok := nouns[u]; ok {
-		return n
-	}
-	return symbol(u)
+// noun is a unit as sentences speak of it: "volts".
+func noun(u quantity.Unit) string { return u.Words() }
+
+// show writes a number as a message has it: "1.8 kohm".
+func show(value float64, u quantity.Unit) string {
+	return quantity.FormatASCII(quantity.Quantity{Value: value, Unit: u}, messageDigits)
 }
 
 // article puts the article before the name of a kind: "a diode", "an npn".

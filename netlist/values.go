@@ -220,7 +220,7 @@ func unitMessage(l *syntax.Literal, want quantity.Unit, what string) string {
 func unitHint(l *syntax.Literal, want quantity.Unit) string {
 	switch {
 	case l.Bare:
-		return "write " + l.Text + " " + symbol(want)
+		return "write " + l.Text + " " + want.String()
 	case want == quantity.Celsius && l.Unit == quantity.Kelvin:
 		return "write " + show(l.Value+zeroKelvin, want)
 	case want == quantity.Kelvin && l.Unit == quantity.Celsius:
