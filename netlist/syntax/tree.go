@@ -13,6 +13,8 @@ type File struct {
 	Name       string
 	Source     []byte
 	Statements []Statement
+	// Tail are the comments behind the last statement.
+	Tail []Comment
 }
 
 // A Statement is one of *Title, *Use, *Given, *Rail, *Ambient, *Part, *Path,
@@ -30,16 +32,36 @@ type stmt struct {
 // Where returns the statement's place.
 func (s *stmt) Where() diag.Span { return s.Span }
 
-// Notes are the comments (without '#', text as written) around a statement:
-// on the lines before it, within it, and behind it on its last line. Blank
-// counts blank lines before the first of them, at most 1 after tidying.
+// Notes are the comments around a statement, texts as written without '#'.
 type Notes struct {
+	// Before are the comments on the lines before the statement. Blank tells
+	// that a blank line stands right before it, behind those.
+	Before []Comment
 	Blank  bool
-	Before []string
+	// Within are those between the lines of a path, a part or an assume
+	// statement. Within other statements they move to Before.
+	Within []Inner
+	// Behind is the comment on the statement's last line.
 	Behind string
 }
 
-// A Word is a name as written.
+// A Comment is one line of comment. Blank tells that a blank line stands before.
+type Comment struct {
+	Text  string
+	Blank bool
+}
+
+// An Inner is a comment within a statement: After so many segments or parameters,
+// Own if it has a line of its own.
+type Inner struct {
+	After int
+	Own   bool
+	Text  string
+}
+
+// A Word is a name as written. A word that refers may be LAMP.1 (one of a row) or
+// D1:D2 (a node that the language named). A word that stands as a node may be a
+// number, which package netlist refuses.
 type Word struct {
 	Text string
 	Span diag.Span
@@ -201,13 +223,14 @@ type Element struct {
 	Name      Word
 	What      What
 	Value     *Value // WhatValue, WhatDrop, WhatCell
-	Ref       Word   // WhatName; a code such as R22 has both Value and Ref
+	Ref       Word   // WhatName; a code such as R22 has Value as well
 	Series    Word   // WhatOpen
 	Modifiers []Modifier
 	Span      diag.Span
 }
 
-// A Modifier follows an element: a tolerance (Key "", Bounds set), a rating or
+// A Modifier follows an element: a tolerance that does not stand right behind a
+// number (Key "", Bounds set), a rating or
 // temperature coefficient (Key "", Value set), or key=value / a lone word:
 // base, reversed, row, size, beside.
 type Modifier struct {
