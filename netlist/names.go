@@ -3,6 +3,8 @@ package netlist
 import (
 	"slices"
 	"sort"
+	"strconv"
+	"strings"
 
 	"biaswright/netlist/diag"
 	"biaswright/netlist/quantity"
@@ -220,6 +222,9 @@ func (r *resolver) node(w syntax.Word) NodeID {
 		r.errorf("reserved-name", w.Span, "write gnd", "the reference node is called gnd, not 0")
 		return Gnd
 	}
+	if strings.Contains(w.Text, ":") {
+		return r.referred(w)
+	}
 	t := r.local.names[w.Text]
 	if t != nil && (t.sort == aNode || t.sort == aRail) {
 		if t.sort == aRail {
@@ -241,11 +246,73 @@ func (r *resolver) node(w syntax.Word) NodeID {
 	return id
 }
 
-func (r *resolver) addNode(n Node) NodeID {
-	id := NodeID(len(r.c.Nodes))
-	r.c.Nodes = append(r.c.Nodes, n)
-	if n.Made {
-		r.local.made[n.Name] = id
+// referred is a node that the language names (D1:D2), referred to perhaps before the
+// path that makes it was laid.
+func (r *resolver) referred(w syntax.Word) NodeID {
+	if id, ok := r.local.made[w.Text]; ok {
+		return id
 	}
+	if r.toMake == nil {
+		r.foreseeNodes()
+	}
+	if !r.toMake[w.Text] {
+		r.unknown(w, func() []string { return sortedKeys(r.toMake) }, "there is no node %s: nothing stands side by side so", w.Text)
+		r.broken = true
+		return Gnd
+	}
+	return r.makeNode(w.Text, w.Span)
+}
+
+// foreseeNodes finds the names of all nodes that paths and rows will make.
+func (r *resolver) foreseeNodes() {
+	r.toMake = map[string]bool{}
+	row := func(name string, modifiers []syntax.Modifier) {
+		n := r.rows[name]
+		for i := range modifiers {
+			if m := &modifiers[i]; n == 0 && m.Key.Text == "row" && m.Value != nil && m.Value.Literal != nil {
+				n = int(min(m.Value.Literal.Value, longestRow))
+			}
+		}
+		for m := 1; m < n; m++ {
+			r.toMake[innerName(name, m)] = true
+		}
+	}
+	for _, p := range statements[*syntax.Path](r.tree) {
+		for i := range p.Segments {
+			e := p.Segments[i].Element
+			if e == nil {
+				continue
+			}
+			row(e.Name.Text, e.Modifiers)
+			if i > 0 && p.Segments[i-1].Element != nil {
+				r.toMake[betweenName(p.Segments[i-1].Element.Name.Text, e.Name.Text)] = true
+			}
+		}
+	}
+	for _, p := range statements[*syntax.Place](r.tree) {
+		row(p.Name.Text, p.Modifiers)
+	}
+}
+
+// betweenName is the node between two elements, innerName that behind member m of
+// a row.
+func betweenName(a, b string) string { return a + ":" + b }
+
+func innerName(row string, m int) string {
+	return betweenName(row+"."+strconv.Itoa(m), row+"."+strconv.Itoa(m+1))
+}
+
+// makeNode finds or makes a node that the language names.
+func (r *resolver) makeNode(name string, at diag.Span) NodeID {
+	if id, ok := r.local.made[name]; ok {
+		return id
+	}
+	id := r.addNode(Node{Name: name, Rail: None, Made: true, Span: at})
+	r.local.made[name] = id
 	return id
+}
+
+func (r *resolver) addNode(n Node) NodeID {
+	r.c.Nodes = append(r.c.Nodes, n)
+	return NodeID(len(r.c.Nodes) - 1)
 }

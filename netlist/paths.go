@@ -2,7 +2,6 @@ package netlist
 
 import (
 	"slices"
-	"strconv"
 
 	"biaswright/netlist/diag"
 	"biaswright/netlist/quantity"
@@ -83,7 +82,7 @@ func (r *resolver) path(p *syntax.Path, things []*thing) []*thing {
 		l := &laid{thing: things[0], syn: s.Element, modifiers: s.Element.Modifiers}
 		things = things[1:]
 		if before != nil {
-			from = r.addNode(Node{Name: before.name + ":" + l.name, Rail: None, Made: true, Span: s.Element.Span})
+			from = r.makeNode(betweenName(before.name, l.name), s.Element.Span)
 			steps = append(steps, Step{Node: from, Element: None})
 			r.end(before, from)
 		}
@@ -182,8 +181,7 @@ func (r *resolver) end(l *laid, to NodeID) {
 	e.To = to
 	e.Chain = append(make([]NodeID, 0, e.Row+1), e.From)
 	for m := 1; m < e.Row; m++ {
-		name := e.Name + "." + strconv.Itoa(m) + ":" + e.Name + "." + strconv.Itoa(m+1)
-		e.Chain = append(e.Chain, r.addNode(Node{Name: name, Rail: None, Made: true, Span: e.Span}))
+		e.Chain = append(e.Chain, r.makeNode(innerName(e.Name, m), e.Span))
 	}
 	e.Chain = append(e.Chain, to)
 }

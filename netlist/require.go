@@ -527,13 +527,15 @@ func (r *resolver) loadInARow(s *syntax.Load, on map[int]syntax.Word) {
 	}
 	count := r.c.connections()
 	for i, e := range load {
-		inner := r.c.Elements[e].To
+		inner := r.c.Elements[e].Chain[1:]
 		if i == len(load)-1 {
-			break
+			inner = inner[:len(inner)-1] // the last end is the load's own
 		}
-		if n := &r.c.Nodes[inner]; count[inner] > 2 || n.Rail != None || inner == Gnd {
-			r.errorf("load", s.Where(), "", "%s, inside the load, has a side branch", n.Name)
-			return
+		for _, id := range inner {
+			if n := &r.c.Nodes[id]; count[id] > 2 || n.Rail != None || id == Gnd {
+				r.errorf("load", s.Where(), "", "%s, inside the load, has a side branch", n.Name)
+				return
+			}
 		}
 	}
 	r.c.Load = load

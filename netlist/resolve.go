@@ -37,8 +37,9 @@ type resolver struct {
 	rows    map[string]int
 	diags   diag.List
 
-	laid      []*laid        // by element index
-	nodeWords map[string]int // how often each word stands as a node
+	laid      []*laid         // by element index
+	nodeWords map[string]int  // how often each word stands as a node
+	toMake    map[string]bool // the nodes that paths and rows make, by name
 	// busy are the values being resolved, outermost first: what a circle is
 	// made of.
 	busy   []*thing
@@ -61,7 +62,7 @@ type resolver struct {
 // brought in behind them. The circuit is nil if the list has errors. The
 // catalogue and the source are kept for With and must not be modified.
 func Read(name string, text []byte, cat *Catalogue, src Source) (*Circuit, diag.List) {
-	tree, diags := parseText(name, text)
+	tree, diags := syntax.Parse(name, text)
 	if tree == nil {
 		return nil, diags
 	}
@@ -82,7 +83,7 @@ func Resolve(f *syntax.File, cat *Catalogue, src Source) (*Circuit, diag.List) {
 // else in it aside: a file that others `use`, or a shelf. The circuit has no
 // elements; it is nil if the list has errors.
 func ReadParts(name string, text []byte, cat *Catalogue, src Source) (*Circuit, diag.List) {
-	tree, diags := parseText(name, text)
+	tree, diags := syntax.Parse(name, text)
 	if tree == nil {
 		return nil, diags
 	}
@@ -311,7 +312,7 @@ func (r *resolver) unused() {
 		case t.sort == aRail:
 			r.warnf("unused", t.span, "", "nothing is connected to the rail %s", t.name)
 		case t.sort == aPart:
-			r.warnf("unused", t.span, "", "no element is a %s", t.name)
+			r.warnf("unused", t.span, "", "no element uses the part %s", t.name)
 		default:
 			r.warnf("unused", t.span, "", "nothing uses %s", t.name)
 		}

@@ -482,7 +482,7 @@ func (c *Circuit) Names() []string {
 // ParseExpr binds an expression of quantities, names and numbers, as typed
 // after --show or in a keep line. Places are in the text.
 func (c *Circuit) ParseExpr(text string) (*Expr, diag.List) {
-	x, diags := parseExpr(text)
+	x, diags := syntax.ParseExpr("expression", text)
 	if diags.HasErrors() {
 		return nil, diags
 	}

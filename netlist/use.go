@@ -41,9 +41,9 @@ func (f Files) Open(from, path string) (name string, text []byte, err error) {
 		return name, nil, err
 	}
 	defer file.Close() // only read: nothing is lost if closing fails
-	text, err = io.ReadAll(io.LimitReader(file, maxText+1))
-	if err == nil && len(text) > maxText {
-		err = fmt.Errorf("%s is longer than the %d MB that a text may have", name, maxText>>20)
+	text, err = io.ReadAll(io.LimitReader(file, syntax.MaxSize+1))
+	if err == nil && len(text) > syntax.MaxSize {
+		err = fmt.Errorf("%s is longer than the %d MB that a text may have", name, syntax.MaxSize>>20)
 	}
 	return name, text, err
 }
@@ -128,7 +128,7 @@ func (r *resolver) used(u *syntax.Use, from string, chain []string) (string, *sy
 	if tree, known := r.library.texts[name]; known {
 		return name, tree, tree != nil
 	}
-	tree, diags := parseText(name, text)
+	tree, diags := syntax.Parse(name, text)
 	r.diags = append(r.diags, diags...)
 	if diags.HasErrors() {
 		tree = nil
