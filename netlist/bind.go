@@ -32,7 +32,7 @@ func (b *binder) bind(x syntax.Expr) (*Expr, bool) {
 		return nil, false
 	}
 	e := b.e
-	e.Unit, e.Text = unit, exprText(x)
+	e.Unit, e.Text = unit, syntax.ExprText(x)
 	return &e, true
 }
 
