@@ -227,6 +227,7 @@ func (p *parser) gather() bool {
 
 // token takes the next token into the statement.
 func (p *parser) token(first bool) {
+	p.s.quiet = p.failed
 	t := p.s.token()
 	t.first = first
 	if t.kind == kindBad {
@@ -417,6 +418,9 @@ func (p *parser) unexpected(wanted, hint string) {
 	if p.i > 0 && t.kind == kindWord {
 		if before := p.toks[p.i-1]; before.kind == kindNumber && before.bare {
 			if fix, ok := quantity.Likely(p.text(before) + " " + p.text(t)); ok {
+				if p.i > 1 && p.toks[p.i-2].punct == '-' {
+					fix = "-" + fix
+				}
 				p.fail(t, "bad-unit", "write "+fix, "%s is no unit that is known here", clip(p.text(t)))
 			}
 		}

@@ -43,6 +43,9 @@ type scanner struct {
 	src  string
 	pos  diag.Position
 	say  func(diag.Diagnostic)
+	// quiet holds back complaints of stray characters: one in a statement is
+	// enough.
+	quiet bool
 }
 
 func (s *scanner) rest() string { return s.src[s.pos.Offset:] }
@@ -249,7 +252,9 @@ func (s *scanner) stray(t token) token {
 	t.kind = kindBad
 	s.skip(n)
 	t.end = s.pos
-	s.complain(t, "bad-character", hint, "%s", what)
+	if !s.quiet {
+		s.complain(t, "bad-character", hint, "%s", what)
+	}
 	return t
 }
 

@@ -1,5 +1,3 @@
-// Package syntax turns a .bias text into a tree and a tree into its canonical
-// text. It knows words, not circuits: names are bound by package netlist.
 package syntax
 
 import (
