@@ -1,0 +1,288 @@
+package cli
+
+import (
+	"errors"
+	"fmt"
+	"strings"
+
+	"github.com/urfave/cli/v2"
+
+	"biaswright/cmd/biaswright/internal/render"
+	"biaswright/devices"
+	"biaswright/netlist"
+	"biaswright/netlist/diag"
+	"biaswright/solve"
+)
+
+func (r *runner) solveCommand() *cli.Command {
+	return &cli.Command{
+		Name:      "solve",
+		Usage:     "find the operating point of each file",
+		UsageText: "biaswright solve [options] FILE...",
+		Flags: []cli.Flag{
+			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			&cli.StringSliceFlag{Name: "at", Usage: "`NAME=low|high,...`: take the stated ends of rails and of ambient, and judge hold against nominal"},
+			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: start there, and take the nearest of several operating points; may be repeated"},
+			&cli.BoolFlag{Name: "trace", Usage: "tell the solver's steps on standard error", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+		},
+		Action: r.solve,
+	}
+}
+
+// A request is what the options of solve ask for.
+type request struct {
+	set, at []netlist.Setting
+	near    []netlist.Setting
+	trace   func(string)
+}
+
+func (r *runner) solve(c *cli.Context) error {
+	if c.NArg() == 0 {
+		return &usageError{"solve needs a file", `"-" is standard input`}
+	}
+	r.plain = c.Bool("plain")
+	q, err := r.request(c)
+	if err != nil {
+		return err
+	}
+	files := c.Args().Slice()
+	if c.Bool("json") {
+		return r.solveJSON(files, q)
+	}
+	look := r.look()
+	for i, name := range files {
+		a, trouble := r.answer(name, q)
+		if trouble != nil {
+			r.tell(trouble)
+			continue
+		}
+		r.diagnose(a.Warnings)
+		if i > 0 {
+			fmt.Fprintln(r.out)
+		}
+		if err := render.Screen(r.out, a, look); err != nil {
+			return &writeError{err}
+		}
+	}
+	return nil
+}
+
+// solveJSON prints one object, or for several files an array of them.
+func (r *runner) solveJSON(files []string, q *request) error {
+	var all []any
+	for _, name := range files {
+		a, trouble := r.answer(name, q)
+		if trouble != nil {
+			all = append(all, trouble.json())
+			continue
+		}
+		all = append(all, render.JSON(a))
+	}
+	var v any = all
+	if len(all) == 1 {
+		v = all[0]
+	}
+	if err := render.WriteJSON(r.out, v); err != nil {
+		return &writeError{err}
+	}
+	return nil
+}
+
+// request reads the options that are the same for every file.
+func (r *runner) request(c *cli.Context) (*request, error) {
+	q := &request{}
+	for _, text := range c.StringSlice("set") {
+		s, err := setting("set", text, "NAME=VALUE")
+		if err != nil {
+			return nil, err
+		}
+		q.set = append(q.set, s)
+	}
+	for _, list := range c.StringSlice("at") {
+		for _, text := range strings.Split(list, ",") {
+			s, err := setting("at", text, "NAME=low, NAME=high or NAME=nominal")
+			if err != nil {
+				return nil, err
+			}
+			q.at = append(q.at, s)
+		}
+	}
+	for _, text := range c.StringSlice("near") {
+		s, err := setting("near", text, "NODE=VOLTS")
+		if err != nil {
+			return nil, err
+		}
+		q.near = append(q.near, s)
+	}
+	if c.Bool("trace") {
+		q.trace = func(line string) { fmt.Fprintln(r.err, line) }
+	}
+	return q, nil
+}
+
+func setting(option, text, form string) (netlist.Setting, error) {
+	name, value, ok := strings.Cut(text, "=")
+	name, value = strings.TrimSpace(name), strings.TrimSpace(value)
+	if !ok || name == "" || value == "" {
+		return netlist.Setting{}, &usageError{fmt.Sprintf("--%s %q says nothing", option, text), "write --" + option + " " + form}
+	}
+	return netlist.Setting{Name: name, Value: value}, nil
+}
+
+// Trouble is why a file has no answer.
+type trouble struct {
+	file  string
+	found diag.List // what is wrong with its text or the settings
+	err   error     // why it could not be read
+}
+
+func (t *trouble) json() any {
+	if t.err != nil {
+		return render.Problem(t.file, "unreadable", "cannot read the file: "+t.err.Error(), "")
+	}
+	return render.Errors(t.file, t.found)
+}
+
+func (r *runner) tell(t *trouble) {
+	if t.err != nil {
+		r.complain("cannot read %s: %v", t.file, t.err)
+		return
+	}
+	r.diagnose(t.found)
+}
+
+// answer solves one file and notes the exit code it earns.
+func (r *runner) answer(name string, q *request) (*render.Answer, *trouble) {
+	text, err := r.read(name)
+	if err != nil {
+		r.raise(exitFile)
+		return nil, &trouble{file: name, err: err}
+	}
+	shown := name
+	if name == standardInput {
+		shown = "standard input"
+	}
+	r.texts[shown] = text
+	nominal, actual, warnings, wrong := r.circuits(shown, text, q)
+	if wrong.HasErrors() {
+		r.raise(exitUsage)
+		return nil, &trouble{file: shown, found: wrong}
+	}
+	near, wrong := nearPoint(actual, q.near)
+	if wrong.HasErrors() {
+		r.raise(exitUsage)
+		return nil, &trouble{file: shown, found: wrong}
+	}
+	a := &render.Answer{File: shown, Circuit: actual, Set: q.set, At: q.at, Inner: q.trace != nil, Warnings: warnings}
+	r.fill(a, nominal, solve.Options{Near: near, Trace: q.trace})
+	return a, nil
+}
+
+// circuits reads a text and applies the settings. The first circuit is at its
+// nominal point; the second at the ends asked for, and the same without any.
+func (r *runner) circuits(name string, text []byte, q *request) (nominal, actual *netlist.Circuit, warnings, wrong diag.List) {
+	c, found := netlist.Read(name, text, devices.Catalogue(), r.library())
+	if found.HasErrors() {
+		return nil, nil, nil, found
+	}
+	warnings = found
+	if len(q.set) > 0 {
+		if c, found = c.With(q.set...); found.HasErrors() {
+			return nil, nil, nil, found
+		}
+		warnings = append(warnings, found...)
+	}
+	if wrong := stillOpen(c); len(wrong) > 0 {
+		return nil, nil, nil, wrong
+	}
+	if len(q.at) == 0 {
+		return c, c, warnings, nil
+	}
+	at, found := c.At(q.at...)
+	if found.HasErrors() {
+		return nil, nil, nil, found
+	}
+	return c, at, append(warnings, found...), nil
+}
+
+// stillOpen finds resistances without a value: nothing can be solved with them.
+func stillOpen(c *netlist.Circuit) diag.List {
+	var wrong diag.List
+	for i := range c.Elements {
+		if e := &c.Elements[i]; e.Kind == netlist.Open {
+			wrong = append(wrong, diag.Diagnostic{
+				Code: "open-value", Span: e.Span,
+				Message: fmt.Sprintf("%s has no value yet (? %s)", e.Name, e.Series),
+				Hint:    fmt.Sprintf("give it one with --set %s=VALUE", e.Name),
+			})
+		}
+	}
+	return wrong
+}
+
+// fill solves and judges.
+func (r *runner) fill(a *render.Answer, nominal *netlist.Circuit, o solve.Options) {
+	if f := points(a, nominal, o); f != nil {
+		r.raise(exitNoPoint)
+		a.Result, a.Failure = nil, f
+		return
+	}
+	p := a.Result.Point
+	a.Verdicts = solve.Judge(p, a.Nominal)
+	a.Cautions = solve.Cautions(p)
+	for _, v := range a.Verdicts {
+		if !v.Met {
+			r.raise(exitNotMet)
+		}
+	}
+	for _, c := range a.Cautions {
+		if c.Kind == "rating" {
+			r.raise(exitNotMet)
+		}
+	}
+}
+
+// points finds the point asked for and, where ends are taken, the nominal one
+// that a hold is judged against.
+func points(a *render.Answer, nominal *netlist.Circuit, o solve.Options) *solve.Failure {
+	var err error
+	if a.Result, err = solve.Solve(a.Circuit, o); err != nil {
+		return failure(err)
+	}
+	traceInner(a.Result.Point, o.Trace)
+	if len(a.At) == 0 {
+		return nil
+	}
+	if o.Trace != nil {
+		o.Trace("at the nominal point:")
+	}
+	res, err := solve.Solve(nominal, o)
+	if err != nil {
+		f := *failure(err)
+		f.Says = "at the nominal point: " + f.Says
+		return &f
+	}
+	traceInner(res.Point, o.Trace)
+	a.Nominal = res.Point
+	return nil
+}
+
+func failure(err error) *solve.Failure {
+	var f *solve.Failure
+	if errors.As(err, &f) {
+		return f
+	}
+	return &solve.Failure{Says: err.Error()}
+}
+
+// traceInner tells the voltages of nodes that the screen leaves out.
+func traceInner(p *solve.Point, trace func(string)) {
+	if trace == nil {
+		return
+	}
+	for _, n := range p.Inner {
+		trace(fmt.Sprintf("%s at %.6g V", n.Name, n.V))
+	}
+}
