@@ -127,14 +127,18 @@ type slotTable struct{ c *Circuit }
 func (t slotTable) Slot(id SlotID) float64       { return t.c.Slots[id].Value }
 func (t slotTable) Quantity(Ref) (float64, bool) { return math.NaN(), false }
 
-// set gives a slot the stated value, with its bounds. what is the subject of the
-// messages. The slot's unit says what is wanted.
+// set gives a slot the stated value, with its bounds, and tells whether it has got
+// one. what is the subject of the messages. The slot's unit says what is wanted.
 func (r *resolver) set(id SlotID, v *syntax.Value, what string, home *scope) bool {
 	if v.At != nil {
 		r.errorf("wrong-place", v.At.Span, "", "%s is one number, not a point of a curve", what)
 		return false
 	}
-	return r.setNumber(id, v, what, home) && r.bounds(id, v.Bounds, what)
+	if !r.setNumber(id, v, what, home) {
+		return false
+	}
+	r.bounds(id, v.Bounds, what) // the value counts whatever its bounds are
+	return true
 }
 
 // setNumber is set without the bounds and the second co-ordinate.
