@@ -23,7 +23,7 @@ func alike(got, want string) error {
 		if i >= len(gotLines) || i >= len(wantLines) {
 			return fmt.Errorf("%d lines, want %d", len(gotLines), len(wantLines))
 		}
-		g, w := gotLines[i], wantLines[i]
+		g, w := evidence(gotLines[i]), evidence(wantLines[i])
 		differ := fmt.Errorf("line %d is\n%s\nwant\n%s", i+1, g, w)
 		if numberText.ReplaceAllString(g, "#") != numberText.ReplaceAllString(w, "#") {
 			return differ
@@ -42,4 +42,13 @@ func alike(got, want string) error {
 		}
 	}
 	return nil
+}
+
+// evidence cuts the line that tells how a point was found behind its way: the
+// steps and what is left of the balances are a matter of rounding.
+func evidence(line string) string {
+	if strings.HasPrefix(line, "Found ") {
+		line, _, _ = strings.Cut(line, " in ")
+	}
+	return line
 }

@@ -172,6 +172,32 @@ func interrupts(ts *testscript.TestScript, neg bool, args []string) {
 	}
 }
 
+// TestInvalidCircuits runs the corpus of texts with errors: each ends with 2, says
+// where its error is, and has no answer.
+func TestInvalidCircuits(t *testing.T) {
+	files, err := filepath.Glob(filepath.Join("..", "..", "testdata", "invalid", "*.bias"))
+	if err != nil || len(files) == 0 {
+		t.Fatalf("no files: %v", err)
+	}
+	for _, file := range files {
+		t.Run(filepath.Base(file), func(t *testing.T) {
+			cmd := exec.Command("biaswright", "solve", file)
+			var out, errs strings.Builder
+			cmd.Stdout, cmd.Stderr = &out, &errs
+			_ = cmd.Run()
+			if code := cmd.ProcessState.ExitCode(); code != 2 {
+				t.Errorf("exit code %d", code)
+			}
+			if out.Len() > 0 {
+				t.Errorf("standard output has %q", out.String())
+			}
+			if !strings.Contains(errs.String(), " error: ") {
+				t.Errorf("standard error has %q", errs.String())
+			}
+		})
+	}
+}
+
 // A command whose reader has gone says nothing.
 func TestBrokenPipeEndsQuietly(t *testing.T) {
 	read, write, err := os.Pipe()
@@ -233,6 +259,8 @@ func TestAlikeTellsNumbersFromText(t *testing.T) {
 		{"left 1.2e-17 A", "left 1.2e-3 A", false},
 		{"-1.0", "1.0", false},
 		{"1", "1\n", false},
+		{"Found directly in 7 steps; left 0 A at tail.", "Found directly in 6 steps; left 1e-17 A at out.", true},
+		{"Found directly in 7 steps.", "Found by supply arc in 7 steps.", false},
 	} {
 		if err := alike(c.got, c.want); (err == nil) != c.alike {
 			t.Errorf("alike(%q, %q) = %v", c.got, c.want, err)

@@ -1,6 +1,7 @@
 package cli
 
 import (
+	"bytes"
 	"fmt"
 
 	"github.com/urfave/cli/v2"
@@ -15,9 +16,10 @@ func (r *runner) partsCommand() *cli.Command {
 	return &cli.Command{
 		Name:      "parts",
 		Usage:     "list the parts that ship (use generic)",
-		UsageText: "biaswright parts [--json | --plain]",
+		UsageText: "biaswright parts [--json | --source | --plain]",
 		Flags: []cli.Flag{
 			&cli.BoolFlag{Name: "json", Usage: "print the list as JSON", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "source", Usage: "print the parts as the text that they are, with the source of each value", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
 		},
 		Action: r.parts,
@@ -30,18 +32,24 @@ func (r *runner) parts(c *cli.Context) error {
 	}
 	r.plain = c.Bool("plain")
 	var shelves []*netlist.Circuit
+	var texts [][]byte
 	for _, name := range shelf.Names() {
 		text, _ := shelf.Text(name)
 		parts, found := netlist.ReadParts("shelf "+name, text, devices.Catalogue(), r.library())
 		if found.HasErrors() {
 			panic(fmt.Sprintf("the shelf that ships has errors: %v", found)) // a test reads it
 		}
-		shelves = append(shelves, parts)
+		shelves, texts = append(shelves, parts), append(texts, text)
 	}
 	var err error
-	if c.Bool("json") {
+	switch {
+	case c.Bool("json") && c.Bool("source"):
+		return usagef("--json and --source exclude each other")
+	case c.Bool("json"):
 		err = render.WriteJSON(r.out, render.PartsJSON(shelves))
-	} else {
+	case c.Bool("source"):
+		_, err = r.out.Write(bytes.Join(texts, []byte("\n")))
+	default:
 		err = render.Parts(r.out, shelves, r.look())
 	}
 	if err != nil {

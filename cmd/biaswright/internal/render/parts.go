@@ -27,6 +27,8 @@ func Parts(out io.Writer, shelves []*netlist.Circuit, l Look) error {
 			}
 		}
 	}
+	fmt.Fprintln(w)
+	wrap(w, "", "Where each value is from: biaswright parts --source")
 	return w.err
 }
 

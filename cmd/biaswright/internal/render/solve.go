@@ -133,11 +133,18 @@ func printEvidence(w io.Writer, r *solve.Result, l Look) {
 	}
 }
 
+// wayText fits the name of a way into "found … in 7 steps".
 func wayText(way string) string {
-	if way == "direct" {
+	switch way {
+	case "direct":
 		return "directly"
+	case "from rest":
+		return way
+	case "settling":
+		return "by settling"
+	default:
+		return "by a " + way
 	}
-	return "by " + way
 }
 
 func count(n int, what string) string {
