@@ -69,10 +69,9 @@ func Main(args []string, in io.Reader, out, errs io.Writer) int {
 	signal.Notify(interrupted, os.Interrupt)
 	defer signal.Stop(interrupted)
 	go func() {
-		if _, ok := <-interrupted; ok {
-			r.partial.remove()
-			os.Exit(exitInterrupted)
-		}
+		<-interrupted
+		r.partial.remove()
+		os.Exit(exitInterrupted)
 	}()
 	return r.run(args)
 }

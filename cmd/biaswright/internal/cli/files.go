@@ -19,6 +19,14 @@ import (
 // standardInput is the name that means the standard input.
 const standardInput = "-"
 
+// shownName is what answers and messages call a file.
+func shownName(name string) string {
+	if name == standardInput {
+		return "standard input"
+	}
+	return name
+}
+
 // read returns a file's text, or what standard input holds. It stops reading
 // where a text is longer than the language admits.
 func (r *runner) read(name string) ([]byte, error) {

@@ -155,14 +155,11 @@ func (r *runner) tell(t *trouble) {
 
 // answer solves one file and notes the exit code it earns.
 func (r *runner) answer(name string, q *request) (*render.Answer, *trouble) {
+	shown := shownName(name)
 	text, err := r.read(name)
 	if err != nil {
 		r.raise(exitFile)
-		return nil, &trouble{file: name, err: err}
-	}
-	shown := name
-	if name == standardInput {
-		shown = "standard input"
+		return nil, &trouble{file: shown, err: err}
 	}
 	r.texts[shown] = text
 	nominal, actual, warnings, wrong := r.circuits(shown, text, q)

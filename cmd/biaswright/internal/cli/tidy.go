@@ -47,11 +47,12 @@ func (r *runner) tidyFile(name string, check, write bool) error {
 	text, err := r.read(name)
 	if err != nil {
 		r.raise(exitFile)
-		r.complain("cannot read %s: %v", name, err)
+		r.complain("cannot read %s: %v", shownName(name), err)
 		return nil
 	}
-	r.texts[name] = text
-	tree, found := syntax.Parse(name, text)
+	shown := shownName(name)
+	r.texts[shown] = text
+	tree, found := syntax.Parse(shown, text)
 	r.diagnose(found)
 	if found.HasErrors() {
 		r.raise(exitUsage)
@@ -62,7 +63,7 @@ func (r *runner) tidyFile(name string, check, write bool) error {
 	switch {
 	case check && differs:
 		r.raise(exitNotMet)
-		_, err = fmt.Fprintln(r.out, name)
+		_, err = fmt.Fprintln(r.out, shown)
 	case check:
 	case write && differs:
 		if err := r.replace(name, canonical); err != nil {

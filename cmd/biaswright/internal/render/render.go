@@ -5,6 +5,7 @@ package render
 import (
 	"io"
 	"strings"
+	"unicode"
 
 	"github.com/clipperhouse/displaywidth"
 )
@@ -48,18 +49,19 @@ func (l Look) glyph(g glyph) string {
 // ascii spells what a plain screen cannot show.
 var ascii = strings.NewReplacer("Ω", "ohm", "Ω", "ohm", "µ", "u", "μ", "u", "°C", "degC", "→", "->", "×", "x", "±", "+-", "…", "...")
 
-// text gives s as this look shows it. Names stay as the file has them; what is
-// left beyond ASCII becomes '?'.
+// text gives s as this look shows it. Names stay as the file has them; what a
+// terminal would obey becomes '?', and in a plain look what is left beyond ASCII
+// too.
 func (l Look) text(s string) string {
-	if !l.Plain {
-		return s
+	if l.Plain {
+		s = ascii.Replace(s)
 	}
 	return strings.Map(func(r rune) rune {
-		if r > '~' {
+		if unicode.IsControl(r) || l.Plain && r > unicode.MaxASCII {
 			return '?'
 		}
 		return r
-	}, ascii.Replace(s))
+	}, s)
 }
 
 // An ink is the weight or colour of a stretch of text; it never carries meaning

@@ -77,6 +77,15 @@ func TestPlainScreenIsASCII(t *testing.T) {
 	}
 }
 
+// A title cannot make the terminal do anything.
+func TestTitleIsOnlyText(t *testing.T) {
+	a := fixture()
+	a.Circuit.Title = "red \x1b[31m alert \a"
+	if got := screen(t, a, Look{}); strings.ContainsAny(got, "\x1b\a") {
+		t.Errorf("%q", got)
+	}
+}
+
 func TestColourAddsNothingButColour(t *testing.T) {
 	coloured := screen(t, fixture(), Look{Colour: true})
 	for {
