@@ -52,7 +52,6 @@ type Circuit struct {
 
 	Warnings diag.List
 
-	// unexported: catalogue, slot order, name index, tree for rebuilding …
 	priv private
 }
 

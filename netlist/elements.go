@@ -5,7 +5,6 @@ import (
 	"slices"
 	"strings"
 
-	"biaswright/netlist/diag"
 	"biaswright/netlist/quantity"
 	"biaswright/netlist/syntax"
 )
@@ -316,29 +315,23 @@ func numberOf(m *syntax.Modifier) *syntax.Value {
 // a rating, told apart by its unit.
 func (r *resolver) plainModifier(l *laid, m *syntax.Modifier) {
 	e := &r.c.Elements[l.index]
-	if m.Value == nil {
-		switch {
-		case m.Bounds == nil && m.Name != nil:
-			r.errorf("unknown-name", m.Name.Span, didYouMean(m.Name.Text, modifierWords), "there is no modifier %s", m.Name.Text)
-		case m.Bounds != nil && e.Value == None:
+	if m.Bounds != nil {
+		if e.Value == None {
 			r.errorf("wrong-place", m.Span, "state the tolerances of a part's parameters in its part", "%s is %s, which has no value for a tolerance", e.Name, r.c.describe(l.index))
-		case m.Bounds != nil:
-			r.bounds(e.Value, m.Bounds, e.Name)
+			return
 		}
+		r.bounds(e.Value, m.Bounds, e.Name)
 		return
 	}
-	unit, text, at := r.unitOf(m.Value)
-	if unit == nil {
-		return
-	}
+	lit := m.Value.Literal
 	resistor := e.Kind == Resistor || e.Kind == Link || e.Kind == Open
 	slot, name, what, keep := &e.TC, ".TC", "the temperature coefficient of ", rule{}
-	switch *unit {
+	switch lit.Unit {
 	case quantity.PerKelvin:
 	case quantity.Watt:
 		slot, name, what, keep = &e.Rating, ".rating", "the rating of ", rule{sign: Positive}
 	default:
-		r.errorf("unit", at, "a tolerance is in %, a temperature coefficient in ppm/K, a rating in W", "%s is no modifier of %s", text, e.Name)
+		r.errorf("unit", lit.Span, "a tolerance is in %, a temperature coefficient in ppm/K, a rating in W", "%s is no modifier of %s", lit.Text, e.Name)
 		return
 	}
 	what += e.Name
@@ -350,22 +343,8 @@ func (r *resolver) plainModifier(l *laid, m *syntax.Modifier) {
 		r.errorf("duplicate-statement", m.Span, "", "%s is stated twice", what)
 		return
 	}
-	*slot = r.newSlot(Slot{Name: e.Name + name, Unit: *unit, Value: math.NaN(), Span: m.Span}, keep)
+	*slot = r.newSlot(Slot{Name: e.Name + name, Unit: lit.Unit, Value: math.NaN(), Span: m.Span}, keep)
 	r.set(*slot, m.Value, what, r.local)
-}
-
-// unitOf is the unit of a value, that of its given value where it names one; nil
-// where that has none, which was said then.
-func (r *resolver) unitOf(v *syntax.Value) (*quantity.Unit, string, diag.Span) {
-	if v.Name == nil {
-		return &v.Literal.Unit, v.Literal.Text, v.Literal.Span
-	}
-	id, ok := r.givenNamed(*v.Name, r.local)
-	if !ok {
-		return nil, "", v.Name.Span
-	}
-	unit := r.c.Slots[id].Unit
-	return &unit, v.Name.Text, v.Name.Span
 }
 
 // besides binds beside=Q1, once every element's kind is known.

@@ -106,10 +106,6 @@ func (e *Expr) Ref() (Ref, bool) {
 	return e.refs[0], true
 }
 
-// Refs returns the quantities that occur in the expression, in the order of the
-// text. The result must not be modified.
-func (e *Expr) Refs() []Ref { return e.refs }
-
 // constant tells that no slot and no quantity occurs.
 func (e *Expr) constant() bool {
 	for i := range e.ops {

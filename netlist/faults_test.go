@@ -22,7 +22,7 @@ func repeat(n int, line string) string {
 // thing a thousand times. Nothing here is timed; what grew with the square of the
 // size would show.
 func TestWrongFromEndToEnd(t *testing.T) {
-	const n = 3000
+	const n = 1200
 	head := "rail VCC = 5 V\npart sig diode\npath VCC -> RT 1k -> gnd\n"
 	for _, tt := range []struct {
 		name, text, code string
@@ -33,7 +33,7 @@ func TestWrongFromEndToEnd(t *testing.T) {
 		{"dead ends", repeat(n, "path VCC -> R$ 1k -> b$"), "dead-end", mostFindings},
 		{"cuts", repeat(n, "path VCC -> I$ 1 mA -> a$ -> J$ 1 mA -> gnd"), "current-cut", mostFindings},
 		{"a chain of given values", repeat(n, "given G$ = G$+"), "circle", n / deepest},
-		{"beside in a circle", repeat(n, "path VCC -> D$ sig beside=D$+ -> gnd") + "path VCC -> D3000 sig beside=D0 -> gnd", "circle", 1},
+		{"beside in a circle", repeat(n, "path VCC -> D$ sig beside=D$+ -> gnd") + "path VCC -> D1200 sig beside=D0 -> gnd", "circle", 1},
 		{"rows", repeat(n, "path VCC -> D$ sig row=1000 -> gnd"), "row", 1},
 		{"unknown parts", repeat(n, "path VCC -> D$ sgi$ -> gnd"), "unknown-name", n},
 	} {

@@ -1,12 +1,13 @@
 package netlist
 
 import (
-	"biaswright/netlist/syntax"
 	"fmt"
 	"math/rand/v2"
 	"strconv"
 	"strings"
 	"testing"
+
+	"biaswright/netlist/syntax"
 
 	"github.com/google/go-cmp/cmp"
 	"pgregory.net/rapid"
@@ -175,7 +176,7 @@ func shuffledWords(n int) []string {
 // What is nearly right must not panic either; the fuzz target has the same texts
 // as seeds, and here there are more.
 func TestNearlyRight(t *testing.T) {
-	for _, text := range shuffledWords(2000) {
+	for _, text := range shuffledWords(500) {
 		c, diags := Read("near.bias", []byte(text), testCatalogue(), nil)
 		if (c == nil) != diags.HasErrors() {
 			t.Fatalf("circuit %v with %v in\n%s", c != nil, diags, text)

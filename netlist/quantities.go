@@ -46,20 +46,6 @@ func (c *Circuit) symbols(i int) []string {
 	return transistorSymbols
 }
 
-// Symbols lists the symbols of the quantities that a subject has, in a fixed
-// order; for an element those of the whole of it.
-func (c *Circuit) Symbols(s Subject, index int) []string {
-	switch s {
-	case OfNode:
-		return append([]string(nil), nodeSymbols...)
-	case OfLoad:
-		return append([]string(nil), loadSymbols...)
-	case OfElement:
-		return append([]string(nil), c.symbols(index)...)
-	}
-	return append([]string(nil), branchSymbols...)
-}
-
 // symbolList writes the quantities of a subject: "R1.V, R1.I or R1.P".
 func symbolList(subject string, symbols []string) string {
 	out := ""

@@ -336,3 +336,44 @@ func TestQuantities(t *testing.T) {
 		}
 	}
 }
+
+// A given value may stand wherever a number may, and reaches all of them.
+func TestGivensEverywhere(t *testing.T) {
+	c := read(t, `
+use generic
+given VG = 5 V
+given TG = 30 degC
+given RG = 1 kohm
+given IG = 2 mA
+given PG = 0.25 W
+given SG = 4
+given WG = 5%
+given VD = 0.6 V
+given BG = 150
+rail VCC = VG (4 V .. 6 V)
+ambient = TG
+part sig diode drop = VD at IG
+part gp npn betaF = BG
+path VCC -> R1 RG -> a -> D1 sig size=SG -> gnd
+path VCC -> D2 drop VD -> b -> I1 IG -> gnd
+path b -> R3 1k 0.25 W -> gnd
+path VCC -> R2 1k -> c -> D4 red -> e -> Q1 gp base=c -> gnd
+hold R1.I within WG
+target R1.I = IG within WG
+assume Vbe = VD, betaF = BG
+measured D1.V = VD
+keep R1.P < PG
+`)
+	c = with(t, c, "VG=6", "TG=40", "RG=2k", "IG=3 mA", "SG=8", "WG=10%", "VD=0.7", "BG=200")
+	for name, want := range map[string]float64{
+		"VCC": 6, "ambient": 40, "R1": 2000, "D1.size": 8, "D1.drop": 0.7, "D1.drop.at": 3e-3, "I1": 3e-3, "D2": 0.7, "Q1.betaF": 200,
+		"D4.drop": 1.8, "red.drop": 1.8,
+	} {
+		if got := number(t, c, name); got != want {
+			t.Errorf("%s = %v, want %v", name, got, want)
+		}
+	}
+	if c.Hold.Within != 0.1 || c.Targets[0].Value != 3e-3 || c.Targets[0].Within != 0.1 || c.Assumed[0].Value != 0.7 || c.Assumed[1].Value != 200 || c.Measured[0].Value != 0.7 {
+		t.Errorf("requirements: %+v %+v %+v %+v", c.Hold, c.Targets, c.Assumed, c.Measured)
+	}
+}

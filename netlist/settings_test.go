@@ -2,6 +2,7 @@ package netlist
 
 import (
 	"math"
+	"strconv"
 	"strings"
 	"testing"
 
@@ -229,6 +230,31 @@ func TestPropagateEqualsWith(t *testing.T) {
 			t.Fatalf("(-with +propagated):\n%s", diff)
 		}
 	})
+}
+
+// What Propagate computes is what the text with that number says.
+func TestPropagateEqualsFreshText(t *testing.T) {
+	base := read(t, follows)
+	for stated, name := range map[string]string{
+		"given RSET = 1 kohm": "RSET", "given INOM = 1 mA": "INOM", "rail VCC = 12 V (10.8 V .. 13.2 V)": "VCC", "Vbe = 0.65 V": "gp.Vbe",
+	} {
+		rapid.Check(t, func(t *rapid.T) {
+			value := rapid.Float64Range(0.1, 100).Draw(t, name)
+			id, _ := base.Lookup(name)
+			head, _, _ := strings.Cut(stated, "= ")
+			text := strings.Replace(follows, stated, head+"= "+strconv.FormatFloat(value, 'f', -1, 64)+" "+base.Slots[id].Unit.String(), 1)
+			fresh, diags := Read("fresh.bias", []byte(text), testCatalogue(), nil)
+			if fresh == nil {
+				t.Fatalf("%v", diags)
+			}
+			values := base.Values()
+			values[id] = value
+			base.Propagate(values)
+			if diff := cmp.Diff(numbers(fresh.Values()), numbers(values)); diff != "" {
+				t.Fatalf("(-fresh +propagated):\n%s", diff)
+			}
+		})
+	}
 }
 
 func TestPropagateAllocatesNothing(t *testing.T) {

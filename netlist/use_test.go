@@ -1,12 +1,13 @@
 package netlist
 
 import (
-	"biaswright/netlist/syntax"
 	"errors"
 	"os"
 	"path/filepath"
 	"strings"
 	"testing"
+
+	"biaswright/netlist/syntax"
 )
 
 var testShelves = map[string][]byte{
