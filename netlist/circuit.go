@@ -1,6 +1,18 @@
 // Package netlist resolves a parsed text into a Circuit: names bound, numbers
 // in SI units, paths expanded into elements between nodes, requirements bound
 // to quantities, and the topology checked.
+//
+// Every number of a circuit is a slot. A slot has its own number or follows
+// others: an element's parameter its part's, a value that a given name stands for
+// the given value, a given value the expression that defines it. Followers are
+// kept in an order in which each comes behind what it depends on, so that one pass
+// brings all of them up to date (Propagate) and one pass backwards carries
+// derivatives to what they follow (Chain).
+//
+// Which kinds of part exist, and what may be stated of them, the language learns
+// from a Catalogue; it knows no models. What it says of a text are the values of
+// package diag: all errors in one run, in the order of the text, without those
+// that only follow from others.
 package netlist
 
 import (
@@ -20,8 +32,9 @@ const None = -1
 // Gnd is the reference node.
 const Gnd NodeID = 0
 
-// A Circuit is what a text says, ready to be solved. Its structure is never
-// changed after it was made; With makes a changed copy.
+// A Circuit is what a text says, ready to be solved. It is never changed after it
+// was made, so that any number of goroutines may use it; With makes a changed copy,
+// which shares tables with it. Callers must not modify what its fields hold.
 type Circuit struct {
 	File  string
 	Title string

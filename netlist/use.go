@@ -8,6 +8,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strings"
+	"sync"
 
 	"biaswright/netlist/diag"
 	"biaswright/netlist/syntax"
@@ -54,9 +55,12 @@ func (f Files) Shelf(name string) (text []byte, ok bool) {
 	return text, ok
 }
 
-// A library holds the texts that were taken in, so that each is read once.
+// A library holds the texts that were taken in, so that each is read once. Circuits
+// that were made of each other share it, perhaps between goroutines.
 type library struct {
-	src   Source
+	src Source
+
+	mu    sync.Mutex
 	texts map[string]*syntax.File // by name; nil for one with errors
 	names map[[2]string]string    // by the text that uses it and the path written there
 }
@@ -77,6 +81,7 @@ func (r *resolver) takeIn(s *scope, f *syntax.File, chain []string) {
 	for _, u := range statements[*syntax.Use](f) {
 		name, tree, ok := r.used(u, f.Name, chain)
 		if !ok {
+			r.partial = true // the names that it would have brought in are not unknown
 			continue
 		}
 		from, known := r.scopes[name]
@@ -107,6 +112,8 @@ func (r *resolver) declareTaken(s *scope, f *syntax.File) {
 
 // used reads the text that a use statement names, and refuses circles.
 func (r *resolver) used(u *syntax.Use, from string, chain []string) (string, *syntax.File, bool) {
+	r.library.mu.Lock()
+	defer r.library.mu.Unlock()
 	name, seen := r.library.names[[2]string{from, u.Path}]
 	var text []byte
 	if !seen || u.Shelf != nil {

@@ -74,6 +74,9 @@ func TestUse(t *testing.T) {
 			t.Errorf("%q: %v, want %q", text, diags, want)
 		}
 	}
+	if _, diags := Read("main.bias", []byte("use \"none.bias\"\n"+circuit), testCatalogue(), src); len(diags) != 1 {
+		t.Errorf("names that a text would have brought in are not unknown: %v", diags)
+	}
 	if c, diags := Read("main.bias", []byte("use \"broken.bias\"\n"+circuit), testCatalogue(), src); c != nil || diags[0].Span.File != "broken.bias" && diags[len(diags)-1].Span.File != "broken.bias" {
 		t.Errorf("the errors of a text that is taken in have their places there: %v", diags)
 	}
