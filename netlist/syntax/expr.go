@@ -135,22 +135,10 @@ func (p *parser) named(t token) Expr {
 	return &NameExpr{p.word(t)}
 }
 
-// boundsAhead tells whether the bracket n tokens ahead holds bounds.
+// boundsAhead tells whether the bracket n tokens ahead holds bounds: a number,
+// with its sign or without, and two points.
 func (p *parser) boundsAhead(n int) bool {
-	for depth := 0; ; n++ {
-		switch t := p.ahead(n); {
-		case t.kind == kindEnd:
-			return false
-		case t.kind == kindRange:
-			return depth == 1
-		case t.punct == '(':
-			depth++
-		case t.punct == ')':
-			if depth--; depth == 0 {
-				return false
-			}
-		}
-	}
+	return p.ahead(n+2).kind == kindRange || p.ahead(n+1).kind == kindPunct && p.ahead(n+3).kind == kindRange
 }
 
 func (p *parser) call(t token) Expr {

@@ -141,6 +141,7 @@ type parser struct {
 	notes  Notes
 	i      int  // the token to read next
 	failed bool // the statement has an error
+	stop   bool // another statement begins here, and lists end
 	wrong  int  // the token at which the first one was found
 
 	depth, operators int
@@ -185,7 +186,7 @@ func (p *parser) summary() {
 // the comments around it. It returns false at the end of the text.
 func (p *parser) gather() bool {
 	p.toks, p.inner, p.notes = p.toks[:0], p.inner[:0], Notes{}
-	p.i, p.failed, p.depth = 0, false, 0
+	p.i, p.failed, p.stop, p.depth = 0, false, false, 0
 	begun := len(p.file.Statements) > 0 || p.count > 0 // something stands before
 	blank, empty, first := false, true, true
 	for {
@@ -271,32 +272,50 @@ func (p *parser) gathered() bool {
 	return true
 }
 
-// one parses the statement that was gathered.
+// one parses what was gathered: a statement, or several where a line that ends in
+// an arrow or a comma has swallowed the next.
 func (p *parser) one() {
-	var st Statement
-	if p.try(func() { st = p.statement() }) && !p.failed {
-		p.file.Statements = append(p.file.Statements, st)
-		return
+	for {
+		said := len(p.list)
+		var st Statement
+		if p.try(func() { st = p.statement() }) && !p.failed {
+			p.file.Statements = append(p.file.Statements, st)
+			return
+		}
+		if !p.resume(said) {
+			return
+		}
 	}
-	p.resume()
 }
 
-// resume looks for a statement that was swallowed because the line before it
-// ended in an arrow or a comma, and reads on from there.
-func (p *parser) resume() {
+// resume goes on at the next line whose first word begins a statement, and takes
+// back what was said of it as a part of the one before. It returns false where
+// there is no such line. The tree is incomplete in any case, so that comments are
+// left out from here on.
+func (p *parser) resume(said int) bool {
 	from := min(p.wrong, len(p.toks)-1)
 	for from > 0 && !p.toks[from].first {
 		from--
 	}
-	for i := max(from, 1); i < len(p.toks); i++ {
-		t := p.toks[i]
-		if !t.first || !p.isStatement(t) {
-			continue
-		}
-		p.list = slices.DeleteFunc(p.list, func(d diag.Diagnostic) bool { return d.Span.Start.Offset >= t.start.Offset })
-		p.s.pos = t.start
-		return
+	next := max(from, 1)
+	for next < len(p.toks) && !p.swallowed(next) {
+		next++
 	}
+	if next >= len(p.toks) {
+		return false
+	}
+	start := p.toks[next].start.Offset
+	late := slices.DeleteFunc(p.list[said:], func(d diag.Diagnostic) bool { return d.Span.Start.Offset >= start })
+	p.list = p.list[:said+len(late)]
+	p.toks, p.inner, p.notes = p.toks[next:], p.inner[:0], Notes{}
+	p.i, p.failed, p.stop, p.depth = 0, false, false, 0
+	return true
+}
+
+// swallowed tells that token i begins a line as a statement does, though it goes
+// on from the line before.
+func (p *parser) swallowed(i int) bool {
+	return i > 0 && i < len(p.toks) && p.toks[i].first && p.isStatement(p.toks[i])
 }
 
 func (p *parser) isStatement(t token) bool {
@@ -332,10 +351,10 @@ func (p *parser) fail(t token, code, hint, format string, args ...any) {
 	}
 	switch {
 	case quiet: // the scanner has said it
-	case line > 0 && p.isStatement(p.toks[line]):
+	case p.swallowed(line):
 		before := p.toks[line-1]
 		p.s.complain(before, "syntax", "a line that ends in -> or , goes on in the next one", "nothing follows the %s at the end of the line", p.text(before))
-		at = line
+		at, p.stop = line, true
 	default:
 		p.s.complain(t, code, hint, format, args...)
 	}

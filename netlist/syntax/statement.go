@@ -89,6 +89,9 @@ func (p *parser) statement() Statement {
 		p.i--
 		p.fail(first, "unknown-statement", p.statementHint(first), "%s begins no statement", p.describe(first))
 	}
+	if p.failed {
+		return nil
+	}
 	p.ended()
 	for _, c := range p.inner { // comments that no list has taken
 		s.Notes.Before = append(s.Notes.Before, Comment{Text: c.text})
@@ -206,7 +209,7 @@ func (p *parser) params(n *Notes, of bool) []Param {
 		if !p.try(func() { out = append(out, p.param(of)) }) {
 			p.toComma(start)
 		}
-		if !p.is(',') {
+		if p.stop || !p.is(',') {
 			break
 		}
 		p.i++
@@ -219,7 +222,7 @@ func (p *parser) params(n *Notes, of bool) []Param {
 // a token.
 func (p *parser) toComma(start int) {
 	depth := 0
-	for i := start; i < len(p.toks); i++ {
+	for i := start; i < len(p.toks) && !p.swallowed(i); i++ {
 		switch p.toks[i].punct {
 		case '(':
 			depth++
@@ -283,11 +286,11 @@ func (p *parser) path(n *Notes) *Path {
 	for {
 		starts = append(starts, p.i)
 		if !p.try(func() { x.Segments = append(x.Segments, p.segment()) }) {
-			for p.tok().kind != kindArrow && p.tok().kind != kindEnd {
+			for !p.segmentEnds(0) && !p.swallowed(p.i) {
 				p.i++
 			}
 		}
-		if p.tok().kind != kindArrow {
+		if p.stop || p.tok().kind != kindArrow {
 			break
 		}
 		p.i++
