@@ -181,6 +181,7 @@ func TestInvalidCircuits(t *testing.T) {
 	}
 	for _, file := range files {
 		t.Run(filepath.Base(file), func(t *testing.T) {
+			t.Parallel()
 			cmd := exec.Command("biaswright", "solve", file)
 			var out, errs strings.Builder
 			cmd.Stdout, cmd.Stderr = &out, &errs

@@ -145,6 +145,32 @@ func TestFailureIsToldWithWhatWasTried(t *testing.T) {
 	validate(t, "solve", JSON(a))
 }
 
+func TestVerdictFigures(t *testing.T) {
+	for _, c := range []struct {
+		unit              string
+		value, low, high  float64
+		wantValue, wantIn string
+	}{
+		{"A", 0.0128223, 0.0135, 0.0165, "12.82 mA", "13.50 .. 16.50 mA"},
+		{"A", 0.042, 0.999e-6, 1.001e-6, "42.00 mA", "0.9990 .. 1.001 µA"}, // far apart
+		{"V", 10.0004, 9.999, 10.001, "10.000 V", "9.9990 .. 10.001 V"},    // a narrow band
+		{"W", 0.2, math.Inf(-1), 0.25, "200.0 mW", "below 250.0 mW"},
+		{"V", 0.2, 1, math.Inf(1), "0.2000 V", "above 1.000 V"},
+		{"", 0.25, math.Inf(-1), 0.5, "0.2500", "below 0.5000"},
+		{"°C", 25, math.Inf(-1), 100, "25.00 °C", "below 100.0 °C"},
+		{"V", 0, -0.001, 0.001, "0 mV", "-1.000 .. 1.000 mV"},
+	} {
+		v := &solve.Verdict{Value: c.value, Low: c.low, High: c.high}
+		f := figuresOf(v, c.unit)
+		if got := f.value(c.value); got != c.wantValue {
+			t.Errorf("value %q, want %q", got, c.wantValue)
+		}
+		if got := f.allowed(v); got != c.wantIn {
+			t.Errorf("allowed %q, want %q", got, c.wantIn)
+		}
+	}
+}
+
 func TestCautionsSayWhatAndHowMuch(t *testing.T) {
 	for _, c := range []struct {
 		caution solve.Caution

@@ -56,34 +56,86 @@ func verdictCells(a *Answer, v *solve.Verdict, l Look) []cell {
 		r[reqValue] = cell{"no value", noInk}
 		return r
 	}
-	sc := scaleFor(v.Value, v.Low, v.High)
-	if !prefixable(unit) {
-		sc = noScale
-	}
-	in := func(x float64) string { return number(sc.in(x)) }
-	u := sc.prefix + unit
-	r[reqValue] = cell{l.text(strings.TrimSpace(in(v.Value) + " " + u)), noInk}
-	r[reqAllowed] = cell{l.text(allowedText(v, in, u)), noInk}
-	side := "inside"
+	f := figuresOf(v, unit)
+	r[reqValue] = cell{l.text(f.value(v.Value)), noInk}
+	r[reqAllowed] = cell{l.text(f.allowed(v)), noInk}
+	side := " inside"
 	if v.Margin < 0 {
-		side = "beyond"
+		side = " beyond"
 	}
 	if !math.IsNaN(v.Margin) && !math.IsInf(v.Margin, 0) {
-		r[reqMargin] = cell{l.text(strings.TrimSpace(in(math.Abs(v.Margin)) + " " + u + " " + side)), noInk}
+		r[reqMargin] = cell{l.text(f.margin(math.Abs(v.Margin)) + side), noInk}
 	}
 	return r
 }
 
-func allowedText(v *solve.Verdict, in func(float64) string, unit string) string {
+// A verdictFigures writes the numbers of one verdict: in one prefix, unless value
+// and bounds are further apart than that; with digits enough to tell the bounds
+// apart.
+type verdictFigures struct {
+	unit          string
+	actual, bound scale
+	digits        int
+}
+
+func figuresOf(v *solve.Verdict, unit string) verdictFigures {
+	f := verdictFigures{unit: unit, digits: digits}
+	if prefixable(unit) {
+		f.actual = scaleFor(v.Value, v.Low, v.High)
+		f.bound = f.actual
+		const apart = 0.01 // the smaller would have lost two of its digits
+		if value, bound := math.Abs(v.Value), largest(v.Low, v.High); min(value, bound) < apart*max(value, bound) && value > 0 {
+			f.actual, f.bound = scaleFor(v.Value), scaleFor(v.Low, v.High)
+		}
+	}
+	if width := v.High - v.Low; width > 0 && !math.IsInf(width, 1) {
+		// Two digits of the band's width, and as many as it lies below the bound.
+		ratio := largest(v.Low, v.High) / width
+		const most = 15 // all that a float64 surely has
+		f.digits = min(max(digits, int(math.Ceil(math.Log10(ratio)))+1), most)
+	}
+	return f
+}
+
+// largest is the larger magnitude of two bounds, of which one may be infinite.
+func largest(low, high float64) float64 {
+	switch {
+	case math.IsInf(low, 0):
+		return math.Abs(high)
+	case math.IsInf(high, 0):
+		return math.Abs(low)
+	default:
+		return max(math.Abs(low), math.Abs(high))
+	}
+}
+
+func (f verdictFigures) write(x float64, s scale) string {
+	text := number(s.in(x))
+	if f.digits > digits && x != 0 {
+		text = significant(s.in(x), f.digits)
+	}
+	return text
+}
+
+func (f verdictFigures) with(text string, s scale) string {
+	return strings.TrimSpace(text + " " + s.prefix + f.unit)
+}
+
+func (f verdictFigures) value(x float64) string { return f.with(f.write(x, f.actual), f.actual) }
+
+func (f verdictFigures) margin(x float64) string { return f.with(number(f.actual.in(x)), f.actual) }
+
+func (f verdictFigures) allowed(v *solve.Verdict) string {
+	low, high := f.write(v.Low, f.bound), f.write(v.High, f.bound)
 	switch {
 	case math.IsInf(v.Low, -1) && math.IsInf(v.High, 1):
 		return ""
 	case math.IsInf(v.Low, -1):
-		return strings.TrimSpace("below " + in(v.High) + " " + unit)
+		return f.with("below "+high, f.bound)
 	case math.IsInf(v.High, 1):
-		return strings.TrimSpace("above " + in(v.Low) + " " + unit)
+		return f.with("above "+low, f.bound)
 	default:
-		return strings.TrimSpace(in(v.Low) + " .. " + in(v.High) + " " + unit)
+		return f.with(low+" .. "+high, f.bound)
 	}
 }
 
