@@ -147,11 +147,21 @@ func (r *resolver) within(v *syntax.Value, e *Expr, what string) (width float64,
 		want = quantity.Kelvin
 	}
 	if !relative && v.Literal != nil && v.Literal.Bare && unit != quantity.One {
-		r.errorf("unit", v.Span, "write "+v.Literal.Text+"%, or a width in "+noun(want), "%s has no unit", what)
+		r.errorf("unit", v.Span, "write "+likelyPercent(v.Literal)+", or a width in "+noun(want), "%s has no unit", what)
 		return 0, false, None, false
 	}
 	width, slot, ok = r.plain(v, want, rule{sign: Positive}, what)
 	return width, relative, slot, ok
+}
+
+// likelyPercent is the percentage that a bare width was probably meant to be: 5% for
+// 5 and for 0.05.
+func likelyPercent(l *syntax.Literal) string {
+	const percent = 100
+	if l.Value < 1 {
+		return show(l.Value*percent, quantity.One) + "%"
+	}
+	return l.Text + "%"
 }
 
 // isRelative tells a width that is a fraction of the value: a percentage, or a

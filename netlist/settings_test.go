@@ -41,7 +41,7 @@ path VCC -> R1 RSET -> b -> R2 RTWO 10% -> gnd
 path VCC -> R3 47 1% -> c -> Q1 gp base=b -> e -> R4 0 -> gnd
 path VCC -> R5 47 1% -> d -> Q2 gp base=b -> f -> R6 100 -> gnd
 path VCC -> LAMP sig row=2 -> g -> I1 INOM -> gnd
-path g -> R7 1k -> gnd
+path g -> R7 1k -> GND
 target Q1.Ic = INOM within 10%
 `
 
