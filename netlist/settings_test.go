@@ -4,6 +4,7 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"sync"
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
@@ -278,4 +279,23 @@ func TestChain(t *testing.T) {
 			t.Errorf("d/d%s = %v, want %v", name, got, want)
 		}
 	}
+}
+
+// Workers make changed copies of one circuit at once, the structure included.
+func TestWithFromManyGoroutines(t *testing.T) {
+	c := read(t, "use generic\npart sig diode\nrail VCC = 12 V\ngiven RX = 1 kohm\npath VCC -> LAMP red -> a -> R1 RX -> gnd\npath a -> D1 sig -> gnd\n")
+	var group sync.WaitGroup
+	for i := 1; i <= 8; i++ {
+		group.Go(func() {
+			out, diags := c.With(settings("LAMP.row="+strconv.Itoa(i), "RX="+strconv.Itoa(i))...)
+			if out == nil {
+				t.Errorf("%v", diags)
+				return
+			}
+			if id, _ := out.Lookup("R1"); out.Value(id) != float64(i) || len(out.Elements[0].Chain) != i+1 {
+				t.Errorf("row of %d: %v ohm, %v", i, out.Value(id), out.Elements[0].Chain)
+			}
+		})
+	}
+	group.Wait()
 }
