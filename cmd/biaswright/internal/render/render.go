@@ -25,8 +25,8 @@ var (
 	wire    = glyph{"│", "|"}
 	dot     = glyph{"●", "*"} // a named node: the connection dot of a schematic
 	ring    = glyph{"○", "o"} // a node that no word of the file names
-	supply  = glyph{"┬", "+"} // a path's end on a rail
-	ground  = glyph{"┴", "="} // a path's end on gnd
+	supply  = glyph{"┬", "+"} // a path's start on a rail or on gnd
+	ground  = glyph{"┴", "="} // a path's end on a rail or on gnd
 	leaves  = glyph{"├─▸", "|->"}
 	joins   = glyph{"├─◂", "|-<"}
 	inward  = glyph{"◂", "<-"} // into a placed part, or out of it

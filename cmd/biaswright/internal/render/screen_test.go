@@ -336,6 +336,7 @@ func TestSmallPathHasItsOwnPrefix(t *testing.T) {
 		a.Result.Point.Elements[i].I *= 1e-6
 		a.Result.Point.Elements[i].P *= 1e-6
 	}
+	a.Result.Point.Elements[4].Ib *= 1e-6 // the path's one branch
 	got := screen(t, a, Look{})
 	if !strings.Contains(got, "current [nA]  power [nW]") || !strings.Contains(got, "current [mA]  power [mW]") {
 		t.Error(got)

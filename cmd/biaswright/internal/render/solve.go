@@ -140,6 +140,8 @@ func wayText(way string) string {
 		return "directly"
 	case "from rest":
 		return way
+	case "near":
+		return "from the voltages asked for"
 	case "settling":
 		return "by settling"
 	default:

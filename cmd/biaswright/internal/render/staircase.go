@@ -3,6 +3,7 @@ package render
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"biaswright/netlist"
@@ -59,7 +60,7 @@ func newStair(l Look, p *solve.Point, over map[string]string) *stair {
 		}
 		s.largest = max(s.largest, math.Abs(s.current(i)))
 	}
-	s.common = s.unitsOf(s.everything())
+	s.common = s.unitsOf(s.everything(), nil)
 	return s
 }
 
@@ -139,8 +140,9 @@ func (s *stair) everything() []int {
 
 // unitsOf finds the prefixes that these elements ask for. Node voltages share
 // the prefix of the drops, so that a drop is seen as their difference.
-func (s *stair) unitsOf(elements []int) units {
-	var v, a, w []float64
+func (s *stair) unitsOf(elements []int, more []float64) units {
+	var v, w []float64
+	a := slices.Clone(more)
 	for _, i := range elements {
 		v = append(v, s.voltage(i))
 		a = append(a, s.current(i), s.currentOut(i))
@@ -153,9 +155,10 @@ func (s *stair) unitsOf(elements []int) units {
 }
 
 // unitsFor keeps the screen's prefixes for a path unless its figures are so much
-// smaller than the largest that they would be rows of zeros.
-func (s *stair) unitsFor(elements []int) units {
-	own := s.unitsOf(elements)
+// smaller than the largest that they would be rows of zeros. More are currents in
+// A that stand beside the elements'.
+func (s *stair) unitsFor(elements []int, more []float64) units {
+	own := s.unitsOf(elements, more)
 	u := s.common
 	const apart = 3 // powers of ten: one prefix
 	if s.common.amps.exp-own.amps.exp > apart {
@@ -191,7 +194,7 @@ func (s *stair) path(p *netlist.Path) {
 			on = append(on, st.Element)
 		}
 	}
-	u := s.unitsFor(on)
+	u := s.unitsFor(on, s.branchCurrents(p))
 	first, last := p.Steps[0].Node, p.Steps[len(p.Steps)-1].Node
 	title := s.name(first) + " " + s.look.glyph(arrow) + " " + s.name(last)
 	s.head(title, u, "node", "drop", "current", "power")
@@ -201,7 +204,7 @@ func (s *stair) path(p *netlist.Path) {
 		case st.Element >= 0:
 			flow = s.element(st.Element, u, flow)
 		default:
-			s.node(st.Node, u, k == 0)
+			s.node(st.Node, u, k == 0, k == len(p.Steps)-1)
 			if s.branches(p, k, u) {
 				flow = math.NaN()
 			}
@@ -218,14 +221,13 @@ func (s *stair) name(n netlist.NodeID) string {
 }
 
 // node puts a node with its voltage.
-func (s *stair) node(n netlist.NodeID, u units, top bool) {
+func (s *stair) node(n netlist.NodeID, u units, top, end bool) {
 	g, i := dot, noInk
+	held := n == netlist.Gnd || s.c.Nodes[n].Rail >= 0
 	switch {
-	case n == netlist.Gnd && !top:
-		g = ground
-	case n == netlist.Gnd || (top && s.c.Nodes[n].Rail >= 0):
+	case held && top:
 		g = supply
-	case s.c.Nodes[n].Rail >= 0:
+	case held && end:
 		g = ground
 	case s.c.Nodes[n].Made:
 		g, i = ring, faint
@@ -283,20 +285,26 @@ func (s *stair) base(i int, u units) {
 	s.t.add(row{cells: r, lead: s.look.glyph(wire)})
 }
 
-// branches puts what joins or leaves at the path's k-th step, a node. It tells
-// whether anything does.
-func (s *stair) branches(p *netlist.Path, k int, u units) bool {
-	n := p.Steps[k].Node
-	if s.c.Nodes[n].Rail >= 0 || n == netlist.Gnd {
-		return true // the rail takes what it must; its own line tells
-	}
-	above, below := netlist.None, netlist.None
+// neighbours are the elements before and behind a path's k-th step, or None.
+func neighbours(p *netlist.Path, k int) (above, below int) {
+	above, below = netlist.None, netlist.None
 	if k > 0 {
 		above = p.Steps[k-1].Element
 	}
 	if k+1 < len(p.Steps) {
 		below = p.Steps[k+1].Element
 	}
+	return above, below
+}
+
+// others are the pins at a path's k-th step, a node, that are not on its wire.
+// There are none to tell of at a rail or at gnd.
+func (s *stair) others(p *netlist.Path, k int) []pin {
+	n := p.Steps[k].Node
+	if s.c.Nodes[n].Rail >= 0 || n == netlist.Gnd {
+		return nil
+	}
+	above, below := neighbours(p, k)
 	var others []pin
 	for _, q := range s.pins[n] {
 		onWire := (q.element == above || q.element == below) && q.name != "base"
@@ -304,6 +312,32 @@ func (s *stair) branches(p *netlist.Path, k int, u units) bool {
 			others = append(others, q)
 		}
 	}
+	return others
+}
+
+// branchCurrents are those that a path's nodes tell of, in A.
+func (s *stair) branchCurrents(p *netlist.Path) []float64 {
+	var amps []float64
+	for k := range p.Steps {
+		if p.Steps[k].Element != netlist.None {
+			continue
+		}
+		for _, q := range s.others(p, k) {
+			amps = append(amps, q.into)
+		}
+	}
+	return amps
+}
+
+// branches puts what joins or leaves at the path's k-th step, a node. It tells
+// whether anything does.
+func (s *stair) branches(p *netlist.Path, k int, u units) bool {
+	n := p.Steps[k].Node
+	if s.c.Nodes[n].Rail >= 0 || n == netlist.Gnd {
+		return true // the rail takes what it must; its own line tells
+	}
+	above, below := neighbours(p, k)
+	others := s.others(p, k)
 	// A bus that feeds dozens is told as a sum; sooner where the path ends,
 	// since other paths tell of the rest.
 	most := 6
@@ -349,7 +383,7 @@ func (s *stair) placed() {
 	if len(s.c.Placed) == 0 {
 		return
 	}
-	u := s.unitsFor(s.c.Placed)
+	u := s.unitsFor(s.c.Placed, nil)
 	s.head("Placed", u, "node", "drop", "current", "power")
 	for _, i := range s.c.Placed {
 		e, q := &s.c.Elements[i], &s.p.Elements[i]
