@@ -31,8 +31,10 @@ type row struct{ code, tests string }
 var rules = map[string]row{
 	"netlist/diag":     {},
 	"netlist/quantity": {},
-	"netlist/syntax":   {code: "netlist/diag netlist/quantity"},
-	"netlist":          {code: "netlist/diag netlist/quantity netlist/syntax"},
+	"netlist/syntax":   {code: "netlist/diag netlist/quantity", tests: "netlist/internal/expect"},
+	"netlist":          {code: "netlist/diag netlist/quantity netlist/syntax", tests: "netlist/internal/expect"},
+
+	"netlist/internal/expect": {code: "netlist/diag"},
 
 	"devices/physics": {},
 	"devices/shelf":   {tests: "netlist netlist/diag netlist/quantity netlist/syntax devices"},
@@ -64,7 +66,7 @@ var rules = map[string]row{
 // harnesses are packages that exist for tests: only they, and test files, import
 // the libraries of testsOnly; and no code imports them.
 var (
-	harnesses = []string{"devices/conform", "solve/reftest"}
+	harnesses = []string{"netlist/internal/expect", "devices/conform", "solve/reftest"}
 	testsOnly = []string{
 		"testing", "pgregory.net/rapid", "github.com/google/go-cmp", "github.com/cockroachdb/apd/v3",
 		"github.com/rogpeppe/go-internal",

@@ -3,7 +3,11 @@ package reftest
 import (
 	"os"
 	"path/filepath"
+	"slices"
+	"strings"
 	"testing"
+
+	"github.com/google/go-cmp/cmp"
 
 	"biaswright/netlist"
 	"biaswright/solve"
@@ -113,4 +117,32 @@ func TestWorkloadsHaveTheirSize(t *testing.T) {
 				want.file, free, transistor, junction, want.free, want.transistor, want.junction)
 		}
 	}
+}
+
+// TestReadmeShowsTheCircuit keeps the text that README prints in step with the
+// file, comments and blank lines aside.
+func TestReadmeShowsTheCircuit(t *testing.T) {
+	readme, err := os.ReadFile("../../README.md")
+	if err != nil {
+		t.Fatal(err)
+	}
+	_, rest, _ := strings.Cut(string(readme), "without its comments:\n\n```\n")
+	shown, _, found := strings.Cut(rest, "```\n")
+	if !found {
+		t.Fatal("README shows no circuit")
+	}
+	file, err := os.ReadFile(filepath.Join(filepath.Dir(circuitsGlob), "mast-lamp.bias"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if d := cmp.Diff(statements(string(file)), statements(shown)); d != "" {
+		t.Errorf("README differs from the file (-file +README):\n%s", d)
+	}
+}
+
+// statements are a text's lines without comments and blank lines.
+func statements(text string) []string {
+	return slices.DeleteFunc(strings.Split(text, "\n"), func(line string) bool {
+		return line == "" || strings.HasPrefix(line, "#")
+	})
 }

@@ -159,7 +159,9 @@ func (d *draw) resistor(a, b string) {
 }
 
 // junction joins two inner nodes, or one and gnd: rails reach junctions through
-// resistors alone, so that no supply is shorted through a forward junction.
+// resistors alone, so that no supply is shorted through a forward junction. Rows
+// are left out: a node that only reverse leakage holds, between two reversed
+// junctions with bulk resistance, is README's "indeterminate node".
 func (d *draw) junction() {
 	a, b := pickOf(d, d.inner), pickOf(d, append([]string{"gnd"}, d.inner...))
 	if a == b {
