@@ -7,14 +7,16 @@ import (
 	"testing"
 )
 
-// wanted are the errors that a text of the invalid corpus expects, by line: a line
-// ends in the comment "# error: " and a part of the message. What is said of the
-// file as a whole is expected in its first line.
+// wanted are the errors and warnings that a text of the invalid corpus expects, by
+// line: a line ends in the comment "# error: " or "# warning: " and a part of the
+// message. What is said of the file as a whole is expected in its first line.
 func wanted(text string) map[int]string {
 	want := map[int]string{}
 	for i, line := range strings.Split(text, "\n") {
-		if _, message, ok := strings.Cut(line, "# error: "); ok {
-			want[i+1] = strings.TrimSpace(message)
+		for _, severity := range []string{"error: ", "warning: "} {
+			if _, message, ok := strings.Cut(line, "# "+severity); ok {
+				want[i+1] = severity + strings.TrimSpace(message)
+			}
 		}
 	}
 	return want
@@ -40,7 +42,8 @@ func TestInvalid(t *testing.T) {
 			}
 			for _, d := range diags {
 				line := max(d.Span.Start.Line, 1)
-				if w, ok := want[line]; ok && strings.Contains(d.Message, w) {
+				severity, part, _ := strings.Cut(want[line], ": ")
+				if severity == d.Severity.String() && strings.Contains(d.Message, part) {
 					delete(want, line)
 					continue
 				}
