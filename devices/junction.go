@@ -36,6 +36,22 @@ func (d *Diode) At(v float64) (i, g float64) {
 	return i, g
 }
 
+// Terms gives At's current as three terms, in A: the exponential, the constant that
+// belongs to it, and the breakdown. Of junctions in a row in reverse the constants
+// cancel, and what is left decides how they share the voltage; a sum in one double
+// would lose it.
+func (d *Diode) Terms(v float64) (exponential, constant, breakdown float64) {
+	f, df := physics.Junction(v*d.InvNVt, d.Knee)
+	if exponential = d.Isat * f; v < 0 {
+		exponential, constant = d.Isat*df, -d.Isat
+	}
+	if d.Zener {
+		f, _ = d.breakdown(v)
+		breakdown = -d.Iz * f
+	}
+	return exponential, constant, breakdown
+}
+
 // breakdown is (exp(y) - e0)/(1 - e0) with y = -(v + Vz)/(nz V_T), and its
 // derivative by y: 1 at v = -Vz, 0 at v = 0.
 func (d *Diode) breakdown(v float64) (f, df float64) {

@@ -21,17 +21,23 @@ const (
 // real gains, through folds, and collects every passage.
 func (l *ladder) gainArc() (int, string) {
 	x := l.zero()
-	l.s.SetRamp(mna.Ramp{Source: 1, Gain: 0})
+	apart := mna.Ramp{Source: 1, Gain: 0}
+	l.s.SetRamp(apart)
 	l.s.Restart()
 	r := l.iterate(x, newton.Options{})
 	if r.Outcome != newton.Converged {
-		x = l.zero()
-		l.s.From(x)
-		again := l.iterate(x, newton.Options{MaxSteps: 300, Damped: true})
-		again.Steps += r.Steps
-		if r = again; r.Outcome != newton.Converged {
+		steps, ended := l.shunts(apart, l.start(x))
+		r.Steps += steps
+		if ended == "" {
+			again := l.iterate(x, newton.Options{})
+			r.Steps += again.Steps
+			if again.Outcome != newton.Converged {
+				ended = "it " + again.Outcome.String()
+			}
+		}
+		if ended != "" {
 			l.s.SetRamp(mna.Full)
-			return r.Steps, "without gains it " + r.Outcome.String()
+			return r.Steps, "without gains " + ended
 		}
 	}
 	return l.arc(l.s.Gains(), x, gainLow, gainHigh, r.Steps)

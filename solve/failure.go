@@ -10,6 +10,9 @@ type Failure struct {
 	Says  string
 }
 
+// leakage in A is the order of a junction's reverse current and below.
+const leakage = 1e-15
+
 // Error says it in one sentence.
 func (f *Failure) Error() string { return f.Says }
 
@@ -18,6 +21,8 @@ func (l *ladder) failure() *Failure {
 	switch {
 	case l.broken != "":
 		f.Says = fmt.Sprintf("no operating point: the only ones found lie beyond the Early voltage of %s, where the model means nothing; look at what its collector is tied to", l.broken)
+	case f.Worst != "" && f.By < leakage:
+		f.Says = fmt.Sprintf("no operating point found in %d ways; the worst is the %s, off by %.3g A: it seems to be held by leakage alone, which the models cannot tell; a resistor from there would", len(f.Tried), f.Worst, f.By)
 	case f.Worst != "":
 		f.Says = fmt.Sprintf("no operating point found in %d ways; the worst is the %s, off by %.3g A", len(f.Tried), f.Worst, f.By)
 	default:

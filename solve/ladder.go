@@ -21,6 +21,8 @@ type ladder struct {
 	// worst is where the last failed rung left the balances.
 	worst   string
 	worstBy float64
+	// precise, once made, takes over from s for the rest of its rung.
+	precise *mna.Precise
 	broken  string // a transistor whose Early factor made a point meaningless
 }
 
@@ -59,6 +61,7 @@ func (l *ladder) climb() {
 
 func (l *ladder) try(r rung) {
 	l.s.SetRamp(mna.Full)
+	l.precise = nil
 	l.tried = append(l.tried, Attempt{Way: r.way})
 	before := len(l.found)
 	steps, ended := r.run(l)
@@ -160,10 +163,9 @@ func (l *ladder) admit(x []float64, r newton.Result, steps int) string {
 			return "came to a point already known"
 		}
 	}
-	way := l.tried[len(l.tried)-1].Way
 	p := newPoint(l.s, x, Evidence{
-		LastStep: r.LastStep, Steps: steps, Way: way,
-		Attempts: len(l.tried), Fallbacks: l.s.Fallbacks,
+		LastStep: r.LastStep, Steps: steps, Way: l.tried[len(l.tried)-1].Way, Determinant: l.detSign(x),
+		Attempts: len(l.tried), Fallbacks: l.s.Fallbacks, Twofold: l.precise != nil,
 	})
 	if name := p.state.EarlyBroken(); name != "" {
 		l.broken = name
@@ -195,7 +197,20 @@ func (l *ladder) iterate(x []float64, o newton.Options) newton.Result {
 			l.tracef("  step %d: largest voltage step %.3g V%s", step, size, guarded)
 		}
 	}
+	if l.precise != nil {
+		return newton.Solve(l.precise, x, &l.work, o)
+	}
 	return newton.Solve(l.s, x, &l.work, o)
+}
+
+// detSign is the sign of the determinant at x, by the system in use.
+func (l *ladder) detSign(x []float64) int {
+	if l.precise == nil {
+		return l.s.DetSign(x)
+	}
+	l.s.From(x)
+	l.precise.Linearise(x)
+	return l.precise.DetSign()
 }
 
 // land iterates on the real circuit from x and admits what it comes to.
@@ -223,30 +238,45 @@ func (l *ladder) blame(x []float64) {
 
 func (l *ladder) zero() []float64 { return make([]float64, l.s.Size()) }
 
+// start clears x and returns it.
+func (l *ladder) start(x []float64) []float64 {
+	clear(x)
+	return x
+}
+
 // direct is a Newton iteration with every junction started where it conducts.
 func (l *ladder) direct() (int, string) {
 	l.s.Restart()
 	return l.land(l.zero(), 0, newton.Options{})
 }
 
-// near starts from the wished voltages; nodes without a wish start where the
-// linear circuit with those junction voltages puts them.
-func (l *ladder) near() (int, string) {
+// near ties the wished nodes to their voltages, lets the others follow, and lets
+// go: once at a stroke, which may lead to a point that cannot be stable, and once
+// slowly, which leads to where the circuit would come to rest.
+func (l *ladder) near() (steps int, ended string) {
+	const tie = 10 // S; holds any node of a bias network
 	x := l.zero()
-	for node, v := range l.o.Near {
-		l.s.Place(x, node, v)
+	ramp := mna.Full
+	ramp.Shunt = tie
+	l.s.AnchorNodes(l.o.Near)
+	l.s.SetRamp(ramp)
+	l.s.Restart()
+	r := l.iterate(x, newton.Options{})
+	l.s.Release()
+	l.s.SetRamp(mna.Full)
+	if steps = r.Steps; r.Outcome != newton.Converged {
+		return steps, "with the nodes held there it " + r.Outcome.String()
 	}
+	at := append([]float64(nil), x...)
+	l.s.From(at)
+	steps, ended = l.land(at, steps, newton.Options{})
+	steps += l.settle(x)
 	l.s.From(x)
-	steps, ended := l.land(x, 0, newton.Options{Damped: true, MaxMove: 1})
+	more, again := l.land(x, steps, newton.Options{})
 	if len(l.found) == 0 {
-		x = l.zero()
-		for node, v := range l.o.Near {
-			l.s.Place(x, node, v)
-		}
-		l.s.From(x)
-		return l.land(x, steps, newton.Options{})
+		ended = again
 	}
-	return steps, ended
+	return more, ended
 }
 
 // fromRest is a damped iteration from all nodes at 0 V.
@@ -256,26 +286,68 @@ func (l *ladder) fromRest() (int, string) {
 	return l.land(x, 0, newton.Options{MaxSteps: 200, Damped: true})
 }
 
-// shuntRamp ties every node to gnd by a conductance and takes it away by
-// decades. The last, without it, is the real circuit.
+// shuntRamp ties every node to gnd by a conductance and takes it away. The last,
+// without it, is the real circuit.
 func (l *ladder) shuntRamp() (int, string) {
-	x, steps := l.zero(), 0
+	x := l.zero()
+	steps, ended := l.shunts(mna.Full, x)
+	if ended != "" {
+		return steps, ended
+	}
+	return l.land(x, steps, newton.Options{})
+}
+
+// shunts leads x in place from the shunted circuit to one whose shunts nothing
+// feels, by factors that shrink where Newton fails and grow where it does not. The
+// ramp's other factors stay; ended says in words why it failed, or is "".
+func (l *ladder) shunts(ramp mna.Ramp, x []float64) (steps int, ended string) {
+	const (
+		// 10 S holds every node of a bias network near gnd. What holds the middle
+		// of two like junctions in reverse shrinks by a decade for every 60 mV of
+		// ideality 1; the last is as far as a double goes.
+		first, last = 10, 1e-290
+		least       = 1.1 // a factor below it leads nowhere
+		most        = 1e8 // some twenty steps, by a thermal voltage each
+	)
+	defer l.s.SetRamp(ramp)
+	trial := l.zero()
 	l.s.Restart()
-	// From 0.1 S, which rules any bias network, to 1e-15 S, which none feels.
-	for exponent := -1; exponent >= -15; exponent-- {
-		ramp := mna.Full
-		ramp.Shunt = math.Pow(10, float64(exponent))
+	good, factor := math.Inf(1), 10.0
+	for next := float64(first); ; next = good / factor {
+		ramp.Shunt = next
 		l.s.SetRamp(ramp)
-		r := l.iterate(x, newton.Options{})
+		copy(trial, x)
+		if !math.IsInf(good, 1) {
+			l.s.From(trial)
+		}
+		r := l.iterate(trial, newton.Options{MaxSteps: 30})
 		steps += r.Steps
-		if r.Outcome != newton.Converged {
-			l.s.SetRamp(mna.Full)
+		switch {
+		case r.Outcome == newton.Converged:
+			copy(x, trial)
+			good, factor = next, math.Min(factor*factor, most)
+			if good < last {
+				ramp.Shunt = 0
+				return steps, ""
+			}
+		case math.IsInf(good, 1):
+			ramp.Shunt = 0
+			return steps, "at the first shunt it " + r.Outcome.String()
+		default:
+			if factor = math.Sqrt(factor); factor >= least {
+				continue
+			}
+			if l.precise == nil { // leakage, perhaps, that doubles cannot see
+				l.precise = l.s.Precise()
+				factor = 10
+				continue
+			}
+			ramp.Shunt = 0
+			l.s.SetRamp(ramp)
 			l.blame(x)
-			return steps, fmt.Sprintf("at a shunt of %g S it %s", ramp.Shunt, r.Outcome)
+			return steps, fmt.Sprintf("at a shunt of %.3g S it %s", next, r.Outcome)
 		}
 	}
-	l.s.SetRamp(mna.Full)
-	return l.land(x, steps, newton.Options{})
 }
 
 // sourceRamp raises all supplies together from 0, with steps that shrink where

@@ -58,14 +58,16 @@ type Evidence struct {
 	Way         string
 	Determinant int // +1 or -1; 0 where the balances are singular
 	Attempts    int // rungs of the ladder tried up to this one
-	Fallbacks   int // steps that needed the pivoting factorisation
+	Fallbacks   int // steps that needed more than the planned factorisation
+	// Twofold tells that doubles did not see what holds some node, and numbers
+	// of twice their precision were needed.
+	Twofold bool
 }
 
 // newPoint reads every quantity at x.
 func newPoint(s *mna.System, x []float64, ev Evidence) *Point {
 	c := s.Circuit()
 	p := &Point{Circuit: c, Evidence: ev, LoadV: math.NaN(), LoadI: math.NaN(), x: append([]float64(nil), x...)}
-	p.Evidence.Determinant = s.DetSign(x)
 	p.Unstable = p.Evidence.Determinant < 0
 	var row int
 	p.Evidence.Residual, row = s.Residual(x)
@@ -73,6 +75,7 @@ func newPoint(s *mna.System, x []float64, ev Evidence) *Point {
 		p.Evidence.Where = s.Label(row)
 	}
 	p.state = s.StateAt(x)
+	p.state.Twofold = ev.Twofold
 	p.NodeV = p.state.V[:len(c.Nodes):len(c.Nodes)]
 	for i, v := range p.state.V[len(c.Nodes):] {
 		p.Inner = append(p.Inner, InnerPoint{s.NodeName(len(c.Nodes) + i), v})

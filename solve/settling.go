@@ -66,7 +66,7 @@ func (l *ladder) unstableDirection(x []float64) []float64 {
 // settle moves x in place to where the circuit comes to rest, roughly.
 func (l *ladder) settle(x []float64) (steps int) {
 	defer func() {
-		l.s.Anchor(nil)
+		l.s.Release()
 		l.s.SetRamp(mna.Full)
 	}()
 	l.s.From(x)

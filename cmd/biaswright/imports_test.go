@@ -42,11 +42,15 @@ var rules = map[string]row{
 	"devices/conform": {code: "netlist netlist/quantity devices"},
 
 	// The numeric kernels know no circuits.
-	"solve/sparse": {},
+	"solve/twofold": {},
+	"solve/sparse":  {code: "solve/twofold"},
 	"solve/newton": {code: "solve/sparse"},
 	"solve/follow": {code: "solve/newton solve/sparse"},
 
-	"solve/mna": {code: "netlist netlist/quantity devices devices/physics solve/sparse solve/newton"},
+	"solve/mna": {
+		code:  "netlist netlist/quantity devices devices/physics solve/sparse solve/newton solve/twofold",
+		tests: "devices/shelf",
+	},
 	"solve": {
 		code:  "netlist netlist/quantity devices solve/mna solve/newton solve/follow solve/sparse",
 		tests: "netlist/diag devices/shelf solve/reftest",

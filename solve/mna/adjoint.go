@@ -69,6 +69,11 @@ func (st *State) adjoint(seed *Seed) ([]float64, error) {
 			seed.i[i][j] += seed.branch[d.node[j]]
 		}
 	}
+	for _, b := range s.between {
+		seed.v[b.from] += (1 - b.share) * seed.v[b.node]
+		seed.v[b.to] += b.share * seed.v[b.node]
+		seed.v[b.node] = 0
+	}
 	x := make([]float64, s.n+1)
 	for node, w := range seed.v {
 		x[s.row[node]] += w
@@ -87,14 +92,23 @@ func (st *State) adjoint(seed *Seed) ([]float64, error) {
 	}
 	x[s.n] = 0
 	s.currents(st.unknowns())
-	if !s.factor() {
-		return nil, errUndetermined
+	solve := s.solveTransposed
+	if st.Twofold {
+		solve = s.Precise().solveTransposed
 	}
-	s.active.SolveT(x[:s.n])
-	if !finite(x) {
+	if !solve(x[:s.n]) || !finite(x) {
 		return nil, errUndetermined
 	}
 	return x, nil
+}
+
+// solveTransposed solves with the transposed Jacobian of the last evaluation.
+func (s *System) solveTransposed(b []float64) bool {
+	if !s.factor() {
+		return false
+	}
+	s.active.SolveT(b)
+	return true
 }
 
 var errUndetermined = errors.New("the balances do not determine the voltages here")
@@ -119,7 +133,17 @@ func (s *System) respond(st *State, i int, r *devices.Response) {
 		for j := 0; j < d.terminals(); j++ {
 			v[j] = st.V[d.node[j]]
 		}
+		if d.alike > 1 { // its members share the voltage
+			v[0], v[1] = (v[0]-v[1])/float64(d.alike), 0
+		}
 		devices.Evaluate(s.kind(e), s.params(e), s.values[e.Size], v[:d.terminals()], s.kelvin[i], r)
+		if d.alike > 1 {
+			for j := range r.DV {
+				for k := range r.DV[j] {
+					r.DV[j][k] /= float64(d.alike)
+				}
+			}
+		}
 		return
 	case bulkDevice:
 		devices.Evaluate(s.kind(e), s.params(e), s.values[e.Size], []float64{0, 0}, s.kelvin[i], r)
@@ -149,7 +173,8 @@ func (s *System) collect(st *State, i int, weight [3]float64, r *devices.Respons
 	case resistorDevice:
 		s.collectResistor(st, i, e, through, d)
 	case bulkDevice:
-		g, current := s.resistors[dev.at].g, st.I[i][0]
+		// i = v/(n r): di/dr = -i/r, and 1/r is n g.
+		g, current := s.resistors[dev.at].g*float64(dev.alike), st.I[i][0]
 		for p, id := range e.Params {
 			if r.RbulkDP[p] != 0 {
 				d[id] -= through * current * g * r.RbulkDP[p]

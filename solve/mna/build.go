@@ -13,6 +13,7 @@ type builder struct {
 	c      *netlist.Circuit
 	st     *structure
 	ideals []ideal
+	ties   []int // connections of each node, once wanted
 }
 
 func newBuilder(c *netlist.Circuit) *builder {
@@ -48,6 +49,10 @@ func (b *builder) structure() (*structure, error) {
 
 // element lays out one element: its devices, or its ideal branches.
 func (b *builder) element(i int, e *netlist.Element) {
+	if e.Kind == netlist.JunctionPart && b.alone(e) {
+		b.row(int32(i), e)
+		return
+	}
 	for m := 0; m < len(e.Chain)-1; m++ {
 		from, to := int32(e.Chain[m]), int32(e.Chain[m+1])
 		switch e.Kind {
@@ -62,7 +67,7 @@ func (b *builder) element(i int, e *netlist.Element) {
 		case netlist.Cell:
 			b.ideals = append(b.ideals, ideal{from: from, to: to, slot: e.Value, rise: 1, rail: -1, element: i, member: m})
 		case netlist.JunctionPart:
-			b.junction(int32(i), int32(m), e, from, to)
+			b.junction(int32(i), int32(m), e, from, to, 1)
 		case netlist.TransistorPart:
 			collector, emitter := from, to
 			if b.c.Parts[e.Part].Kind.PNP {
@@ -73,9 +78,60 @@ func (b *builder) element(i int, e *netlist.Element) {
 	}
 }
 
-// junction lays out one member of a junction element, with its bulk resistance
-// on the anode's side.
-func (b *builder) junction(element, member int32, e *netlist.Element, from, to int32) {
+// alone tells a row of junctions between whose members nothing else is tied: its
+// members carry one current and, being alike, share the voltage equally.
+func (b *builder) alone(e *netlist.Element) bool {
+	if e.Row < 2 {
+		return false
+	}
+	if b.ties == nil {
+		b.ties = ties(b.c)
+	}
+	for _, node := range e.Chain[1:e.Row] {
+		if b.ties[node] > 2 { // two members meet there
+			return false
+		}
+	}
+	return true
+}
+
+// ties counts what is connected to each node.
+func ties(c *netlist.Circuit) []int {
+	count := make([]int, len(c.Nodes))
+	for i := range c.Elements {
+		e := &c.Elements[i]
+		for m, node := range e.Chain {
+			count[node]++
+			if m > 0 && m < len(e.Chain)-1 {
+				count[node]++
+			}
+		}
+		if e.Kind == netlist.TransistorPart {
+			count[e.Base]++
+		}
+	}
+	for i := range c.Rails {
+		count[c.Rails[i].Node]++
+	}
+	return count
+}
+
+// row lays out a row that is alone as one junction at the members' share of its
+// voltage. The nodes between the members are no unknowns: in reverse, where the
+// currents of like junctions are alike to the last digit, no balance could tell
+// them.
+func (b *builder) row(element int32, e *netlist.Element) {
+	b.junction(element, 0, e, int32(e.From), int32(e.To), int32(e.Row))
+	for m := 1; m < e.Row; m++ {
+		b.st.between = append(b.st.between, between{
+			node: int32(e.Chain[m]), from: int32(e.From), to: int32(e.To), share: float64(m) / float64(e.Row),
+		})
+	}
+}
+
+// junction lays out one member of a junction element, or several alike as one,
+// with the bulk resistance on the anode's side.
+func (b *builder) junction(element, member int32, e *netlist.Element, from, to, alike int32) {
 	anode, cathode := from, to
 	if e.Reversed {
 		anode, cathode = to, from
@@ -84,11 +140,11 @@ func (b *builder) junction(element, member int32, e *netlist.Element, from, to i
 	if at := k.Index("Rbulk"); at >= 0 && b.c.Value(e.Params[at]) > 0 {
 		inner := int32(b.st.nodes)
 		b.st.nodes++
-		b.st.inner = append(b.st.inner, innerNode{element, member})
-		b.device(device{kind: bulkDevice, element: element, member: member, node: [3]int32{anode, inner}})
+		b.st.inner = append(b.st.inner, innerNode{element, member, alike > 1})
+		b.device(device{kind: bulkDevice, element: element, member: member, alike: alike, node: [3]int32{anode, inner}})
 		anode = inner
 	}
-	b.device(device{kind: junctionDevice, element: element, member: member, node: [3]int32{anode, cathode}})
+	b.device(device{kind: junctionDevice, element: element, member: member, alike: alike, node: [3]int32{anode, cathode}})
 }
 
 func (b *builder) device(d device) { b.st.devices = append(b.st.devices, d) }
@@ -98,6 +154,9 @@ func (b *builder) device(d device) { b.st.devices = append(b.st.devices, d) }
 func (b *builder) number(root []int32) {
 	st := b.st
 	st.row = make([]int32, st.nodes)
+	for _, between := range st.between {
+		root[between.node] = 0 // computed afterwards: known, for all that solves
+	}
 	for node, r := range root {
 		switch {
 		case r == 0:
@@ -160,7 +219,7 @@ func (b *builder) numbers(st *structure) *numbers {
 	nnz := st.plan.NNZ()
 	n := &numbers{
 		offset: make([]float64, st.nodes), full: make([]float64, st.nodes), v: make([]float64, st.nodes),
-		x: make([]float64, st.n+1), f: make([]float64, st.n+1), tol: make([]float64, st.n+1), top: make([]float64, st.n+1), anchor: make([]float64, st.n),
+		x: make([]float64, st.n+1), f: make([]float64, st.n+1), tol: make([]float64, st.n+1), top: make([]float64, st.n+1), anchor: make([]float64, st.n), tied: make([]float64, st.n),
 		jac: make([]float64, nnz+1), base: make([]float64, nnz+1),
 		kelvin: make([]float64, len(st.devices)),
 	}
@@ -177,7 +236,7 @@ func (b *builder) numbers(st *structure) *numbers {
 			n.sources = append(n.sources, source{a: a, b: c, ra: ra, rb: rc})
 		case junctionDevice:
 			d.at = int32(len(n.junctions))
-			n.junctions = append(n.junctions, junction{a: a, k: c, ra: ra, rk: rc, p: st.pair(ra, rc)})
+			n.junctions = append(n.junctions, junction{a: a, k: c, ra: ra, rk: rc, p: st.pair(ra, rc), share: 1 / float64(d.alike)})
 		case bipolarDevice:
 			d.at = int32(len(n.bipolars))
 			n.bipolars = append(n.bipolars, st.bipolar(d, b.c.Parts[b.c.Elements[d.element].Part].Kind.PNP))

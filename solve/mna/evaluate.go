@@ -1,6 +1,10 @@
 package mna
 
-import "math"
+import (
+	"math"
+
+	"biaswright/netlist"
+)
 
 // A Ramp deforms the balances for a strategy that leads a simpler circuit over
 // into the real one. The real circuit is Full.
@@ -27,10 +31,27 @@ func (s *System) SetRamp(r Ramp) {
 	s.setBase()
 }
 
-// Anchor ties the ramp's shunts to these unknowns instead of gnd; nil is gnd.
-func (s *System) Anchor(x []float64) {
+// Anchor ties the ramp's shunts to these unknowns instead of gnd, until Release.
+func (s *System) Anchor(x []float64) { copy(s.anchor, x) }
+
+// AnchorNodes leaves only the shunts of these nodes, tied to their voltages in V,
+// until Release.
+func (s *System) AnchorNodes(volts map[netlist.NodeID]float64) {
+	clear(s.tied)
+	for node, v := range volts {
+		s.Place(s.anchor, node, v)
+		if r := int(s.row[node]); r < s.n {
+			s.tied[r] = 1
+		}
+	}
+}
+
+// Release ties the ramp's shunts to gnd again, at every free node.
+func (s *System) Release() {
 	clear(s.anchor)
-	copy(s.anchor, x)
+	for i := range s.tied {
+		s.tied[i] = 1
+	}
 }
 
 // setBase computes the constant part of the Jacobian and the sources' currents.
@@ -46,8 +67,8 @@ func (s *System) setBase() {
 		s.base[r.p[3]] += r.g
 	}
 	if s.ramp.Shunt != 0 {
-		for _, at := range s.diagonal {
-			s.base[at] += s.ramp.Shunt
+		for i, at := range s.diagonal {
+			s.base[at] += s.ramp.Shunt * s.tied[i]
 		}
 	}
 	for i := range s.sources {
@@ -66,7 +87,7 @@ func (s *System) From(x []float64) {
 	s.place(x)
 	for i := range s.junctions {
 		j := &s.junctions[i]
-		j.u = s.v[j.a] - s.v[j.k]
+		j.u = (s.v[j.a] - s.v[j.k]) * j.share
 	}
 	for i := range s.bipolars {
 		b := &s.bipolars[i]
@@ -97,7 +118,7 @@ func (s *System) Linearise(x []float64) bool {
 	}
 	if g := s.ramp.Shunt; g != 0 {
 		for i := 0; i < s.n; i++ {
-			f[i] = g * (x[i] - s.anchor[i])
+			f[i] = g * s.tied[i] * (x[i] - s.anchor[i])
 		}
 	}
 	for i := range s.resistors {
@@ -114,7 +135,7 @@ func (s *System) Linearise(x []float64) bool {
 	exact := !fresh
 	for i := range s.junctions {
 		j := &s.junctions[i]
-		u := v[j.a] - v[j.k]
+		u := (v[j.a] - v[j.k]) * j.share
 		at := j.start
 		if !fresh {
 			at = j.guard(u)
@@ -126,6 +147,7 @@ func (s *System) Linearise(x []float64) bool {
 			exact = false
 			current += j.g * (u - at)
 		}
+		j.g *= j.share
 		f[j.ra] += current
 		f[j.rk] -= current
 		jac[j.p[0]] += j.g

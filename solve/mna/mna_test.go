@@ -236,8 +236,7 @@ func TestLabels(t *testing.T) {
 		got[i] = s.Label(i)
 	}
 	want := []string{
-		"current balance at top", "current balance at D1.1:D1.2",
-		"current balance at the junction of D1.1", "current balance at the junction of D1.2",
+		"current balance at top", "current balance at the junction of D1",
 	}
 	if fmt.Sprint(got) != fmt.Sprint(want) {
 		t.Errorf("labels %q, want %q", got, want)

@@ -20,12 +20,17 @@ type State struct {
 	// branch[node] is the current through the ideal branch that leads to node,
 	// from its parent, in A; leaving[node] what leaves the node into devices.
 	branch []float64
+	// Twofold asks the adjoint to solve in twofold numbers.
+	Twofold bool
 }
 
 // StateAt evaluates the system at x (length Size()), whatever ramp is in force.
 func (s *System) StateAt(x []float64) *State {
 	s.currents(x)
 	st := &State{s: s, V: append([]float64(nil), s.v...), I: make([][3]float64, len(s.devices)), branch: make([]float64, s.nodes)}
+	for _, b := range s.between {
+		st.V[b.node] = (1-b.share)*st.V[b.from] + b.share*st.V[b.to]
+	}
 	for i := range s.devices {
 		d := &s.devices[i]
 		st.I[i] = s.terminalCurrents(d)
@@ -198,7 +203,7 @@ func (st *State) element(e *netlist.Element, index, member int, symbol string, s
 // resistance the junction, whose current the model computes.
 func (s *System) carrier(element, member int) int {
 	for d := s.first[element]; d < s.first[element+1]; d++ {
-		if int(s.devices[d].member) == member && s.devices[d].kind != bulkDevice {
+		if dev := &s.devices[d]; dev.kind != bulkDevice && (int(dev.member) == member || dev.alike > 1) {
 			return int(d)
 		}
 	}

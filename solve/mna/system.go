@@ -56,6 +56,7 @@ type structure struct {
 	n        int // unknowns: free groups
 	nodes    int // local nodes: the circuit's, then inner ones
 	inner    []innerNode
+	between  []between
 	row      []int32 // local node -> unknown, or n for a known node
 	forest   forest
 	devices  []device
@@ -66,7 +67,17 @@ type structure struct {
 }
 
 // An innerNode lies behind a bulk resistance.
-type innerNode struct{ element, member int32 }
+type innerNode struct {
+	element, member int32
+	alone           bool // it stands for a whole row
+}
+
+// A between is a node between two members of a row that stands as one junction:
+// it lies at a share of the way from one end to the other.
+type between struct {
+	node, from, to int32
+	share          float64
+}
 
 // A device is one terminal-bearing thing: a resistor, a bulk resistance, a current
 // source, a junction or a transistor. Terminals are a, b (the current flows from
@@ -75,6 +86,7 @@ type device struct {
 	kind    deviceKind
 	element int32
 	member  int32 // 0.. in a row
+	alike   int32 // junction, bulk: the members of a row that it stands for
 	node    [3]int32
 	at      int32 // index into the kind's own list
 }
@@ -108,6 +120,7 @@ type numbers struct {
 	tol    []float64
 	top    []float64 // largest current at each row
 	anchor []float64 // where the ramp's shunts are tied
+	tied   []float64 // 1 where there is one, else 0
 	kelvin []float64 // temperature of each device
 
 	gathered []float64 // scratch of params
@@ -132,9 +145,10 @@ type source struct {
 type junction struct {
 	a, k, ra, rk int32
 	p            [4]int32 // Jacobian positions aa, ak, ka, kk
+	share        float64  // of the voltage that falls on one of the members alike
 	d            devices.Diode
-	i, g         float64 // of the last evaluation, at its own point u
-	u            float64
+	i, g         float64 // of the last evaluation, at its own point u; g by the whole voltage
+	u            float64 // of one member
 	start        float64
 	corner       float64 // above it a rise is guarded
 	knee         float64 // zener: below it a fall is guarded
@@ -168,6 +182,7 @@ func New(c *netlist.Circuit) (*System, error) {
 	s := &System{circuit: c, structure: st, ramp: Full}
 	s.numbers = b.numbers(st)
 	s.factors = st.plan.NewFactors()
+	s.Release()
 	s.Apply(c.Values())
 	return s, nil
 }
@@ -185,7 +200,7 @@ func (s *System) Clone() *System {
 func (n *numbers) clone() *numbers {
 	c := *n
 	c.gathered = nil
-	for _, v := range []*[]float64{&c.offset, &c.full, &c.v, &c.x, &c.f, &c.jac, &c.base, &c.tol, &c.top, &c.anchor, &c.kelvin} {
+	for _, v := range []*[]float64{&c.offset, &c.full, &c.v, &c.x, &c.f, &c.jac, &c.base, &c.tol, &c.top, &c.anchor, &c.tied, &c.kelvin} {
 		*v = append([]float64(nil), *v...)
 	}
 	c.resistors = append([]resistor(nil), c.resistors...)
@@ -216,10 +231,10 @@ func (s *System) NodeName(node int) string {
 	}
 	in := s.inner[node-len(s.circuit.Nodes)]
 	e := &s.circuit.Elements[in.element]
-	if e.Row > 1 {
-		return fmt.Sprintf("the junction of %s.%d", e.Name, in.member+1)
+	if in.alone || e.Row == 1 {
+		return "the junction of " + e.Name
 	}
-	return "the junction of " + e.Name
+	return fmt.Sprintf("the junction of %s.%d", e.Name, in.member+1)
 }
 
 // Apply puts new slot numbers in force (length len(Circuit().Slots), followers
@@ -250,7 +265,7 @@ func (s *System) setDevice(d *device, kelvin, scale float64) {
 		s.resistors[d.at].g = 1 / s.resistance(e, kelvin)
 	case bulkDevice:
 		_, bulk := devices.DiodeOf(s.kind(e), s.params(e), s.values[e.Size], kelvin)
-		s.resistors[d.at].g = 1 / bulk
+		s.resistors[d.at].g = 1 / (float64(d.alike) * bulk)
 	case sourceDevice:
 		s.sources[d.at].amps = s.values[e.Value]
 	case junctionDevice:

@@ -170,7 +170,7 @@ func (d *draw) junction() {
 	if d.IntN(2) == 0 {
 		a, b = b, a
 	}
-	what := pickOf(d, []string{"dio0", "dio1", "zen0", "zen1", "zen0 reversed"})
+	what := pickOf(d, []string{"dio0", "dio1", "zen0", "zen1", "zen0 reversed", "dio0 row=2", "dio1 row=3 reversed"})
 	fmt.Fprintf(&d.b, "path %s -> %s %s -> %s\n", a, d.name("D", a, b), what, b)
 }
 

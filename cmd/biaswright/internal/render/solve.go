@@ -125,7 +125,11 @@ func printEvidence(w io.Writer, r *solve.Result, l Look) {
 		said = append(said, count(e.Attempts, "attempt"))
 	}
 	if e.Fallbacks > 0 {
-		said = append(said, count(e.Fallbacks, "step")+" with a fresh choice of pivots")
+		how := " with a fresh choice of pivots"
+		if e.Twofold {
+			how = " with pivots chosen anew or in numbers of twice the digits (leakage alone holds a node)"
+		}
+		said = append(said, count(e.Fallbacks, "step")+how)
 	}
 	wrap(w, "", l.text(strings.Join(said, "; ")+"."))
 	for _, o := range r.Others {
