@@ -236,7 +236,7 @@ func TestLabels(t *testing.T) {
 		got[i] = s.Label(i)
 	}
 	want := []string{
-		"current balance at top", "current balance at the junction of D1",
+		"current balance at top", "current balance at D1's junction",
 	}
 	if fmt.Sprint(got) != fmt.Sprint(want) {
 		t.Errorf("labels %q, want %q", got, want)

@@ -232,9 +232,9 @@ func (s *System) NodeName(node int) string {
 	in := s.inner[node-len(s.circuit.Nodes)]
 	e := &s.circuit.Elements[in.element]
 	if in.alone || e.Row == 1 {
-		return "the junction of " + e.Name
+		return e.Name + "'s junction"
 	}
-	return fmt.Sprintf("the junction of %s.%d", e.Name, in.member+1)
+	return fmt.Sprintf("%s.%d's junction", e.Name, in.member+1)
 }
 
 // Apply puts new slot numbers in force (length len(Circuit().Slots), followers

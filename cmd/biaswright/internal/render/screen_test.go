@@ -60,7 +60,7 @@ Cautions
   ! RE stands at 300.0 mW, above its rating of 250 mW (as stated, not derated for temperature).
     Reminders, not a safety assessment: local codes and licensed practice decide.
 
-Found directly in 7 steps; largest imbalance left 1.2e-17 A at tail; last step 3.1e-13 V.
+Found directly in 7 steps; largest imbalance 1.2e-17 A at tail; last step 3.1e-13 V.
 `
 	if d := cmp.Diff(want, screen(t, fixture(), Look{})); d != "" {
 		t.Error(d)

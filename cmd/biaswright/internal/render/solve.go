@@ -118,7 +118,7 @@ func printEvidence(w io.Writer, r *solve.Result, l Look) {
 	}
 	said := []string{
 		fmt.Sprintf("Found %s in %s", wayText(e.Way), count(e.Steps, "step")),
-		fmt.Sprintf("largest imbalance left %s%s", powerUnit(e.Residual, "A"), where),
+		fmt.Sprintf("largest imbalance %s%s", powerUnit(e.Residual, "A"), where),
 		fmt.Sprintf("last step %s", powerUnit(e.LastStep, "V")),
 	}
 	if e.Attempts > 1 {
