@@ -29,6 +29,7 @@ func (s *System) SetRamp(r Ramp) {
 		s.offset[i] = v * r.Source
 	}
 	s.setBase()
+	s.near = false
 }
 
 // Anchor ties the ramp's shunts to these unknowns instead of gnd, until Release.
@@ -79,11 +80,11 @@ func (s *System) setBase() {
 // Restart makes the next Linearise start every junction at its start voltage, a
 // cold start: forward junctions and base-emitter junctions conducting, reversed
 // zeners in breakdown, collectors out of saturation.
-func (s *System) Restart() { s.fresh = true }
+func (s *System) Restart() { s.fresh, s.near = true, false }
 
 // From makes the next Linearise take its junction voltages from x.
 func (s *System) From(x []float64) {
-	s.fresh = false
+	s.fresh, s.near = false, false
 	s.place(x)
 	for i := range s.junctions {
 		j := &s.junctions[i]
@@ -98,9 +99,11 @@ func (s *System) From(x []float64) {
 
 // place computes the node voltages from the unknowns.
 func (s *System) place(x []float64) {
-	copy(s.x, x)
+	known := s.x
+	copy(known, x)
+	v, offset := s.v[:len(s.row)], s.offset[:len(s.row)]
 	for i, r := range s.row {
-		s.v[i] = s.x[r] + s.offset[i]
+		v[i] = known[r] + offset[i]
 	}
 }
 
@@ -136,8 +139,11 @@ func (s *System) Linearise(x []float64) bool {
 	for i := range s.junctions {
 		j := &s.junctions[i]
 		u := (v[j.a] - v[j.k]) * j.share
-		at := j.start
-		if !fresh {
+		at := u
+		switch {
+		case fresh:
+			at = j.start
+		case u > j.corner || u < j.knee:
 			at = j.guard(u)
 		}
 		j.u = at
@@ -169,8 +175,11 @@ func (s *System) bipolar(b *bipolar, fresh bool) (exact bool) {
 	v, f, jac := s.v, s.f, s.jac
 	ube := b.sign * (v[b.b] - v[b.e])
 	ubc := b.sign * (v[b.b] - v[b.c])
-	atE, atC := b.corner, 0.0 // cold start: on, at the edge of saturation
-	if !fresh {
+	atE, atC := ube, ubc
+	switch {
+	case fresh: // cold start: on, at the edge of saturation
+		atE, atC = b.corner, 0
+	case ube > b.corner || ubc > b.reach:
 		atE = guard(ube, b.ube, b.corner, b.k.InvNVt)
 		atC = guard(ubc, b.ubc, b.cornerC, b.k.InvNVt)
 		if atC >= b.va { // beyond it the Early factor changes sign; never a solution
@@ -249,9 +258,25 @@ func (s *System) factor() bool {
 	return s.robust.Factor(jac)
 }
 
-// Step solves J dx = -F.
+// chordStep is the voltage step in V below which the next step may use the
+// factors at hand (a chord): junctions change by exp(step/V_T), so that the error
+// still shrinks ten thousandfold, and a factorisation is saved.
+const chordStep = 1e-6
+
+// Step solves J dx = -F. Near a solution it reuses the factors of the step before.
 func (s *System) Step(dx []float64) bool {
-	return s.factor() && s.descend(dx)
+	if !s.near && !s.factor() {
+		return false
+	}
+	ok := s.descend(dx)
+	s.near = true
+	for _, d := range dx {
+		if !(math.Abs(d) < chordStep) {
+			s.near = false
+			break
+		}
+	}
+	return ok
 }
 
 // descend solves with the factors at hand.

@@ -5,7 +5,9 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"strings"
 	"testing"
+	"time"
 
 	"biaswright/devices"
 	"biaswright/netlist"
@@ -283,20 +285,21 @@ func TestColdSolveCosts(t *testing.T) {
 }
 
 // ladder writes workload W3: n nodes in a row, each fed from the one before by a
-// resistor, with a diode to ground; every third has a transistor as well, whose
-// base it is and whose collector hangs on the supply.
+// resistor, with a diode to ground; at every third a transistor stands between the
+// supply and ground.
 func ladder(n int) string {
-	text := "rail V = 20 V\npart d diode Isat = 1 fA, n = 1.5\npart q npn Isat = 1 fA, betaF = 150\n"
+	var b strings.Builder
+	b.WriteString("rail V = 20 V\npart d diode Isat = 1 fA, n = 1.5\npart q npn Isat = 1 fA, betaF = 150\n")
 	before := "V"
 	for i := 1; i <= n; i++ {
 		node := fmt.Sprintf("n%d", i)
-		text += fmt.Sprintf("path %s -> R%d 220 -> %s -> D%d d -> gnd\n", before, i, node, i)
+		fmt.Fprintf(&b, "path %s -> R%d 220 -> %s -> D%d d -> gnd\n", before, i, node, i)
 		if i%3 == 0 {
-			text += fmt.Sprintf("path V -> RC%d 10k -> c%d -> Q%d q base=%s -> e%d -> RE%d 1k -> gnd\n", i, i, i, node, i, i)
+			fmt.Fprintf(&b, "path V -> Q%d q base=%s -> gnd\n", i, node)
 		}
 		before = node
 	}
-	return text
+	return b.String()
 }
 
 func BenchmarkColdSolve(b *testing.B) {
@@ -331,5 +334,50 @@ func BenchmarkColdSolve(b *testing.B) {
 			b.ReportMetric(float64(r.Steps), "steps")
 			b.ReportMetric(float64(s.Size()), "unknowns")
 		})
+	}
+}
+
+// BenchmarkGrowth prints how the time of W3 grows with its size: the exponent from
+// 30 to 3000 nodes, measured in turns.
+func BenchmarkGrowth(b *testing.B) {
+	const small, large, times = 30, 3000, 100 // the small one as often as it is smaller
+	var elapsed [2]time.Duration
+	var s [2]*mna.System
+	for i, n := range []int{small, large} {
+		var err error
+		if s[i], err = mna.New(read(b, ladder(n))); err != nil {
+			b.Fatal(err)
+		}
+	}
+	var w [2]newton.Work
+	solve := func(i, count int) {
+		x := make([]float64, s[i].Size())
+		start := time.Now()
+		for range count {
+			clear(x)
+			s[i].Restart()
+			if r := newton.Solve(s[i], x, &w[i], newton.Options{}); r.Outcome != newton.Converged {
+				b.Fatalf("it %s", r.Outcome)
+			}
+		}
+		elapsed[i] += time.Since(start)
+	}
+	for b.Loop() {
+		solve(0, times)
+		solve(1, 1)
+	}
+	ratio := float64(elapsed[1]) * times / float64(elapsed[0])
+	b.ReportMetric(math.Log(ratio)/math.Log(large/small), "exponent")
+}
+
+// BenchmarkExp is the yardstick that a machine's speed is told by.
+func BenchmarkExp(b *testing.B) {
+	sum, x := 0.0, 1.3
+	for b.Loop() {
+		sum += math.Exp(x)
+		x = 2.6 - x
+	}
+	if sum == 0 {
+		b.Fatal("no sum")
 	}
 }

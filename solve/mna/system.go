@@ -48,6 +48,7 @@ type System struct {
 	Fallbacks int
 
 	ramp  Ramp
+	near  bool // the factors at hand will do for the next Step
 	fresh bool // the next Linearise starts every junction at its start voltage
 }
 
@@ -163,7 +164,8 @@ type bipolar struct {
 	ube, ubc            float64
 	corner              float64 // of the base-emitter junction
 	cornerC             float64 // of the base-collector junction
-	va                  float64
+	va                  float64 // V, +Inf where infinite
+	reach               float64 // the lower of cornerC and just below va: no guard below
 }
 
 // New compiles a circuit. It fails on a resistance still open (? E24) and on
@@ -254,7 +256,7 @@ func (s *System) Apply(values []float64) {
 		s.setDevice(d, ambient, scale)
 	}
 	s.setBase()
-	s.fresh = true
+	s.Restart()
 }
 
 // setDevice computes a device's coefficients at its temperature.
@@ -287,6 +289,7 @@ func (s *System) setDevice(d *device, kelvin, scale float64) {
 		// The collector junction's own current is larger by 1/betaR.
 		b.cornerC = math.Log1p(scale/(b.k.Isat*(1+b.k.InvBetaR))) / b.k.InvNVt
 		b.va = 1 / b.k.InvVA // +Inf for an infinite VA
+		b.reach = math.Min(b.cornerC, math.Nextafter(b.va, 0))
 	}
 }
 

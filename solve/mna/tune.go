@@ -99,6 +99,7 @@ func (s *System) depends(d *device, moved []bool) bool {
 // finite coefficients. Junctions keep their iteration state.
 func (t *Tuner) Set(numbers ...float64) bool {
 	s := t.s
+	s.near = false
 	for i, id := range t.slots {
 		s.values[id] = numbers[i]
 	}
