@@ -65,13 +65,13 @@ func (p *Printer) one(b *strings.Builder, d *Diagnostic) {
 	if d.Severity == Warning {
 		colour = colourWarning
 	}
-	fmt.Fprintf(b, "%s%s %s\n", place(d.Span), p.paint(colour, d.Severity.String()+":"), d.Message)
+	fmt.Fprintf(b, "%s %s %s\n", place(d.Span), p.paint(colour, d.Severity.String()+":"), d.Message)
 	p.excerpt(b, d.Span, colour)
 	if d.Hint != "" {
 		fmt.Fprintf(b, "%shint: %s\n", indent, d.Hint)
 	}
 	for _, r := range d.Related {
-		fmt.Fprintf(b, "%s%s%s\n", indent, place(r.Span), " "+r.Message)
+		fmt.Fprintf(b, "%s%s %s\n", indent, place(r.Span), r.Message)
 	}
 }
 
@@ -82,8 +82,7 @@ func (p *Printer) paint(colour, text string) string {
 	return colour + text + colourEnd
 }
 
-// place is "file:line:column:", or as much of it as is known. A message without
-// a place has nothing before it, and so loses the space as well.
+// place is "file:line:column:", or as much of it as is known.
 func place(s Span) string {
 	switch {
 	case s.Start.Line > 0:
