@@ -82,25 +82,39 @@ var emitterJunction = nature{
 // shared lists what every junction has, in the order of pIsat .. pT0.
 func shared(j nature) []netlist.Param {
 	return []netlist.Param{
-		{Name: "Isat", Unit: quantity.Ampere, Default: j.isat, Sign: netlist.Positive,
-			Rivals: []string{"drop", "drop.at"}, Doc: "saturation current", Source: j.isatFrom},
-		{Name: "drop", Unit: quantity.Volt, Default: none, Sign: netlist.Positive, At: "drop.at",
-			Rivals: []string{"Isat"}, Doc: "forward drop at a stated current, Rbulk included; fixes Isat"},
-		{Name: "drop.at", Unit: quantity.Ampere, Default: none, Sign: netlist.Positive, Hidden: true,
-			Doc: "the current at which drop is stated"},
-		{Name: "n", Unit: quantity.One, Default: j.n, Sign: netlist.Positive,
-			Doc: "ideality of the junction", Source: j.nFrom},
-		{Name: "Rbulk", Unit: quantity.Ohm, Default: 0, Sign: netlist.NotNegative,
-			Doc: "resistance in series with the junction", Source: language},
-		{Name: "Egap", Unit: quantity.EV, Default: j.egap, Sign: netlist.NotNegative,
-			Doc: "band gap, for Isat over temperature", Source: j.gap},
+		{
+			Name: "Isat", Unit: quantity.Ampere, Default: j.isat, Sign: netlist.Positive,
+			Rivals: []string{"drop", "drop.at"}, Doc: "saturation current", Source: j.isatFrom,
+		},
+		{
+			Name: "drop", Unit: quantity.Volt, Default: none, Sign: netlist.Positive, At: "drop.at",
+			Rivals: []string{"Isat"}, Doc: "forward drop at a stated current, Rbulk included; fixes Isat",
+		},
+		{
+			Name: "drop.at", Unit: quantity.Ampere, Default: none, Sign: netlist.Positive, Hidden: true,
+			Doc: "the current at which drop is stated",
+		},
+		{
+			Name: "n", Unit: quantity.One, Default: j.n, Sign: netlist.Positive,
+			Doc: "ideality of the junction", Source: j.nFrom,
+		},
+		{
+			Name: "Rbulk", Unit: quantity.Ohm, Default: 0, Sign: netlist.NotNegative,
+			Doc: "resistance in series with the junction", Source: language,
+		},
+		{
+			Name: "Egap", Unit: quantity.EV, Default: j.egap, Sign: netlist.NotNegative,
+			Doc: "band gap, for Isat over temperature", Source: j.gap,
+		},
 		t0(),
 	}
 }
 
 func t0() netlist.Param {
-	return netlist.Param{Name: "T0", Unit: quantity.Celsius, Default: 25,
-		Doc: "temperature at which the values hold", Source: language}
+	return netlist.Param{
+		Name: "T0", Unit: quantity.Celsius, Default: 25,
+		Doc: "temperature at which the values hold", Source: language,
+	}
 }
 
 func junction(j nature) []netlist.Param {
@@ -111,16 +125,26 @@ func junction(j nature) []netlist.Param {
 
 func zener() []netlist.Param {
 	return append(append(shared(siliconJunction),
-		netlist.Param{Name: "Vz", Unit: quantity.Volt, Default: 5.6, Sign: netlist.Positive, At: "Vz.at",
-			Doc: "breakdown voltage at a stated current, Rbulk not included", Source: language + "'s example"},
-		netlist.Param{Name: "Vz.at", Unit: quantity.Ampere, Default: 5e-3, Sign: netlist.Positive, Hidden: true,
-			Doc: "I_z, the current at which Vz is stated", Source: practice + ": the test current of small zeners"},
-		netlist.Param{Name: "nz", Unit: quantity.One, Default: 2, Sign: netlist.Positive, Rivals: []string{"rz"},
-			Doc: "ideality of the breakdown", Source: memory + ": a slope of about 10 ohm at 5 mA"},
-		netlist.Param{Name: "rz", Unit: quantity.Ohm, Default: none, Sign: netlist.Positive, Rivals: []string{"nz"},
-			Doc: "slope resistance at the stated point; fixes nz"},
-		netlist.Param{Name: "drift", Unit: quantity.VoltPerK, Default: 0,
-			Doc: "change of Vz with temperature", Source: "none unless stated; near 0 about 5 V, " + practice},
+		netlist.Param{
+			Name: "Vz", Unit: quantity.Volt, Default: 5.6, Sign: netlist.Positive, At: "Vz.at",
+			Doc: "breakdown voltage at a stated current, Rbulk not included", Source: language + "'s example",
+		},
+		netlist.Param{
+			Name: "Vz.at", Unit: quantity.Ampere, Default: 5e-3, Sign: netlist.Positive, Hidden: true,
+			Doc: "I_z, the current at which Vz is stated", Source: practice + ": the test current of small zeners",
+		},
+		netlist.Param{
+			Name: "nz", Unit: quantity.One, Default: 2, Sign: netlist.Positive, Rivals: []string{"rz"},
+			Doc: "ideality of the breakdown", Source: memory + ": a slope of about 10 ohm at 5 mA",
+		},
+		netlist.Param{
+			Name: "rz", Unit: quantity.Ohm, Default: none, Sign: netlist.Positive, Rivals: []string{"nz"},
+			Doc: "slope resistance at the stated point; fixes nz",
+		},
+		netlist.Param{
+			Name: "drift", Unit: quantity.VoltPerK, Default: 0,
+			Doc: "change of Vz with temperature", Source: "none unless stated; near 0 about 5 V, " + practice,
+		},
 	), ratings(rating("Imax", quantity.Ampere, "largest current, either way"))...)
 }
 
@@ -128,29 +152,51 @@ func zener() []netlist.Param {
 // base-emitter voltage.
 func transistor(vbe string) []netlist.Param {
 	return append([]netlist.Param{
-		{Name: "Isat", Unit: quantity.Ampere, Default: 1e-14, Sign: netlist.Positive,
+		{
+			Name: "Isat", Unit: quantity.Ampere, Default: 1e-14, Sign: netlist.Positive,
 			Rivals: []string{vbe, vbe + ".at"}, Doc: "transport saturation current",
-			Source: practice + ": a small silicon transistor, 0.65 V at 1 mA"},
-		{Name: vbe, Unit: quantity.Volt, Default: none, Sign: netlist.Positive, At: vbe + ".at", Rivals: []string{"Isat"},
-			Doc: "base-emitter voltage at a stated collector current, base and collector at one voltage; fixes Isat"},
-		{Name: vbe + ".at", Unit: quantity.Ampere, Default: none, Sign: netlist.Positive, Hidden: true,
-			Doc: "the collector current at which " + vbe + " is stated"},
-		{Name: "betaF", Unit: quantity.One, Default: 100, Sign: netlist.Positive, Infinite: true,
-			Doc: "forward current gain", Source: language},
-		{Name: "betaR", Unit: quantity.One, Default: 1, Sign: netlist.Positive, Infinite: true,
-			Doc: "reverse current gain", Source: language},
-		{Name: "VA", Unit: quantity.Volt, Default: math.Inf(1), Sign: netlist.Positive, Infinite: true,
-			Doc: "Early voltage", Source: language},
-		{Name: "n", Unit: quantity.One, Default: 1, Sign: netlist.Positive,
-			Doc: "ideality of both transport junctions", Source: language},
-		{Name: "Egap", Unit: quantity.EV, Default: 1.12, Sign: netlist.NotNegative,
-			Doc: "band gap, for Isat and Irec over temperature", Source: language + ": silicon"},
-		{Name: "betaDrift", Unit: quantity.PerKelvin, Default: 0,
-			Doc: "relative change of betaF with temperature", Source: language},
-		{Name: "Irec", Unit: quantity.Ampere, Default: 0, Sign: netlist.NotNegative,
-			Doc: "saturation current of the base's recombination", Source: language},
-		{Name: "nrec", Unit: quantity.One, Default: 2, Sign: netlist.Positive,
-			Doc: "ideality of the recombination current", Source: language},
+			Source: practice + ": a small silicon transistor, 0.65 V at 1 mA",
+		},
+		{
+			Name: vbe, Unit: quantity.Volt, Default: none, Sign: netlist.Positive, At: vbe + ".at", Rivals: []string{"Isat"},
+			Doc: "base-emitter voltage at a stated collector current, base and collector at one voltage; fixes Isat",
+		},
+		{
+			Name: vbe + ".at", Unit: quantity.Ampere, Default: none, Sign: netlist.Positive, Hidden: true,
+			Doc: "the collector current at which " + vbe + " is stated",
+		},
+		{
+			Name: "betaF", Unit: quantity.One, Default: 100, Sign: netlist.Positive, Infinite: true,
+			Doc: "forward current gain", Source: language,
+		},
+		{
+			Name: "betaR", Unit: quantity.One, Default: 1, Sign: netlist.Positive, Infinite: true,
+			Doc: "reverse current gain", Source: language,
+		},
+		{
+			Name: "VA", Unit: quantity.Volt, Default: math.Inf(1), Sign: netlist.Positive, Infinite: true,
+			Doc: "Early voltage", Source: language,
+		},
+		{
+			Name: "n", Unit: quantity.One, Default: 1, Sign: netlist.Positive,
+			Doc: "ideality of both transport junctions", Source: language,
+		},
+		{
+			Name: "Egap", Unit: quantity.EV, Default: 1.12, Sign: netlist.NotNegative,
+			Doc: "band gap, for Isat and Irec over temperature", Source: language + ": silicon",
+		},
+		{
+			Name: "betaDrift", Unit: quantity.PerKelvin, Default: 0,
+			Doc: "relative change of betaF with temperature", Source: language,
+		},
+		{
+			Name: "Irec", Unit: quantity.Ampere, Default: 0, Sign: netlist.NotNegative,
+			Doc: "saturation current of the base's recombination", Source: language,
+		},
+		{
+			Name: "nrec", Unit: quantity.One, Default: 2, Sign: netlist.Positive,
+			Doc: "ideality of the recombination current", Source: language,
+		},
 		t0(),
 	}, ratings(
 		rating("Imax", quantity.Ampere, "largest collector current"),

@@ -44,8 +44,8 @@ var rules = map[string]row{
 	// The numeric kernels know no circuits.
 	"solve/twofold": {},
 	"solve/sparse":  {code: "solve/twofold"},
-	"solve/newton": {code: "solve/sparse"},
-	"solve/follow": {code: "solve/newton solve/sparse"},
+	"solve/newton":  {code: "solve/sparse"},
+	"solve/follow":  {code: "solve/newton solve/sparse"},
 
 	"solve/mna": {
 		code:  "netlist netlist/quantity devices devices/physics solve/sparse solve/newton solve/twofold",

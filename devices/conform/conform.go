@@ -69,8 +69,13 @@ func Check(t *testing.T, c Case) {
 		name string
 		hold func(testing.TB, Case)
 	}{
-		{"balance", balance}, {"differences-only", differencesOnly}, {"derivatives", derivatives},
-		{"passive", passive}, {"finite", finite}, {"rising", rising}, {"seams", seams},
+		{"balance", balance},
+		{"differences-only", differencesOnly},
+		{"derivatives", derivatives},
+		{"passive", passive},
+		{"finite", finite},
+		{"rising", rising},
+		{"seams", seams},
 	} {
 		t.Run(claim.name, func(t *testing.T) { claim.hold(t, c) })
 	}
@@ -87,8 +92,10 @@ func (c Case) respond(v []float64) *devices.Response {
 // case is looked at. Each is a multiple of 2^-20, so that sums with terminalOffset
 // are exact.
 func drives() []float64 {
-	out := []float64{-40, -12, -6, -5.625, -5.5, -3, -1, -0.25, -0.0625, -0.015625, 0,
-		0.0078125, 0.03125, 0.125, 0.375, 0.5, 0.625, 0.6875, 0.75}
+	out := []float64{
+		-40, -12, -6, -5.625, -5.5, -3, -1, -0.25, -0.0625, -0.015625, 0,
+		0.0078125, 0.03125, 0.125, 0.375, 0.5, 0.625, 0.6875, 0.75,
+	}
 	return append(out, -0x1p-20, 0x1p-20)
 }
 
