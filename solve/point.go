@@ -148,13 +148,13 @@ func (p *Point) setStates() {
 		if p.Circuit.Elements[i].Kind != netlist.TransistorPart {
 			continue
 		}
-		share, vbc, vbe := p.state.Saturation(i)
+		collector, base, vbc, vbe := p.state.Saturation(i)
 		switch {
 		case math.Abs(ep.Ic) < offShare*largest && math.Abs(ep.Ie) < offShare*largest:
 			ep.State = "off"
 		case vbc > 0 && vbc > vbe:
 			ep.State = "reverse"
-		case share > saturatedShare:
+		case collector > saturatedShare*base: // also where beta is infinite and both are leakage
 			ep.State = "saturated"
 		default:
 			ep.State = "active"

@@ -2,6 +2,7 @@ package solve_test
 
 import (
 	"errors"
+	"fmt"
 	"math"
 	"strings"
 	"testing"
@@ -213,6 +214,26 @@ hold a.V within 10%
 	}
 }
 
+// States by the language's definition; each transistor is put where it must be.
+func TestStates(t *testing.T) {
+	for _, test := range []struct{ name, text, want string }{
+		{"active", "path V -> R1 1k -> c -> Q1 q base=b -> gnd\npath V -> RB 1M -> b\n", "active"},
+		{"saturated", "path V -> R1 1k -> c -> Q1 q base=b -> gnd\npath V -> RB 10k -> b\n", "saturated"},
+		{"off", "path V -> R1 1k -> c -> Q1 q base=b -> gnd\npath b -> RB 10k -> gnd\n path V -> R2 1k -> gnd\n", "off"},
+		{"upside down", "path gnd -> Q1 q base=b -> e -> R1 1k -> V\npath V -> RB 100k -> b\n", "reverse"},
+		{"active without base current", "path V -> R1 100 -> c -> Q1 qi base=b -> e -> RE 1k -> gnd\npath V -> RB 10k -> b -> RC 10k -> gnd\n", "active"},
+	} {
+		r := point(t, "rail V = 5 V\npart q npn Vbe = 0.65 V at 1 mA, betaR = 2\npart qi npn Vbe = 0.65 V at 1 mA, betaF = infinite\n"+test.text)
+		for i := range r.Point.Elements {
+			if r.Point.Circuit.Elements[i].Name == "Q1" {
+				if got := r.Point.Elements[i].State; got != test.want {
+					t.Errorf("%s: state %s, want %s", test.name, got, test.want)
+				}
+			}
+		}
+	}
+}
+
 func point0(t testing.TB, c *netlist.Circuit) *solve.Point {
 	t.Helper()
 	r, err := solve.Solve(c, solve.Options{})
@@ -244,5 +265,31 @@ func TestCautions(t *testing.T) {
 				t.Errorf("cautions %q, want %q", s, test.want)
 			}
 		})
+	}
+}
+
+// A file of 10 000 elements resolves and solves: a ladder of resistors with diodes,
+// at whose far end hardly anything is left.
+func TestTenThousandElements(t *testing.T) {
+	var b strings.Builder
+	b.WriteString("rail V = 20 V\npart d diode Isat = 1 fA\n")
+	before := "V"
+	const rungs = 5000
+	for i := range rungs {
+		node := fmt.Sprintf("n%d", i)
+		fmt.Fprintf(&b, "path %s -> R%d 220 -> %s -> D%d d -> gnd\n", before, i, node, i)
+		before = node
+	}
+	r := point(t, b.String())
+	if got := len(r.Point.Elements); got != 2*rungs {
+		t.Fatalf("%d elements, want %d", got, 2*rungs)
+	}
+	if r.Point.Evidence.Way != "direct" || r.Point.Evidence.Steps > 40 {
+		t.Errorf("found by %s in %d steps, want directly in at most 40", r.Point.Evidence.Way, r.Point.Evidence.Steps)
+	}
+	for i := 1; i < len(r.Point.NodeV)-2; i++ {
+		if r.Point.NodeV[i+2] > r.Point.NodeV[i+1] {
+			t.Fatalf("the voltage rises towards the end at %s", r.Point.Circuit.Nodes[i+2].Name)
+		}
 	}
 }

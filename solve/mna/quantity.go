@@ -259,17 +259,17 @@ func (st *State) transistor(e *netlist.Element, index int, symbol string, seed *
 	return math.NaN(), false
 }
 
-// Saturation tells, for a transistor element, the share of its base current that
-// its conducting collector junction takes, I_r/(betaR I_B), and v_BC and v_BE in
+// Saturation tells, for a transistor element, how much of its base current in A its
+// collector junction takes, I_r/betaR, the whole base current, and v_BC and v_BE in
 // V, pnp in their own senses: what its state is judged by.
-func (st *State) Saturation(element int) (share, vbc, vbe float64) {
+func (st *State) Saturation(element int) (collector, base, vbc, vbe float64) {
 	d := &st.s.devices[st.s.first[element]]
 	b := &st.s.bipolars[d.at]
 	vbe = b.sign * (st.V[d.node[1]] - st.V[d.node[2]])
 	vbc = b.sign * (st.V[d.node[1]] - st.V[d.node[0]])
 	var p devices.BipolarPoint
 	b.k.At(vbe, vbc, &p)
-	return p.Ir * b.k.InvBetaR / p.Ib, vbc, vbe
+	return p.Ir * b.k.InvBetaR, p.Ib, vbc, vbe
 }
 
 // EarlyBroken names a transistor whose v_BC has reached its VA, beyond which the
