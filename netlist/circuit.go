@@ -54,7 +54,12 @@ type Circuit struct {
 	// Givens are the given names, in file order.
 	Givens []SlotID
 
-	Load     []int // elements, in the order of their path
+	Load []int // elements, in the order of their path
+	// LoadHeld tells that HoldLoad put an ideal voltage in the load's place, whose
+	// slot is LoadVolts.
+	LoadHeld  bool
+	LoadVolts SlotID
+
 	Hold     *Hold // nil where none is written
 	Targets  []Target
 	Keeps    []Keep

@@ -424,6 +424,9 @@ func (c *Circuit) rangeNamed(name string) (SlotID, bool) {
 	if name == "ambient" {
 		return c.Ambient, true
 	}
+	if name == LoadName {
+		return c.LoadVolts, c.LoadHeld
+	}
 	t := c.priv.scope.names[strings.TrimSuffix(name, ".V")]
 	if t == nil || t.sort != aRail {
 		return None, false

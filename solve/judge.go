@@ -23,7 +23,14 @@ type Verdict struct {
 // Judge judges targets and keeps at p; with nominal not nil, hold against it
 // too.
 func Judge(p, nominal *Point) []Verdict {
-	c := p.Circuit
+	if nominal == nil {
+		return JudgeAt(p.Circuit, p, nil)
+	}
+	return JudgeAt(p.Circuit, p, nominal)
+}
+
+// JudgeAt is Judge for solutions given as environments of c's expressions.
+func JudgeAt(c *netlist.Circuit, p, nominal netlist.Env) []Verdict {
 	var out []Verdict
 	for i := range c.Targets {
 		t := &c.Targets[i]
@@ -72,7 +79,7 @@ func width(within float64, relative bool, about float64) float64 {
 }
 
 // band judges the quantity against middle ± width.
-func (v *Verdict) band(p *Point, middle, width float64) {
+func (v *Verdict) band(p netlist.Env, middle, width float64) {
 	v.Low, v.High = middle-width, middle+width
 	value, ok := v.Q.Eval(p)
 	if !ok {
@@ -84,7 +91,7 @@ func (v *Verdict) band(p *Point, middle, width float64) {
 	v.Met = v.Margin >= 0
 }
 
-func judgeKeep(p *Point, k *netlist.Keep, index int) Verdict {
+func judgeKeep(p netlist.Env, k *netlist.Keep, index int) Verdict {
 	v := Verdict{Kind: "keep", Q: k.Left, Index: index, Low: math.Inf(-1), High: math.Inf(1)}
 	left, ok1 := k.Left.Eval(p)
 	right, ok2 := k.Right.Eval(p)

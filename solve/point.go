@@ -198,3 +198,6 @@ func (p *Point) railCurrents() float64 {
 	}
 	return sum
 }
+
+// Unknowns are the solver's unknowns at the point, in V; read only.
+func (p *Point) Unknowns() []float64 { return p.x }

@@ -57,12 +57,16 @@ var rules = map[string]row{
 	},
 	"solve/reftest": {tests: "netlist netlist/diag devices devices/physics devices/shelf solve"},
 
+	"sweep": {
+		code:  "netlist netlist/diag netlist/quantity solve solve/mna solve/newton",
+		tests: "devices solve/reftest",
+	},
 	"cmd/biaswright": {code: "cmd/biaswright/internal/cli"},
 	"cmd/biaswright/internal/cli": {
-		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve cmd/biaswright/internal/render",
+		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep cmd/biaswright/internal/render",
 	},
 	"cmd/biaswright/internal/render": {
-		code:  "netlist netlist/diag netlist/quantity devices solve",
+		code:  "netlist netlist/diag netlist/quantity devices solve sweep",
 		tests: "netlist/syntax devices/shelf",
 	},
 }

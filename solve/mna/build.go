@@ -154,8 +154,8 @@ func (b *builder) device(d device) { b.st.devices = append(b.st.devices, d) }
 func (b *builder) number(root []int32) {
 	st := b.st
 	st.row = make([]int32, st.nodes)
-	for _, between := range st.between {
-		root[between.node] = 0 // computed afterwards: known, for all that solves
+	for _, node := range b.untouched() {
+		root[node] = 0 // no balance; known, for all that solves
 	}
 	for node, r := range root {
 		switch {
@@ -174,6 +174,29 @@ func (b *builder) number(root []int32) {
 			st.row[node] = int32(st.n)
 		}
 	}
+}
+
+// untouched lists the nodes that nothing is tied to: those within a row that
+// stands as one junction, or whose row has gone with a held load.
+func (b *builder) untouched() []int {
+	tied := make([]bool, b.st.nodes)
+	tied[0] = true
+	for i := range b.st.devices {
+		d := &b.st.devices[i]
+		for j := 0; j < d.terminals(); j++ {
+			tied[d.node[j]] = true
+		}
+	}
+	for _, i := range b.ideals {
+		tied[i.from], tied[i.to] = true, true
+	}
+	var nodes []int
+	for node, is := range tied {
+		if !is {
+			nodes = append(nodes, node)
+		}
+	}
+	return nodes
 }
 
 // entries lists the Jacobian's pattern: a full diagonal, and every pair of free

@@ -3,6 +3,7 @@ package mna
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"biaswright/devices"
 	"biaswright/netlist"
@@ -26,11 +27,21 @@ type State struct {
 
 // StateAt evaluates the system at x (length Size()), whatever ramp is in force.
 func (s *System) StateAt(x []float64) *State {
+	st := &State{s: s, V: make([]float64, s.nodes), I: make([][3]float64, len(s.devices)), branch: make([]float64, s.nodes)}
+	st.Refresh(x)
+	return st
+}
+
+// Refresh evaluates the state's system anew, at x and with the numbers in force,
+// without allocating.
+func (st *State) Refresh(x []float64) {
+	s := st.s
 	s.currents(x)
-	st := &State{s: s, V: append([]float64(nil), s.v...), I: make([][3]float64, len(s.devices)), branch: make([]float64, s.nodes)}
+	copy(st.V, s.v)
 	for _, b := range s.between {
 		st.V[b.node] = (1-b.share)*st.V[b.from] + b.share*st.V[b.to]
 	}
+	clear(st.branch)
 	for i := range s.devices {
 		d := &s.devices[i]
 		st.I[i] = s.terminalCurrents(d)
@@ -39,7 +50,6 @@ func (s *System) StateAt(x []float64) *State {
 		}
 	}
 	s.forest.behind(st.branch)
-	return st
 }
 
 // terminalCurrents are the currents into a device's terminals at the last
@@ -166,6 +176,9 @@ func (st *State) load(r netlist.Ref, seed *Seed, weight float64) (float64, bool)
 // element evaluates an element's quantity, or one of its members' where member
 // is 1 or more.
 func (st *State) element(e *netlist.Element, index, member int, symbol string, seed *Seed, weight float64) (float64, bool) {
+	if symbol != "I" && st.s.circuit.LoadHeld && slices.Contains(st.s.circuit.Load, index) {
+		return math.NaN(), false // an ideal voltage stands there
+	}
 	if symbol == "Tj" {
 		return st.temperature(index, member, seed, weight)
 	}

@@ -52,3 +52,7 @@ func (s *System) Place(x []float64, node netlist.NodeID, v float64) {
 		x[r] = v - s.offset[node]
 	}
 }
+
+// LastSign is the sign of the determinant of the Jacobian that the last Step used,
+// which near a solution is the solution's.
+func (s *System) LastSign() int { return s.active.DetSign() }

@@ -11,11 +11,12 @@ import (
 type Tuner struct {
 	s        *System
 	slots    []netlist.SlotID
-	follow   bool    // other slots follow the moved ones
-	offsets  bool    // ideal branches move
-	base     bool    // resistors or sources move
-	devices  []int32 // devices whose coefficients move
-	resistor []netlist.SlotID
+	follow   bool             // other slots follow the moved ones
+	offsets  bool             // ideal branches move
+	base     bool             // resistors or sources move
+	devices  []int32          // devices whose coefficients move
+	positive []netlist.SlotID // resistances
+	zero     []netlist.SlotID // links', and bulk resistances that are not there
 	scale    float64
 }
 
@@ -44,12 +45,33 @@ func (s *System) NewTuner(slots ...netlist.SlotID) *Tuner {
 		switch d.kind {
 		case resistorDevice:
 			t.base = true
-			t.resistor = append(t.resistor, s.circuit.Elements[d.element].Value)
+			t.positive = append(t.positive, s.circuit.Elements[d.element].Value)
 		case bulkDevice, sourceDevice:
 			t.base = true
 		}
 	}
+	t.zero = s.absent(moved)
 	return t
+}
+
+// absent lists the moved slots that are 0 now and would add something to the
+// structure were they not.
+func (s *System) absent(moved []bool) []netlist.SlotID {
+	var out []netlist.SlotID
+	for i := range s.circuit.Elements {
+		e := &s.circuit.Elements[i]
+		switch e.Kind {
+		case netlist.Link:
+			if moved[e.Value] {
+				out = append(out, e.Value)
+			}
+		case netlist.JunctionPart:
+			if id := e.Params[s.kind(e).Index("Rbulk")]; moved[id] && s.values[id] == 0 {
+				out = append(out, id)
+			}
+		}
+	}
+	return out
 }
 
 // touched marks the slots and all that follow them: a NaN put in spreads to just
@@ -109,12 +131,17 @@ func (t *Tuner) Set(numbers ...float64) bool {
 	if t.offsets {
 		s.setOffsets()
 	}
+	for _, id := range t.zero {
+		if s.values[id] != 0 {
+			return false
+		}
+	}
 	if len(t.devices) == 0 {
 		return true
 	}
 	kelvin := s.values[s.circuit.Ambient] + zeroCelsius
 	ok := kelvin > 0
-	for _, id := range t.resistor {
+	for _, id := range t.positive {
 		ok = ok && s.values[id] > 0
 	}
 	if !ok {

@@ -1,0 +1,358 @@
+package sweep
+
+import (
+	"context"
+
+	"biaswright/netlist"
+	"biaswright/solve"
+	"biaswright/solve/mna"
+	"biaswright/solve/newton"
+)
+
+// A Status is what became of a point.
+type Status string
+
+// The statuses.
+const (
+	OK       Status = "ok"
+	Unstable Status = "unstable" // a point that cannot be stable is all there is
+	Failed   Status = "failed"   // no operating point
+)
+
+// A Row is one point of a sweep.
+type Row struct {
+	At     []float64 // by axis
+	Values []float64 // by shown expression; NaN where there is no number
+	Status Status
+	// Inside tells that the point lies in the stated ranges; Unmet then counts
+	// the targets, keeps and the hold that it does not meet.
+	Inside bool
+	Unmet  int
+}
+
+// A Plan is what to sweep and what to show.
+type Plan struct {
+	Circuit *netlist.Circuit
+	Axes    []Axis // the first is outermost
+	// Show are texts of quantities or expressions, as ParseExpr reads them.
+	Show []string
+	// Workers is how many goroutines share the outer axes; 0 is one.
+	Workers int
+	// Nominal, where set, is the nominal point that hold is judged against.
+	Nominal *solve.Point
+}
+
+// Points is how many rows the plan has.
+func (p *Plan) Points() int {
+	n := 1
+	for i := range p.Axes {
+		n *= len(p.Axes[i].Values)
+	}
+	return n
+}
+
+// chunk is how many rows are handed on at a time: enough to make handing cheap,
+// few enough to end soon.
+const chunk = 256
+
+// Run solves every point and hands the rows to emit in input order, from the
+// calling goroutine; rows are not modified afterwards. It ends early with emit's
+// error, or with ctx's. A point that fails is a row, not an error; the error is an
+// *Error where an axis or an expression does not fit the circuit.
+func Run(ctx context.Context, p Plan, emit func(Row) error) error {
+	if len(p.Axes) == 0 {
+		return wrong("add --over VCC=5V..15V", "nothing to sweep over")
+	}
+	if _, err := bindAll(p.Circuit, p.Show); err != nil {
+		return err
+	}
+	ctx, cancel := context.WithCancel(ctx)
+	defer cancel()
+	inner := len(p.Axes[len(p.Axes)-1].Values)
+	runs := p.Points() / max(inner, 1)
+	workers := max(p.Workers, 1)
+	// Each run has its own channel, and they are read in order; a slot is taken
+	// before a run starts, so that at most that many are ahead.
+	slots := make(chan struct{}, workers)
+	lines := make(chan chan []Row, workers)
+	go func() {
+		defer close(lines)
+		for k := range runs {
+			select {
+			case slots <- struct{}{}:
+			case <-ctx.Done():
+				return
+			}
+			line := make(chan []Row, 1)
+			select {
+			case lines <- line:
+			case <-ctx.Done():
+				return
+			}
+			go func() {
+				defer func() { <-slots }()
+				defer close(line)
+				r := runner{plan: &p, ctx: ctx, out: line}
+				r.run(k)
+			}()
+		}
+	}()
+	for line := range lines {
+		for rows := range line {
+			for _, row := range rows {
+				if err := ctx.Err(); err != nil {
+					return err
+				}
+				if err := emit(row); err != nil {
+					return err
+				}
+			}
+		}
+	}
+	return ctx.Err()
+}
+
+func bindAll(c *netlist.Circuit, texts []string) ([]*netlist.Expr, error) {
+	out := make([]*netlist.Expr, len(texts))
+	for i, text := range texts {
+		e, list := c.ParseExpr(text)
+		if list.HasErrors() {
+			return nil, wrong(list[0].Hint, "%s: %s", text, list[0].Message)
+		}
+		out[i] = e
+	}
+	return out, nil
+}
+
+// A runner solves one run: the inner axis at one combination of the outer ones.
+type runner struct {
+	plan *Plan
+	ctx  context.Context
+	out  chan<- []Row
+	rows []Row
+
+	at      []float64 // of the outer axes
+	outside bool      // an outer axis is outside its stated range
+	numbers []float64 // what is left of the chunk's numbers, for rows
+
+	c     *netlist.Circuit
+	s     *mna.System
+	show  []*netlist.Expr
+	state *mna.State
+	work  newton.Work
+	past  history
+}
+
+// run solves run number k, counted with the last outer axis quickest.
+func (r *runner) run(k int) {
+	axes := r.plan.Axes
+	outer := axes[:len(axes)-1]
+	r.at = make([]float64, len(outer))
+	var settings []netlist.Setting
+	for i := len(outer) - 1; i >= 0; i-- {
+		a := &outer[i]
+		at := k % len(a.Values)
+		k /= len(a.Values)
+		r.at[i] = a.Values[at]
+		settings = append(a.settings(at), settings...)
+		r.outside = r.outside || !r.within(a, a.Values[at])
+	}
+	c, list := r.plan.Circuit.With(settings...)
+	inner := &axes[len(axes)-1]
+	if list.HasErrors() {
+		for _, v := range inner.Values {
+			r.fail(inner, v)
+		}
+	} else if inner.row != "" || !r.follow(c, inner) {
+		r.each(c, inner)
+	}
+	r.flush()
+}
+
+// within tells whether a value of an axis lies in the ranges stated for all that
+// it moves.
+func (r *runner) within(a *Axis, v float64) bool {
+	if a.row != "" {
+		return a.rowInside(r.plan.Circuit, v)
+	}
+	for _, id := range a.slots(r.plan.Circuit) {
+		if !inside(&r.plan.Circuit.Slots[id], v) {
+			return false
+		}
+	}
+	return true
+}
+
+// each solves every point of the inner axis from the beginning: where the values
+// change the structure.
+func (r *runner) each(c *netlist.Circuit, inner *Axis) {
+	for i, v := range inner.Values {
+		if r.ctx.Err() != nil {
+			return
+		}
+		changed, list := c.With(inner.settings(i)...)
+		if list.HasErrors() || !r.compile(changed) {
+			r.fail(inner, v)
+			continue
+		}
+		r.anew(inner, v)
+	}
+}
+
+// compile sets a circuit up.
+func (r *runner) compile(c *netlist.Circuit) bool {
+	s, err := mna.New(c)
+	if err != nil {
+		return false
+	}
+	r.c, r.s, r.state = c, s, nil
+	r.past.clear()
+	r.show, err = bindAll(c, r.plan.Show)
+	return err == nil
+}
+
+// follow solves the inner axis along its branch. It reports false, with nothing
+// done, where some value changes the structure.
+func (r *runner) follow(c *netlist.Circuit, inner *Axis) bool {
+	if !r.compile(c) {
+		return false
+	}
+	t := r.s.NewTuner(inner.slots(c)...)
+	numbers := make([]float64, len(inner.names))
+	put := func(v float64) bool {
+		for i := range numbers {
+			numbers[i] = v
+		}
+		return t.Set(numbers...)
+	}
+	for _, v := range inner.Values {
+		if !put(v) {
+			return false
+		}
+	}
+	x := make([]float64, r.s.Size())
+	for _, v := range inner.Values {
+		if r.ctx.Err() != nil {
+			return true
+		}
+		put(v)
+		if r.past.predict(v, x) {
+			r.s.From(x)
+			// A predictor that needs more than a few steps has lost its branch.
+			const few = 12
+			if n := newton.Solve(r.s, x, &r.work, newton.Options{MaxSteps: few}); n.Outcome == newton.Converged {
+				status := OK
+				if r.s.LastSign() < 0 {
+					status = Unstable
+				}
+				r.refresh(x)
+				if r.state.EarlyBroken() == "" {
+					r.past.add(v, x)
+					r.keep(inner, v, status)
+					continue
+				}
+			}
+		}
+		r.anew(inner, v)
+	}
+	return true
+}
+
+func (r *runner) refresh(x []float64) {
+	if r.state == nil {
+		r.state = r.s.StateAt(x)
+		return
+	}
+	r.state.Refresh(x)
+}
+
+// anew solves a point by the whole ladder.
+func (r *runner) anew(inner *Axis, v float64) {
+	r.past.clear()
+	res, err := solve.SolveSystem(r.s, solve.Options{})
+	if err != nil {
+		r.fail(inner, v)
+		return
+	}
+	x := res.Point.Unknowns()
+	status := OK
+	if res.Point.Unstable {
+		status = Unstable
+	}
+	r.refresh(x)
+	r.past.add(v, x)
+	r.keep(inner, v, status)
+}
+
+// keep adds a solved row.
+func (r *runner) keep(inner *Axis, v float64, status Status) {
+	row := r.row(v)
+	row.Status = status
+	for i, e := range r.show {
+		if value, ok := e.Eval(r.state); ok {
+			row.Values[i] = value
+		}
+	}
+	if row.Inside = !r.outside && r.within(inner, v); row.Inside {
+		row.Unmet = r.unmet()
+	}
+	r.add(row)
+}
+
+func (r *runner) unmet() int {
+	var nominal netlist.Env
+	if r.plan.Nominal != nil {
+		nominal = r.plan.Nominal
+	}
+	count := 0
+	for _, verdict := range solve.JudgeAt(r.c, r.state, nominal) {
+		if !verdict.Met {
+			count++
+		}
+	}
+	return count
+}
+
+func (r *runner) fail(inner *Axis, v float64) {
+	r.past.clear()
+	row := r.row(v)
+	row.Status = Failed
+	row.Inside = !r.outside && r.within(inner, v)
+	r.add(row)
+}
+
+// row is a row without numbers.
+func (r *runner) row(v float64) Row {
+	axes, size := len(r.at)+1, len(r.at)+1+len(r.plan.Show)
+	if len(r.numbers) < size {
+		r.numbers = make([]float64, chunk*size)
+	}
+	row := Row{At: r.numbers[:axes:axes], Values: r.numbers[axes:size:size]}
+	r.numbers = r.numbers[size:]
+	copy(row.At, r.at)
+	row.At[axes-1] = v
+	for i := range row.Values {
+		row.Values[i] = nan
+	}
+	return row
+}
+
+func (r *runner) add(row Row) {
+	if r.rows == nil {
+		r.rows = make([]Row, 0, chunk)
+	}
+	if r.rows = append(r.rows, row); len(r.rows) == chunk {
+		r.flush()
+	}
+}
+
+func (r *runner) flush() {
+	if len(r.rows) == 0 {
+		return
+	}
+	select {
+	case r.out <- r.rows:
+	case <-r.ctx.Done():
+	}
+	r.rows = nil
+}
