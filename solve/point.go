@@ -201,3 +201,23 @@ func (p *Point) railCurrents() float64 {
 
 // Unknowns are the solver's unknowns at the point, in V; read only.
 func (p *Point) Unknowns() []float64 { return p.x }
+
+// PointAt reads every quantity of a system at unknowns x that solve it with the
+// numbers in force: for points that were found by following a branch.
+func PointAt(s *mna.System, x []float64, way string) *Point {
+	return newPoint(s, x, Evidence{Way: way, Determinant: s.DetSign(x), Attempts: 1})
+}
+
+// Contributions splits dQ/d(slot) at the point into the elements' shares; see
+// mna.State.Contributions.
+func (p *Point) Contributions(q *netlist.Expr, id netlist.SlotID) ([]mna.Contribution, error) {
+	return p.state.Contributions(q, id)
+}
+
+// Depth tells how far a transistor element has left the active region: the collector
+// junction's share of its base current over the share that marks saturation; 1 at
+// the edge.
+func (p *Point) Depth(element int) float64 {
+	collector, base, _, _ := p.state.Saturation(element)
+	return math.Abs(collector / (saturatedShare * base))
+}

@@ -13,6 +13,7 @@ import (
 	"biaswright/devices"
 	"biaswright/netlist"
 	"biaswright/solve"
+	"biaswright/solve/reftest"
 	"biaswright/sweep"
 )
 
@@ -292,5 +293,41 @@ func BenchmarkSweepPoint(b *testing.B) {
 			}
 			b.ReportMetric(float64(b.Elapsed().Nanoseconds())/float64(b.N)/points, "ns/point")
 		})
+	}
+}
+
+// Currents over beta: the parameter_sweep cases of testdata/reference/limits.json
+// (its own source and method).
+func TestReferenceBetaSpread(t *testing.T) {
+	cases, err := reftest.Cases(filepath.Join("..", "testdata", "reference", "limits.json"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	figures := 0
+	for i := range cases {
+		k := &cases[i]
+		if k.Analysis != "parameter_sweep" {
+			continue
+		}
+		text, err := k.Text()
+		if err != nil {
+			t.Fatal(err)
+		}
+		c := read(t, string(text.Source))
+		var values []string
+		for _, v := range k.Detail.Values {
+			values = append(values, fmt.Sprint(v))
+		}
+		over := text.Part[k.Detail.Model] + ".betaF=" + strings.Join(values, ",")
+		got := rows(t, sweep.Plan{Circuit: c, Show: []string{k.Expected[0].Probe.Element + ".Ic"}, Axes: []sweep.Axis{axis(t, c, over, 0, false)}})
+		for j, f := range k.Expected {
+			figures++
+			if v := got[j].Values[0]; math.Abs(v-f.Value) > f.TolRel*f.Value {
+				t.Errorf("%s %s = %.15g, want %.15g", k.ID, f.Name, v, f.Value)
+			}
+		}
+	}
+	if figures != 8 {
+		t.Errorf("%d figures compared, expected 8", figures)
 	}
 }

@@ -61,12 +61,17 @@ var rules = map[string]row{
 		code:  "netlist netlist/diag netlist/quantity solve solve/mna solve/newton",
 		tests: "devices solve/reftest",
 	},
+	"sweep/limits": {
+		code:  "netlist netlist/quantity devices solve solve/mna solve/newton solve/follow",
+		tests: "devices devices/shelf solve/reftest",
+	},
+
 	"cmd/biaswright": {code: "cmd/biaswright/internal/cli"},
 	"cmd/biaswright/internal/cli": {
-		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep cmd/biaswright/internal/render",
+		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits cmd/biaswright/internal/render",
 	},
 	"cmd/biaswright/internal/render": {
-		code:  "netlist netlist/diag netlist/quantity devices solve sweep",
+		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits",
 		tests: "netlist/syntax devices/shelf",
 	},
 }

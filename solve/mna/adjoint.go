@@ -208,3 +208,60 @@ func (s *System) collectResistor(st *State, i int, e *netlist.Element, through f
 	d[e.TC] -= through * current * rise / factor
 	d[s.circuit.Ambient] -= through * current * tc / factor
 }
+
+// A Contribution is an element's share of a derivative.
+type Contribution struct {
+	Element int
+	Amount  float64 // in the quantity's unit over the slot's
+}
+
+// Contributions splits dQ/d(slot) into what each element passes on, for a slot that
+// is a rail's or the load's volts, or the ambient temperature: a supply acts through
+// the elements tied to it, a temperature through every part. Their sum is the
+// derivative, followers of the slot left aside. Elements without a share are left
+// out; the order is the circuit's.
+func (st *State) Contributions(q *netlist.Expr, id netlist.SlotID) ([]Contribution, error) {
+	s := st.s
+	seed := s.newSeed()
+	ok := true
+	if _, found := q.Grad(st,
+		func(netlist.SlotID, float64) {},
+		func(r netlist.Ref, w float64) {
+			_, has := st.measure(r, seed, w)
+			ok = ok && has
+		}); !found || !ok {
+		return nil, errors.New(q.Text + " has no number here")
+	}
+	adjoint, err := st.adjoint(seed)
+	if err != nil {
+		return nil, err
+	}
+	direction := s.NewTuner(id).direction()
+	amounts := make([]float64, len(s.circuit.Elements))
+	offsets, d := make([]float64, s.nodes), make([]float64, len(s.values))
+	var r devices.Response
+	for i := range s.devices {
+		dev := &s.devices[i]
+		w := seed.i[i]
+		for j := 0; j < dev.terminals(); j++ {
+			w[j] -= adjoint[s.row[dev.node[j]]]
+			offsets[dev.node[j]] = 0
+		}
+		before := d[id]
+		s.collect(st, i, w, &r, offsets, d)
+		amount := d[id] - before
+		for j := 0; j < dev.terminals(); j++ {
+			node := dev.node[j]
+			amount += offsets[node] * direction[node]
+			offsets[node] = 0 // terminals on one node count once
+		}
+		amounts[dev.element] += amount
+	}
+	var out []Contribution
+	for i, amount := range amounts {
+		if amount != 0 {
+			out = append(out, Contribution{i, amount})
+		}
+	}
+	return out, nil
+}

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"strings"
 )
 
 // A Network is a list of elements with their models, as the reference files
@@ -54,10 +55,20 @@ const room = 298.15
 // A Case is a network of bias-networks.json with what it must show.
 type Case struct {
 	Network
-	Analysis string // operating_point, temperature_sweep, textbook
+	Analysis string // operating_point, temperature_sweep, textbook, …
+	Detail   Detail
 	Source   string
 	Expected []Figure
 	Currents []Figure // every terminal current, where the file lists them
+}
+
+// A Detail is what an analysis moves: a source (by name) from its nominal value down
+// to where a current is a fraction of what it was, or one parameter of a model.
+type Detail struct {
+	Type, Source     string
+	Fraction         float64
+	Model, Parameter string
+	Values           []float64
 }
 
 // A Figure is one expected number. Exactly one of Node, Nodes and Probe says
@@ -121,7 +132,7 @@ func Cases(path string) ([]Case, error) {
 		Cases []struct {
 			ID, Title, Source string
 			Kelvin            float64 `json:"temperature_K"`
-			Analysis          struct{ Type string }
+			Analysis          Detail
 			Elements          []json.RawMessage
 			Models            map[string]struct {
 				Kind      string
@@ -162,7 +173,7 @@ func Cases(path string) ([]Case, error) {
 			}
 			n.Elements = append(n.Elements, e)
 		}
-		out = append(out, Case{Network: n, Analysis: c.Analysis.Type, Source: c.Source, Expected: c.Expected})
+		out = append(out, Case{Network: n, Analysis: c.Analysis.Type, Detail: c.Analysis, Source: c.Source, Expected: c.Expected})
 		for _, i := range c.Currents {
 			probe := i.Probe
 			out[len(out)-1].Currents = append(out[len(out)-1].Currents, Figure{
@@ -179,6 +190,9 @@ func Cases(path string) ([]Case, error) {
 type Known struct {
 	Network
 	Points []KnownPoint
+	// Folds are volts of the source FoldOf at which a branch turns back.
+	FoldOf string
+	Folds  []float64
 }
 
 // A KnownPoint is one operating point: volts by node name, and the determinant's
@@ -197,6 +211,12 @@ func Points(path string) ([]Known, error) {
 			VT                float64 `json:"V_T"`
 			Elements          []json.RawMessage
 			Points            []KnownPoint `json:"operating_points"`
+			Folds             struct {
+				Parameter string
+				Points    []struct {
+					Volts float64 `json:",string"`
+				}
+			}
 		}
 	}
 	if err := readJSON(path, &file); err != nil {
@@ -220,7 +240,11 @@ func Points(path string) ([]Known, error) {
 			}
 			n.Elements = append(n.Elements, e)
 		}
-		out = append(out, Known{Network: n, Points: c.Points})
+		k := Known{Network: n, Points: c.Points, FoldOf: strings.TrimPrefix(c.Folds.Parameter, "value in volts of source ")}
+		for _, p := range c.Folds.Points {
+			k.Folds = append(k.Folds, p.Volts)
+		}
+		out = append(out, k)
 	}
 	return out, nil
 }

@@ -1,0 +1,163 @@
+package limits
+
+import (
+	"math"
+	"strconv"
+
+	"biaswright/netlist"
+	"biaswright/solve"
+)
+
+// A Load is what the load may be.
+type Load struct {
+	// Low and High are the voltages at the load between which the circuit holds;
+	// NaN where what is held is the load's own voltage.
+	Low, High float64
+	// Outputs are the nodes at the load's ends that no rail holds, with their
+	// voltages at both ends of the window.
+	Outputs []Output
+	// MaxOhms is the largest resistance that may stand in the load's place: the
+	// window's larger end over the current there.
+	MaxOhms float64
+	// Row is the element of the load whose number was counted, "" where the load
+	// has no diode or emitter; Counts how many may stand in a row.
+	Row    string
+	Counts []Count
+}
+
+// An Output is a node at the load's end.
+type Output struct {
+	Node          string
+	AtLow, AtHigh float64 // V, at the window's ends
+}
+
+// A Count is the largest number in a row that still holds, 0 where not even one
+// does, -1 where the search ended before it found the end.
+type Count struct {
+	Where string // "nominal", "low rails", "coldest", "hottest"
+	Most  int
+}
+
+// loadAnswers reads the window off the limits, and counts.
+func (a *Answer) loadAnswers(c *netlist.Circuit) {
+	l := &Load{Low: math.NaN(), High: math.NaN(), MaxOhms: math.NaN()}
+	a.Load = l
+	for i := range a.Limits {
+		if lim := &a.Limits[i]; lim.Axis == netlist.LoadName {
+			a.window(c, l, lim)
+		}
+	}
+	for _, i := range c.Load {
+		if c.Elements[i].Kind == netlist.JunctionPart {
+			l.Row = c.Elements[i].Name
+			a.count(c, l)
+			return
+		}
+	}
+}
+
+func (a *Answer) window(c *netlist.Circuit, l *Load, lim *Limit) {
+	at := func(s Side) (float64, *solve.Point) {
+		if s.Reason != End {
+			return s.At, s.Point
+		}
+		p, err := solve.Solve(c.HoldLoad(s.SearchedTo), solve.Options{})
+		if err != nil {
+			return s.SearchedTo, nil
+		}
+		return s.SearchedTo, p.Point
+	}
+	var low, high *solve.Point
+	l.Low, low = at(lim.Low)
+	l.High, high = at(lim.High)
+	if high != nil && high.LoadI > 0 {
+		l.MaxOhms = l.High / high.LoadI
+	}
+	first, last := c.Elements[c.Load[0]].From, c.Elements[c.Load[len(c.Load)-1]].To
+	for _, node := range []netlist.NodeID{first, last} {
+		if low != nil && high != nil && node != netlist.Gnd && c.Nodes[node].Rail == netlist.None {
+			l.Outputs = append(l.Outputs, Output{c.Nodes[node].Name, low.NodeV[node], high.NodeV[node]})
+		}
+	}
+}
+
+// count finds the largest number in a row under each condition, by solving each
+// circuit.
+func (a *Answer) count(c *netlist.Circuit, l *Load) {
+	conditions := []struct {
+		where string
+		ends  []netlist.Setting
+	}{{"nominal", nil}, {"low rails", nearestZero(c)}, {"coldest", ambientEnd(c, "low")}, {"hottest", ambientEnd(c, "high")}}
+	for _, cond := range conditions {
+		if cond.where != "nominal" && cond.ends == nil {
+			continue // no such range is stated
+		}
+		l.Counts = append(l.Counts, Count{cond.where, a.most(c, l.Row, cond.ends)})
+	}
+}
+
+// longestCount bounds the search; no supply of a bias network drives more.
+const longestCount = 200
+
+// most counts up until three more in a row have failed: a band may be entered from
+// outside, but is not left and entered again by one more emitter.
+func (a *Answer) most(c *netlist.Circuit, name string, ends []netlist.Setting) int {
+	const patience = 3
+	most, failed := 0, 0
+	for k := 1; k <= longestCount; k++ {
+		if a.holds(c, name, k, ends) {
+			most, failed = k, 0
+			continue
+		}
+		if failed++; failed >= patience && (most > 0 || k > 2*patience) {
+			return most
+		}
+	}
+	return -1
+}
+
+func (a *Answer) holds(c *netlist.Circuit, name string, k int, ends []netlist.Setting) bool {
+	row, list := c.With(netlist.Setting{Name: name + ".row", Value: strconv.Itoa(k)})
+	if list.HasErrors() {
+		return false
+	}
+	if ends != nil {
+		if row, list = row.At(ends...); list.HasErrors() {
+			return false
+		}
+	}
+	res, err := solve.Solve(row, solve.Options{})
+	if err != nil || res.Point.Unstable {
+		return false
+	}
+	q, list := row.ParseExpr(a.Hold.Q.Text)
+	if list.HasErrors() {
+		return false
+	}
+	v, ok := q.Eval(res.Point)
+	return ok && v >= a.Hold.Low && v <= a.Hold.High
+}
+
+// nearestZero puts every rail with a stated range at its end nearest 0.
+func nearestZero(c *netlist.Circuit) []netlist.Setting {
+	var out []netlist.Setting
+	for i := range c.Rails {
+		b := &c.Slots[c.Rails[i].Volts].Bounds
+		if !b.Stated {
+			continue
+		}
+		end := "low"
+		if math.Abs(b.High) < math.Abs(b.Low) {
+			end = "high"
+		}
+		out = append(out, netlist.Setting{Name: c.Rails[i].Name, Value: end})
+	}
+	return out
+}
+
+func ambientEnd(c *netlist.Circuit, end string) []netlist.Setting {
+	if !c.Slots[c.Ambient].Bounds.Stated {
+		return nil
+	}
+	return []netlist.Setting{{Name: "ambient", Value: end}}
+}
