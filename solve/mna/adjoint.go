@@ -236,19 +236,52 @@ func (st *State) Contributions(q *netlist.Expr, id netlist.SlotID) ([]Contributi
 	if err != nil {
 		return nil, err
 	}
+	for i := range s.devices {
+		d := &s.devices[i]
+		for j := 0; j < d.terminals(); j++ {
+			seed.i[i][j] -= adjoint[s.row[d.node[j]]]
+		}
+	}
 	direction := s.NewTuner(id).direction()
+	out, size := s.contributions(st, seed, id, direction)
+	if against := s.against(direction); against != nil {
+		if other, smaller := s.contributions(st, seed, id, against); smaller < size {
+			out = other
+		}
+	}
+	return out, nil
+}
+
+// against is the same movement seen from the moved nodes: all other known nodes go
+// the other way. Both ways of telling it are right, for only voltage differences
+// matter; the one with less cancellation is the better explanation: a source that
+// hangs on its supply sees gnd move. It is nil where a free node is moved.
+func (s *System) against(direction []float64) []float64 {
+	out := make([]float64, len(direction))
+	for node, d := range direction {
+		switch known := int(s.row[node]) == s.n; {
+		case !known && d != 0:
+			return nil
+		case known && node < len(s.circuit.Nodes):
+			out[node] = d - 1
+		}
+	}
+	return out
+}
+
+// contributions collects each element's amount for a movement of the nodes, and the
+// sum of their magnitudes.
+func (s *System) contributions(st *State, seed *Seed, id netlist.SlotID, direction []float64) (out []Contribution, size float64) {
 	amounts := make([]float64, len(s.circuit.Elements))
 	offsets, d := make([]float64, s.nodes), make([]float64, len(s.values))
 	var r devices.Response
 	for i := range s.devices {
 		dev := &s.devices[i]
-		w := seed.i[i]
 		for j := 0; j < dev.terminals(); j++ {
-			w[j] -= adjoint[s.row[dev.node[j]]]
 			offsets[dev.node[j]] = 0
 		}
 		before := d[id]
-		s.collect(st, i, w, &r, offsets, d)
+		s.collect(st, i, seed.i[i], &r, offsets, d)
 		amount := d[id] - before
 		for j := 0; j < dev.terminals(); j++ {
 			node := dev.node[j]
@@ -257,11 +290,11 @@ func (st *State) Contributions(q *netlist.Expr, id netlist.SlotID) ([]Contributi
 		}
 		amounts[dev.element] += amount
 	}
-	var out []Contribution
 	for i, amount := range amounts {
 		if amount != 0 {
 			out = append(out, Contribution{i, amount})
+			size += math.Abs(amount)
 		}
 	}
-	return out, nil
+	return out, size
 }

@@ -30,6 +30,8 @@ type PartState struct {
 	// State is "saturated", "off", "reverse", or "starved" for a junction whose
 	// current has fallen to less than a tenth.
 	State string
+	// PNP tells that Volts is V_EC.
+	PNP bool
 	// Volts is a transistor's V_CE (V_EC) at the limit; Amps a junction's or
 	// transistor's current there, and Nominal what it was at the nominal point.
 	Volts, Amps, Nominal float64
@@ -54,7 +56,7 @@ func (a *Answer) explain(ax *axis, side Side) Cause {
 		case netlist.TransistorPart:
 			if was.State == "active" && now.State != "active" {
 				c.Left = append(c.Left, PartState{
-					Name: e.Name, State: now.State, Volts: now.Vce, Amps: now.Ic, Nominal: was.Ic,
+					Name: e.Name, State: now.State, PNP: ax.c.Parts[e.Part].Kind.PNP, Volts: now.Vce, Amps: now.Ic, Nominal: was.Ic,
 					out: p.Depth(i),
 				})
 			}

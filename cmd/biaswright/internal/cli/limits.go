@@ -1,0 +1,176 @@
+package cli
+
+import (
+	"errors"
+	"fmt"
+	"runtime"
+
+	"github.com/urfave/cli/v2"
+
+	"biaswright/cmd/biaswright/internal/render"
+	"biaswright/netlist"
+	"biaswright/netlist/diag"
+	"biaswright/netlist/quantity"
+	"biaswright/solve"
+	"biaswright/sweep/limits"
+)
+
+func (r *runner) limitsCommand() *cli.Command {
+	return &cli.Command{
+		Name:      "limits",
+		Usage:     "find where each file stops holding, and why",
+		UsageText: "biaswright limits [options] FILE...",
+		Flags: []cli.Flag{
+			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
+			&cli.StringFlag{Name: "within", Usage: "`WIDTH`: how far the held quantity may move, such as 2% or 10mV, in place of the file's"},
+			&cli.IntFlag{Name: "workers", Usage: "`N` axes at a time; the answer is the same", Value: runtime.NumCPU()},
+			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+		},
+		Action: r.limits,
+	}
+}
+
+// A limitsRequest is what the options of limits ask for.
+type limitsRequest struct {
+	request
+	within  *quantity.Reading
+	workers int
+}
+
+func (r *runner) limits(c *cli.Context) error {
+	if c.NArg() == 0 {
+		return &usageError{"limits needs a file", `"-" is standard input`}
+	}
+	r.plain = c.Bool("plain")
+	base, err := r.request(c)
+	if err != nil {
+		return err
+	}
+	q := &limitsRequest{request: *base, workers: c.Int("workers")}
+	if q.workers < 1 {
+		return usagef("--workers %d: at least one must work", q.workers)
+	}
+	if text := c.String("within"); text != "" {
+		reading, err := quantity.Parse(text)
+		if err != nil || !(reading.Value > 0) {
+			return &usageError{fmt.Sprintf("--within %q is no width", text), "write --within 2% or --within 10mV"}
+		}
+		q.within = &reading
+	}
+	var all []any
+	for i, name := range c.Args().Slice() {
+		a, trouble := r.limitsOf(name, q)
+		switch {
+		case c.Bool("json") && trouble != nil:
+			all = append(all, trouble.json())
+		case c.Bool("json"):
+			all = append(all, render.LimitsJSON(a))
+		case trouble != nil:
+			r.tell(trouble)
+		default:
+			r.diagnose(a.Warnings)
+			if i > 0 {
+				fmt.Fprintln(r.out)
+			}
+			if err := render.LimitsScreen(r.out, a, r.look()); err != nil {
+				return &writeError{err}
+			}
+		}
+	}
+	return r.writeAll(all)
+}
+
+// writeAll prints one JSON object, or several as an array, or nothing.
+func (r *runner) writeAll(all []any) error {
+	var v any = all
+	switch len(all) {
+	case 0:
+		return nil
+	case 1:
+		v = all[0]
+	}
+	if err := render.WriteJSON(r.out, v); err != nil {
+		return &writeError{err}
+	}
+	return nil
+}
+
+// limitsOf answers for one file and notes the exit code it earns.
+func (r *runner) limitsOf(name string, q *limitsRequest) (*render.LimitsAnswer, *trouble) {
+	shown := shownName(name)
+	text, err := r.read(name)
+	if err != nil {
+		r.raise(exitFile)
+		return nil, &trouble{file: shown, err: err}
+	}
+	r.texts[shown] = text
+	refuse := func(found diag.List) (*render.LimitsAnswer, *trouble) {
+		r.raise(exitUsage)
+		return nil, &trouble{file: shown, found: found}
+	}
+	c, _, warnings, wrong := r.circuits(shown, text, &q.request)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	near, wrong := nearPoint(c, q.near)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	o := limits.Options{Near: near, Workers: q.workers}
+	if o.Within, wrong = widthFor(c, q.within); wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	a := &render.LimitsAnswer{File: shown, Circuit: c, Set: q.set, Within: o.Within, Warnings: warnings}
+	a.Limits, err = limits.Find(c, o)
+	switch {
+	case errors.Is(err, limits.ErrNoHold):
+		return refuse(diag.List{{Code: "no-hold", Span: diag.Span{File: shown}, Message: err.Error(), Hint: "add: hold LAMP.I within 5%"}})
+	case errors.Is(err, limits.ErrZeroHold):
+		found := diag.Diagnostic{Code: "zero-hold", Span: diag.Span{File: shown}, Message: err.Error(), Hint: "state an absolute width: within 10 mV"}
+		if c.Hold != nil {
+			found.Span = c.Hold.Span
+		}
+		return refuse(diag.List{found})
+	case err != nil:
+		r.raise(exitNoPoint)
+		a.Failure = failure(err)
+		return a, nil
+	}
+	for i := range a.Limits.Limits {
+		if low, high := a.Short(&a.Limits.Limits[i]); low || high {
+			r.raise(exitNotMet)
+		}
+	}
+	return a, nil
+}
+
+// widthFor checks the width of --within against what the file holds.
+func widthFor(c *netlist.Circuit, within *quantity.Reading) (*limits.Within, diag.List) {
+	if within == nil {
+		return nil, nil
+	}
+	if within.Percent() {
+		return &limits.Within{Value: within.Value, Relative: true}, nil
+	}
+	q := held(c)
+	if q == nil { // Find says so
+		return nil, nil
+	}
+	want := q.Unit
+	want.Absolute = false // a width of a temperature is in kelvin
+	if within.Unit != want {
+		return nil, diag.List{{
+			Code: "within", Message: fmt.Sprintf("--within is in %s, and %s in %s", within.Unit.Words(), q.Text, q.Unit.Words()),
+			Hint: "a percentage fits any quantity: --within 2%",
+		}}
+	}
+	return &limits.Within{Value: within.Value}, nil
+}
+
+// held is the quantity that the file holds, nil where it holds none.
+func held(c *netlist.Circuit) *netlist.Expr {
+	q, _, _ := solve.HoldOf(c)
+	return q
+}
