@@ -99,7 +99,7 @@ func (p *Printer) excerpt(b *strings.Builder, s Span, colour string) {
 		return
 	}
 	src := p.Source(s.File)
-	if s.Start.Offset > len(src) {
+	if src == nil || s.Start.Offset > len(src) {
 		return
 	}
 	start := bytes.LastIndexByte(src[:s.Start.Offset], '\n') + 1
