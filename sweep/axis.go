@@ -199,13 +199,14 @@ func (a *Axis) ratios(from, to float64, points int) error {
 		return wrong("both ends on one side of 0", "%s: a logarithmic range cannot touch or cross 0", a.Name)
 	}
 	for i := range points {
-		v := math.Copysign(math.Exp(between(math.Log(math.Abs(from)), math.Log(math.Abs(to)), i, points)), from)
-		if i == 0 {
-			v = from
-		} else if i == points-1 {
-			v = to
+		switch i {
+		case 0:
+			a.Values = append(a.Values, from)
+		case points - 1:
+			a.Values = append(a.Values, to)
+		default:
+			a.Values = append(a.Values, from*math.Pow(to/from, float64(i)/float64(points-1)))
 		}
-		a.Values = append(a.Values, v)
 	}
 	return nil
 }

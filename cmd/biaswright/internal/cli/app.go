@@ -137,6 +137,7 @@ func (r *runner) app() *cli.App {
 		ExitErrHandler:            func(*cli.Context, error) {}, // Main alone ends the program
 		Commands: []*cli.Command{
 			r.solveCommand(),
+			r.sweepCommand(),
 			r.limitsCommand(),
 			r.tidyCommand(),
 			r.partsCommand(),

@@ -42,7 +42,10 @@ func TestArrangePutsOptionsBeforeFiles(t *testing.T) {
 func TestValuedOptions(t *testing.T) {
 	r := &runner{}
 	got := valued(r.app())
-	if d := cmp.Diff(map[string]bool{"set": true, "at": true, "near": true}, got); d != "" {
+	if d := cmp.Diff(map[string]bool{
+		"set": true, "at": true, "near": true, "within": true, "workers": true,
+		"over": true, "points": true, "log": true, "show": true,
+	}, got); d != "" {
 		t.Error(d)
 	}
 }

@@ -1,0 +1,308 @@
+package cli
+
+import (
+	"context"
+	"fmt"
+	"io"
+	"os"
+	"runtime"
+	"slices"
+	"strings"
+	"time"
+
+	"github.com/urfave/cli/v2"
+	"golang.org/x/term"
+
+	"biaswright/cmd/biaswright/internal/render"
+	"biaswright/netlist"
+	"biaswright/netlist/diag"
+	"biaswright/solve"
+	"biaswright/sweep"
+)
+
+// defaultPoints cuts a range into a hundred steps.
+const defaultPoints = 101
+
+func (r *runner) sweepCommand() *cli.Command {
+	return &cli.Command{
+		Name:      "sweep",
+		Usage:     "solve a file over ranges of its values",
+		UsageText: "biaswright sweep [options] FILE",
+		Flags: []cli.Flag{
+			&cli.StringSliceFlag{Name: "over", Usage: "`AXIS`: VCC=5V..15V, VCC=5V,9V,12V, VCC+VREF=5V..15V, LAMP.row=1..6, ambient=-20degC..60degC, load.V=0V..9V; may be repeated, the first is outermost"},
+			&cli.IntFlag{Name: "points", Usage: "`N` points for each range", Value: defaultPoints},
+			&cli.StringSliceFlag{Name: "log", Usage: "`AXIS`: step this range by equal ratios; may be repeated"},
+			&cli.StringSliceFlag{Name: "show", Usage: "`WHAT`: quantities or expressions, separated by commas; may be repeated"},
+			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			&cli.IntFlag{Name: "workers", Usage: "`N` outer steps at a time; the rows are the same", Value: runtime.NumCPU()},
+			&cli.BoolFlag{Name: "csv", Usage: "print comma-separated values", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+		},
+		Action: r.sweep,
+	}
+}
+
+// A sweepRequest is what the options of sweep ask for.
+type sweepRequest struct {
+	request
+	over, log, show []string
+	points, workers int
+	csv, json       bool
+}
+
+func (r *runner) sweep(c *cli.Context) error {
+	r.plain = c.Bool("plain")
+	base, err := r.request(c)
+	if err != nil {
+		return err
+	}
+	q := &sweepRequest{
+		request: *base, over: c.StringSlice("over"), log: c.StringSlice("log"),
+		points: c.Int("points"), workers: c.Int("workers"), csv: c.Bool("csv"), json: c.Bool("json"),
+	}
+	for _, list := range c.StringSlice("show") {
+		q.show = append(q.show, items(list)...)
+	}
+	switch {
+	case c.NArg() == 0:
+		return &usageError{"sweep needs a file", `"-" is standard input`}
+	case c.NArg() > 1:
+		return usagef("sweep takes one file, and %d are named", c.NArg())
+	case len(q.over) == 0:
+		return &usageError{"sweep needs something to sweep over", "add --over VCC=5V..15V"}
+	case q.csv && q.json:
+		return usagef("--csv and --json are two answers; choose one")
+	case q.workers < 1:
+		return usagef("--workers %d: at least one must work", q.workers)
+	}
+	return r.sweepFile(c.Args().First(), q)
+}
+
+// items splits a list at its commas, but not within brackets: parallel(a, b) is
+// one item.
+func items(list string) []string {
+	var out []string
+	depth, start := 0, 0
+	for i, c := range list {
+		switch c {
+		case '(':
+			depth++
+		case ')':
+			depth--
+		case ',':
+			if depth == 0 {
+				out = append(out, strings.TrimSpace(list[start:i]))
+				start = i + 1
+			}
+		}
+	}
+	return append(out, strings.TrimSpace(list[start:]))
+}
+
+func (r *runner) sweepFile(name string, q *sweepRequest) error {
+	a, plan, trouble := r.plan(name, q)
+	if trouble != nil {
+		if q.json {
+			return r.writeAll([]any{trouble.json()})
+		}
+		r.tell(trouble)
+		return nil
+	}
+	if !q.json {
+		r.diagnose(a.Warnings)
+	}
+	if a.Failure != nil {
+		r.raise(exitNoPoint)
+		return r.finishSweep(a, q, nil)
+	}
+	rows := r.rowPrinter(a, q)
+	progress := r.progress(plan.Points())
+	var tally render.Tally
+	err := sweep.Run(context.Background(), *plan, func(row sweep.Row) error {
+		tally.Add(row)
+		progress.step()
+		return rows.Row(row)
+	})
+	progress.erase()
+	if e, ok := sweep.IsError(err); ok {
+		return &usageError{e.Message, e.Hint}
+	}
+	if err != nil {
+		return &writeError{err}
+	}
+	switch {
+	case tally.Failed == tally.Rows:
+		r.raise(exitNoPoint)
+	case tally.Unmet > 0:
+		r.raise(exitNotMet)
+	}
+	a.Tally = tally
+	return r.finishSweep(a, q, rows)
+}
+
+// rowPrinter is what takes rows as they come.
+func (r *runner) rowPrinter(a *render.SweepAnswer, q *sweepRequest) render.RowPrinter {
+	switch {
+	case q.csv:
+		return render.NewCSV(r.out, a)
+	case q.json:
+		return render.NewSweepJSON(r.out, a)
+	default:
+		return render.NewSweepScreen(r.out, a, r.look())
+	}
+}
+
+func (r *runner) finishSweep(a *render.SweepAnswer, q *sweepRequest, rows render.RowPrinter) error {
+	if rows == nil {
+		if rows = r.rowPrinter(a, q); q.csv { // there is no row to print
+			r.complain("%s", a.Failure.Says)
+			return nil
+		}
+	}
+	if err := rows.End(); err != nil {
+		return &writeError{err}
+	}
+	return nil
+}
+
+// plan reads the file and the axes.
+func (r *runner) plan(name string, q *sweepRequest) (*render.SweepAnswer, *sweep.Plan, *trouble) {
+	shown := shownName(name)
+	refuse := func(found diag.List) (*render.SweepAnswer, *sweep.Plan, *trouble) {
+		r.raise(exitUsage)
+		return nil, nil, &trouble{file: shown, found: found}
+	}
+	text, err := r.read(name)
+	if err != nil {
+		r.raise(exitFile)
+		return nil, nil, &trouble{file: shown, err: err}
+	}
+	r.texts[shown] = text
+	c, _, warnings, wrong := r.circuits(shown, text, &q.request)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	a := &render.SweepAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
+	p := &sweep.Plan{Workers: q.workers}
+	if res, err := solve.Solve(c, solve.Options{}); err == nil {
+		p.Nominal = res.Point // what a hold is judged against
+	} else if sweepsLoad(q.over) {
+		a.Failure = failure(err)
+		return a, p, nil
+	}
+	if sweepsLoad(q.over) {
+		if len(c.Load) == 0 {
+			return refuse(diag.List{{Code: "no-load", Span: diag.Span{File: shown}, Message: "there is no load whose voltage could be swept", Hint: "add: load LAMP"}})
+		}
+		c = c.HoldLoad(p.Nominal.LoadV)
+		a.Circuit = c
+	}
+	p.Circuit = c
+	if wrong := r.axes(p, q); wrong != nil {
+		return refuse(diag.List{*wrong})
+	}
+	a.Axes = p.Axes
+	for _, text := range shownQuantities(c, q.show) {
+		e, list := c.ParseExpr(text)
+		if list.HasErrors() {
+			return refuse(diag.List{{Code: list[0].Code, Message: fmt.Sprintf("--show %s: %s", text, list[0].Message), Hint: list[0].Hint}})
+		}
+		p.Show = append(p.Show, text)
+		a.Show = append(a.Show, e)
+	}
+	return a, p, nil
+}
+
+func sweepsLoad(over []string) bool {
+	return slices.ContainsFunc(over, func(s string) bool {
+		name, _, _ := strings.Cut(s, "=")
+		return strings.TrimSpace(name) == netlist.LoadName
+	})
+}
+
+// axes reads the axes; every --log must name one of them.
+func (r *runner) axes(p *sweep.Plan, q *sweepRequest) *diag.Diagnostic {
+	logs := map[string]bool{}
+	for _, name := range q.log {
+		logs[strings.TrimSpace(name)] = false
+	}
+	var names []string
+	for _, text := range q.over {
+		name, _, _ := strings.Cut(text, "=")
+		name = strings.TrimSpace(name)
+		names = append(names, name)
+		_, logarithmic := logs[name]
+		if logarithmic {
+			logs[name] = true
+		}
+		axis, err := sweep.ParseAxis(p.Circuit, text, q.points, logarithmic)
+		if err != nil {
+			e, _ := sweep.IsError(err)
+			return &diag.Diagnostic{Code: "axis", Message: "--over " + text + ": " + e.Message, Hint: e.Hint}
+		}
+		p.Axes = append(p.Axes, axis)
+	}
+	for _, name := range q.log {
+		if name = strings.TrimSpace(name); !logs[name] {
+			return &diag.Diagnostic{Code: "axis", Message: "--log " + name + ": nothing is swept over that", Hint: diag.DidYouMean(name, names)}
+		}
+	}
+	const most = 100_000_000 // rows; a day's work, and surely a slip
+	if n := p.Points(); n > most {
+		return &diag.Diagnostic{Code: "axis", Message: fmt.Sprintf("%d rows are too many", n)}
+	}
+	return nil
+}
+
+// shownQuantities is what --show asks for, otherwise what is held, the first
+// target, the load's current, or every rail's.
+func shownQuantities(c *netlist.Circuit, asked []string) []string {
+	if len(asked) > 0 {
+		return asked
+	}
+	if q, _, _ := solve.HoldOf(c); q != nil {
+		return []string{q.Text}
+	}
+	if len(c.Load) > 0 {
+		return []string{"load.I"}
+	}
+	var out []string
+	for i := range c.Rails {
+		out = append(out, c.Rails[i].Name+".I")
+	}
+	return out
+}
+
+// A progress tells a long run's state on a terminal, and erases itself.
+type progress struct {
+	w          io.Writer // nil where there is nobody to tell
+	done, rows int
+	last       time.Time
+	told       bool
+}
+
+func (r *runner) progress(rows int) *progress {
+	p := &progress{rows: rows, last: time.Now()}
+	if f, ok := r.err.(*os.File); ok && term.IsTerminal(int(f.Fd())) {
+		p.w = f
+	}
+	return p
+}
+
+func (p *progress) step() {
+	p.done++
+	const interval = 200 * time.Millisecond // quick enough to be read as movement
+	const seldom = 64                       // rows between looks at the clock
+	if p.w == nil || p.done%seldom != 0 || time.Since(p.last) < interval {
+		return
+	}
+	p.last, p.told = time.Now(), true
+	fmt.Fprintf(p.w, "\r%d of %d points", p.done, p.rows)
+}
+
+func (p *progress) erase() {
+	if p.told {
+		fmt.Fprint(p.w, "\r\x1b[K") // ECMA-48: erase to the end of the line
+	}
+}
