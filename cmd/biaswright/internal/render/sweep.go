@@ -56,16 +56,16 @@ type RowPrinter interface {
 	End() error
 }
 
-// A CSV prints rows as comma-separated values, each chunk in one write that ends
-// with a row.
+// A CSV prints rows as comma-separated values. Each write holds whole rows, so that
+// a run which is interrupted leaves no part of one.
 type CSV struct {
 	w   io.Writer
 	buf []byte
 }
 
-// csvChunk is how many bytes are gathered before they are written: few system
-// calls, and soon seen.
-const csvChunk = 1 << 15
+// csvChunk is how many bytes are gathered before they are written: what a pipe
+// takes at a stroke or not at all (PIPE_BUF on Linux; POSIX asks for less).
+const csvChunk = 4096
 
 // NewCSV begins with the header.
 func NewCSV(w io.Writer, a *SweepAnswer) *CSV {
@@ -102,6 +102,7 @@ func columnName(name string, unit quantity.Unit) string {
 
 // Row adds a row.
 func (c *CSV) Row(row sweep.Row) error {
+	start := len(c.buf)
 	for _, v := range row.At {
 		c.buf = append(strconv.AppendFloat(c.buf, v, 'g', -1, 64), ',')
 	}
@@ -109,10 +110,17 @@ func (c *CSV) Row(row sweep.Row) error {
 		c.buf = append(strconv.AppendFloat(c.buf, v, 'g', -1, 64), ',')
 	}
 	c.buf = append(append(c.buf, row.Status...), '\n')
-	if len(c.buf) < csvChunk {
+	if len(c.buf) <= csvChunk {
 		return nil
 	}
-	return c.End()
+	if start == 0 { // a row longer than a chunk
+		return c.End()
+	}
+	if _, err := c.w.Write(c.buf[:start]); err != nil {
+		return err
+	}
+	c.buf = append(c.buf[:0], c.buf[start:]...)
+	return nil
 }
 
 // End writes what is left.
