@@ -245,7 +245,11 @@ func (r *runner) follow(c *netlist.Circuit, inner *Axis) bool {
 				if r.s.LastSign() < 0 {
 					status = Unstable
 				}
-				r.refresh(x)
+				if r.state == nil {
+					r.state = r.s.StateAt(x)
+				} else {
+					r.state.Polished(x)
+				}
 				if r.state.EarlyBroken() == "" {
 					r.past.add(v, x)
 					r.keep(inner, v, status)

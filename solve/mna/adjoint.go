@@ -61,6 +61,7 @@ func (st *State) Sensitivity(q *netlist.Expr) (value float64, d []float64, err e
 // adjoint solves J^T L = dQ/dx; the entry behind the last, for known rows, is 0.
 func (st *State) adjoint(seed *Seed) ([]float64, error) {
 	s := st.s
+	st.fill()
 	// Weights on ideal branches are weights on the currents of the nodes behind.
 	s.forest.spread(seed.branch)
 	for i := range s.devices {

@@ -21,6 +21,9 @@ type State struct {
 	// branch[node] is the current through the ideal branch that leads to node,
 	// from its parent, in A; leaving[node] what leaves the node into devices.
 	branch []float64
+	// live tells that I and branch are still to be read from the system, which
+	// stands at this state: a sweep shows few of them.
+	live bool
 	// Twofold asks the adjoint to solve in twofold numbers.
 	Twofold bool
 }
@@ -29,18 +32,63 @@ type State struct {
 func (s *System) StateAt(x []float64) *State {
 	st := &State{s: s, V: make([]float64, s.nodes), I: make([][3]float64, len(s.devices)), branch: make([]float64, s.nodes)}
 	st.Refresh(x)
+	st.fill()
 	return st
 }
 
 // Refresh evaluates the state's system anew, at x and with the numbers in force,
-// without allocating.
+// without allocating. The state then leans on its system, and holds until that is
+// moved on.
 func (st *State) Refresh(x []float64) {
+	st.s.currents(x)
+	st.read()
+}
+
+// Polished takes over what newton.Solve ended with: x lies one last step, below its
+// StepLimit, from the last evaluation. It holds as Refresh's does. Currents are carried along that step by their
+// derivatives; what that leaves out is the square of the step over V_T, far below
+// rounding.
+func (st *State) Polished(x []float64) {
 	s := st.s
-	s.currents(x)
+	s.place(x)
+	v := s.v
+	for i := range s.resistors {
+		r := &s.resistors[i]
+		r.i = r.g * (v[r.a] - v[r.b])
+	}
+	for i := range s.junctions {
+		j := &s.junctions[i]
+		u := (v[j.a] - v[j.k]) * j.share
+		j.i += j.g / j.share * (u - j.u)
+		j.u = u
+	}
+	for i := range s.bipolars {
+		b := &s.bipolars[i]
+		de := b.sign*(v[b.b]-v[b.e]) - b.ube
+		dc := b.sign*(v[b.b]-v[b.c]) - b.ubc
+		b.pt.Ic += b.pt.IcVbe*de + b.pt.IcVbc*dc
+		b.pt.Ib += b.pt.IbVbe*de + b.pt.IbVbc*dc
+		b.ube, b.ubc = b.ube+de, b.ubc+dc
+	}
+	st.read()
+}
+
+// read takes the voltages of the last evaluation.
+func (st *State) read() {
+	s := st.s
 	copy(st.V, s.v)
 	for _, b := range s.between {
 		st.V[b.node] = (1-b.share)*st.V[b.from] + b.share*st.V[b.to]
 	}
+	st.live = true
+}
+
+// fill takes the currents too, so that the state stands by itself.
+func (st *State) fill() {
+	if !st.live {
+		return
+	}
+	s := st.s
 	clear(st.branch)
 	for i := range s.devices {
 		d := &s.devices[i]
@@ -50,6 +98,7 @@ func (st *State) Refresh(x []float64) {
 		}
 	}
 	s.forest.behind(st.branch)
+	st.live = false
 }
 
 // terminalCurrents are the currents into a device's terminals at the last
@@ -148,6 +197,7 @@ func byType(symbol string, v, i func(float64) float64, sign, weight float64) (fl
 // branchCurrent is the current of an ideal branch along its element's arrow, times
 // sign.
 func (st *State) branchCurrent(at int32, sign float64, seed *Seed, weight float64) float64 {
+	st.fill()
 	b := &st.s.forest.branches[at]
 	if !b.forward {
 		sign = -sign
@@ -226,6 +276,9 @@ func (s *System) carrier(element, member int) int {
 func (st *State) terminal(dev, terminal int, sign float64, seed *Seed, weight float64) float64 {
 	if seed != nil {
 		seed.i[dev][terminal] += sign * weight
+	}
+	if st.live {
+		return sign * st.s.terminalCurrents(&st.s.devices[dev])[terminal]
 	}
 	return sign * st.I[dev][terminal]
 }

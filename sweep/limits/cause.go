@@ -28,7 +28,7 @@ type Cause struct {
 type PartState struct {
 	Name string
 	// State is "saturated", "off", "reverse", or "starved" for a junction whose
-	// current has fallen to less than a tenth.
+	// current has fallen to less than a quarter.
 	State string
 	// PNP tells that Volts is V_EC.
 	PNP bool
@@ -38,9 +38,10 @@ type PartState struct {
 	out                  float64 // how far out: 1 at the region's edge
 }
 
-// starving is the share of its nominal current below which a junction that sets a
-// voltage no longer does so: a decade is 60 mV or more of its drop.
-const starving = 0.1
+// starving is the share of its nominal current below which a junction no longer
+// sets its voltage: it has lost n V_T ln 4, 36 mV at the least, twice that for the
+// usual reference diode.
+const starving = 0.25
 
 // explain compares the circuit at the limit with the nominal one.
 func (a *Answer) explain(ax *axis, side Side) Cause {

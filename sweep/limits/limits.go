@@ -58,8 +58,8 @@ type Limit struct {
 	Nominal float64
 	Low     Side // algebraically
 	High    Side
-	// Headroom is how far the axis may still fall towards 0 from nominal, NaN
-	// where it may fall all the way or for the ambient.
+	// Headroom is how far a supply may still fall towards 0 from nominal, and the
+	// load's voltage rise; NaN where it may go all the way, and for the ambient.
 	Headroom float64
 }
 
@@ -243,12 +243,12 @@ func (a *Answer) limit(ax *axis) (Limit, error) {
 	if l.High, err = a.side(ax, +1); err != nil {
 		return l, err
 	}
-	towards := l.Low
-	if l.Nominal < 0 {
-		towards = l.High
+	worse := l.Low // a supply runs short, a load takes more
+	if l.Nominal < 0 || ax.name == netlist.LoadName {
+		worse = l.High
 	}
-	if ax.name != "ambient" && towards.Reason != End {
-		l.Headroom = math.Abs(l.Nominal - towards.At)
+	if ax.name != "ambient" && worse.Reason != End {
+		l.Headroom = math.Abs(l.Nominal - worse.At)
 	}
 	return l, nil
 }

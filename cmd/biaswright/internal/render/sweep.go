@@ -330,8 +330,7 @@ func (o *sweepObject) Row(r sweep.Row) error {
 }
 
 func (o *sweepObject) End() error {
-	t := o.a.Tally
-	o.j.Counts = tallyJSON{t.Rows, t.Failed, t.Unstable, t.Inside, t.Unmet}
+	o.j.Counts = tallyJSON(o.a.Tally)
 	if o.a.Failure != nil {
 		o.j.Points, o.j.Failure = &[]pointJSON{}, failure(o.a.Failure)
 	}
