@@ -62,7 +62,7 @@ func TestGrammar(t *testing.T) {
 
 // settles checks that printing a tree gives a text that parses to the same tree
 // and prints the same.
-func settles(t testing.TB, f *File) {
+func settles(t checker, f *File) {
 	t.Helper()
 	once := Print(f)
 	again, list := Parse("printed", once)
@@ -75,4 +75,10 @@ func settles(t testing.TB, f *File) {
 	if diff := same(f, again); diff != "" {
 		t.Fatalf("the canonical text means something else:\n%s\n%s", once, diff)
 	}
+}
+
+// A checker is a testing.TB or a *rapid.T.
+type checker interface {
+	Helper()
+	Fatalf(format string, args ...any)
 }
