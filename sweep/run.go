@@ -55,6 +55,9 @@ func (p *Plan) Points() int {
 // few enough to end soon.
 const chunk = 256
 
+// ahead is how many chunks a run may be ahead of the reader.
+const ahead = 8
+
 // Run solves every point and hands the rows to emit in input order, from the
 // calling goroutine; rows are not modified afterwards. It ends early with emit's
 // error, or with ctx's. A point that fails is a row, not an error; the error is an
@@ -83,7 +86,7 @@ func Run(ctx context.Context, p Plan, emit func(Row) error) error {
 			case <-ctx.Done():
 				return
 			}
-			line := make(chan []Row, 1)
+			line := make(chan []Row, ahead)
 			select {
 			case lines <- line:
 			case <-ctx.Done():
@@ -237,7 +240,7 @@ func (r *runner) follow(c *netlist.Circuit, inner *Axis) bool {
 		}
 		put(v)
 		if r.past.predict(v, x) {
-			r.s.From(x)
+			r.s.Continue()
 			// A predictor that needs more than a few steps has lost its branch.
 			const few = 12
 			if n := newton.Solve(r.s, x, &r.work, newton.Options{MaxSteps: few}); n.Outcome == newton.Converged {

@@ -97,6 +97,11 @@ func (s *System) From(x []float64) {
 	}
 }
 
+// Continue makes the next Linearise guard its junctions against where the last
+// evaluation left them: for a start next to the last solution, which From would
+// only confirm.
+func (s *System) Continue() { s.fresh, s.near = false, false }
+
 // place computes the node voltages from the unknowns.
 func (s *System) place(x []float64) {
 	known := s.x
@@ -334,7 +339,9 @@ func (s *System) tolerances() {
 		tol[i], top[i] = 0, 0
 	}
 	add := func(row int32, current, rounding float64) {
-		top[row] = math.Max(top[row], math.Abs(current))
+		if a := math.Abs(current); a > top[row] {
+			top[row] = a
+		}
 		tol[row] += rounding
 	}
 	for i := range s.resistors {
