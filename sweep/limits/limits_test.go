@@ -413,3 +413,52 @@ func BenchmarkLimits(b *testing.B) {
 		})
 	}
 }
+
+// Between the limits the circuit holds, and a little beyond each it does not: each
+// point by a solution of its own.
+func TestHoldsBetweenTheLimits(t *testing.T) {
+	for _, name := range []string{"mast-lamp.bias", "pressure-source.bias", "sensor-bank.bias"} {
+		c := read(t, shipped(t, name))
+		a, err := limits.Find(c, limits.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		holds := func(axis string, v float64) bool {
+			circuit, setting := c, netlist.Setting{Name: strings.TrimSuffix(axis, ".V"), Value: fmt.Sprintf("%.17g", v)}
+			if axis == netlist.LoadName {
+				circuit, setting.Name = c.HoldLoad(a.Nominal.LoadV), axis
+			}
+			moved, list := circuit.With(setting)
+			if list.HasErrors() {
+				t.Fatal(list[0].Message)
+			}
+			r, err := solve.Solve(moved, solve.Options{})
+			if err != nil {
+				return false
+			}
+			q, list := moved.ParseExpr(a.Hold.Q.Text)
+			if list.HasErrors() {
+				t.Fatal(list[0].Message)
+			}
+			got, ok := q.Eval(r.Point)
+			slack := 1e-9 * math.Abs(a.Hold.Nominal)
+			return ok && got >= a.Hold.Low-slack && got <= a.Hold.High+slack
+		}
+		for _, l := range a.Limits {
+			ends := [2]float64{l.Low.SearchedTo, l.High.SearchedTo}
+			const steps = 60
+			for i := 0; i <= steps; i++ {
+				if v := ends[0] + (ends[1]-ends[0])*float64(i)/steps; !holds(l.Axis, v) {
+					t.Errorf("%s: %s does not hold at %g, between %g and %g", name, l.Axis, v, ends[0], ends[1])
+				}
+			}
+			const beyond = 1e-4 // of the range
+			for i, side := range []limits.Side{l.Low, l.High} {
+				past := ends[i] + beyond*(ends[i]-ends[1-i])
+				if side.Reason == limits.Band && holds(l.Axis, past) {
+					t.Errorf("%s: %s still holds at %g, beyond its limit %g", name, l.Axis, past, side.At)
+				}
+			}
+		}
+	}
+}
