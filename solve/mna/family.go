@@ -1,7 +1,5 @@
 package mna
 
-import "biaswright/netlist"
-
 // A Family is the balances of a circuit as a function of one more number:
 // F(x, lambda) = 0, which package follow follows. Lambda is a factor of the ramp,
 // with 1 the real circuit, or the number of one or several slots.
@@ -198,6 +196,3 @@ func (f *Family) SolveT(b []float64) bool {
 
 // DetSign is the sign of the Jacobian's determinant of the last Linearise.
 func (f *Family) DetSign() int { return f.s.active.DetSign() }
-
-// Moves lists the slots a family's tuner moves, for messages.
-func (t *Tuner) Moves() []netlist.SlotID { return t.slots }

@@ -228,6 +228,13 @@ path c2 -> RB1 10k -> b1
 	}
 }
 
+func TestParametersThatMakeNoModel(t *testing.T) {
+	c := read(t, "rail V = 5 V\npart d led drop = 0.4 V at 100 mA, Rbulk = 5 ohm\npath V -> R1 1k -> a -> D1 d -> gnd\n")
+	if _, err := mna.New(c); err == nil || !strings.Contains(err.Error(), "D1 d: Rbulk takes all of the stated drop") {
+		t.Errorf("error %v", err)
+	}
+}
+
 func TestLabels(t *testing.T) {
 	s, err := mna.New(read(t, "rail V = 5 V\npart d led Rbulk = 5 ohm\npath V -> R1 1k -> top -> D1 d row=2 -> gnd\n"))
 	if err != nil {

@@ -168,8 +168,9 @@ type bipolar struct {
 	reach               float64 // the lower of cornerC and just below va: no guard below
 }
 
-// New compiles a circuit. It fails on a resistance still open (? E24) and on
-// circuits with more balances than an int32 can number.
+// New compiles a circuit. It fails on a resistance still open (? E24), on parameters
+// that make no model together, and on circuits with more balances than an int32 can
+// number.
 func New(c *netlist.Circuit) (*System, error) {
 	for i := range c.Elements {
 		if e := &c.Elements[i]; e.Kind == netlist.Open {
@@ -186,7 +187,26 @@ func New(c *netlist.Circuit) (*System, error) {
 	s.factors = st.plan.NewFactors()
 	s.Release()
 	s.Apply(c.Values())
+	for i := range s.devices {
+		if err := s.check(&s.devices[i]); err != nil {
+			return nil, err
+		}
+	}
 	return s, nil
+}
+
+// check tells where a device's parameters make no model together, such as a bulk
+// resistance that takes more than the stated drop.
+func (s *System) check(d *device) error {
+	if d.kind != junctionDevice && d.kind != bipolarDevice {
+		return nil
+	}
+	e := &s.circuit.Elements[d.element]
+	kelvin := s.values[s.circuit.Ambient] + zeroCelsius
+	if err := devices.Check(s.kind(e), s.params(e), kelvin); err != nil {
+		return fmt.Errorf("%s %s: %w", e.Name, s.circuit.Parts[e.Part].Name, err)
+	}
+	return nil
 }
 
 // Clone returns a system that shares the structure and nothing else.

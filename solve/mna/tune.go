@@ -117,8 +117,8 @@ func (s *System) depends(d *device, moved []bool) bool {
 
 // Set puts the slots' new numbers in force, in the order given to NewTuner. It
 // reports false, with the system unchanged in structure, where a number does not
-// fit the structure: a resistance that is no longer positive, or a model without
-// finite coefficients. Junctions keep their iteration state.
+// fit the structure: a resistance that is no longer positive, or parameters that make
+// no model together. Junctions keep their iteration state.
 func (t *Tuner) Set(numbers ...float64) bool {
 	s := t.s
 	s.near = false
@@ -151,6 +151,9 @@ func (t *Tuner) Set(numbers ...float64) bool {
 		d := &s.devices[i]
 		s.kelvin[i] = kelvin
 		s.setDevice(d, kelvin, t.scale)
+		if s.check(d) != nil {
+			return false
+		}
 		if d.kind <= bulkDevice {
 			if g := s.resistors[d.at].g; !(g > 0) || math.IsInf(g, 0) {
 				return false
@@ -161,13 +164,4 @@ func (t *Tuner) Set(numbers ...float64) bool {
 		s.setBase()
 	}
 	return true
-}
-
-// Numbers are the moved slots' numbers in force.
-func (t *Tuner) Numbers() []float64 {
-	out := make([]float64, len(t.slots))
-	for i, id := range t.slots {
-		out[i] = t.s.values[id]
-	}
-	return out
 }
