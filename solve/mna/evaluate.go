@@ -323,9 +323,51 @@ const (
 
 // Balanced reports whether every balance of the last Linearise holds.
 func (s *System) Balanced() bool {
+	if s.balancedByShare() {
+		return true
+	}
 	s.tolerances()
 	for i, f := range s.f[:s.n] {
 		if !(math.Abs(f) <= s.tol[i]) {
+			return false
+		}
+	}
+	return true
+}
+
+// balancedByShare is the first part of the rule alone, which is quick to compute
+// and mostly suffices.
+func (s *System) balancedByShare() bool {
+	top := s.top
+	clear(top)
+	larger := func(row int32, current float64) {
+		if a := math.Abs(current); a > top[row] {
+			top[row] = a
+		}
+	}
+	for i := range s.resistors {
+		r := &s.resistors[i]
+		larger(r.ra, r.i)
+		larger(r.rb, r.i)
+	}
+	for i := range s.sources {
+		c := &s.sources[i]
+		larger(c.ra, c.i)
+		larger(c.rb, c.i)
+	}
+	for i := range s.junctions {
+		j := &s.junctions[i]
+		larger(j.ra, j.i)
+		larger(j.rk, j.i)
+	}
+	for i := range s.bipolars {
+		b := &s.bipolars[i]
+		larger(b.rc, b.pt.Ic)
+		larger(b.rb, b.pt.Ib)
+		larger(b.re, b.pt.Ic+b.pt.Ib)
+	}
+	for i, f := range s.f[:s.n] {
+		if !(math.Abs(f) <= balanceShare*top[i]) {
 			return false
 		}
 	}
