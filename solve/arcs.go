@@ -26,7 +26,8 @@ func (l *ladder) gainArc() (int, string) {
 	l.s.Restart()
 	r := l.iterate(x, newton.Options{})
 	if r.Outcome != newton.Converged {
-		steps, ended := l.shunts(apart, l.start(x))
+		clear(x)
+		steps, ended := l.shunts(apart, x)
 		r.Steps += steps
 		if ended == "" {
 			again := l.iterate(x, newton.Options{})

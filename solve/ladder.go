@@ -238,12 +238,6 @@ func (l *ladder) blame(x []float64) {
 
 func (l *ladder) zero() []float64 { return make([]float64, l.s.Size()) }
 
-// start clears x and returns it.
-func (l *ladder) start(x []float64) []float64 {
-	clear(x)
-	return x
-}
-
 // direct is a Newton iteration with every junction started where it conducts.
 func (l *ladder) direct() (int, string) {
 	l.s.Restart()
@@ -309,7 +303,7 @@ func (l *ladder) shunts(ramp mna.Ramp, x []float64) (steps int, ended string) {
 		least       = 1.1 // a factor below it leads nowhere
 		most        = 1e8 // some twenty steps, by a thermal voltage each
 	)
-	defer l.s.SetRamp(ramp)
+	defer l.s.SetRamp(ramp) // as it was given
 	trial := l.zero()
 	l.s.Restart()
 	good, factor := math.Inf(1), 10.0
@@ -327,11 +321,9 @@ func (l *ladder) shunts(ramp mna.Ramp, x []float64) (steps int, ended string) {
 			copy(x, trial)
 			good, factor = next, math.Min(factor*factor, most)
 			if good < last {
-				ramp.Shunt = 0
 				return steps, ""
 			}
 		case math.IsInf(good, 1):
-			ramp.Shunt = 0
 			return steps, "at the first shunt it " + r.Outcome.String()
 		default:
 			if factor = math.Sqrt(factor); factor >= least {
