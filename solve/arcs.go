@@ -15,6 +15,9 @@ const (
 	sourceHigh, sourceLow = 2, -2
 	gainHigh, gainLow     = 1.2, -1
 	arcSteps              = 3000 // a few dozen junctions need some hundred
+	// Once some point is known, an arc only looks for one that meets more: it may
+	// then cost about a second on a large circuit, by unknowns times steps.
+	arcWork, arcLeast = 300_000, 200
 )
 
 // gainArc follows the circuit from gains of zero, where it has one point, to its
@@ -50,10 +53,18 @@ func (l *ladder) supplyArc() (int, string) {
 	return l.arc(l.s.Sources(), l.zero(), sourceLow, sourceHigh, 0)
 }
 
+// arcBudget is how many steps an arc may take.
+func (l *ladder) arcBudget() int {
+	if len(l.found) == 0 {
+		return arcSteps
+	}
+	return min(arcSteps, max(arcLeast, arcWork/max(1, l.s.Size())))
+}
+
 func (l *ladder) arc(f *mna.Family, x []float64, low, high float64, before int) (steps int, ended string) {
 	w := follow.Follow(f, x, 0, follow.Options{
 		Mode: follow.ArcLength, Target: 1, Use: follow.EveryPassage,
-		Low: low, High: high, MaxSteps: arcSteps,
+		Low: low, High: high, MaxSteps: l.arcBudget(),
 	})
 	steps = before + w.Stats.Corrections
 	l.tracef("  the walk %s at %.4g: %d steps, %d folds, %d passages", w.Outcome, w.Lambda, w.Stats.Steps, len(w.Folds), len(w.Targets))
