@@ -35,6 +35,7 @@ func (b *builder) structure() (*structure, error) {
 	b.st.first = append(b.st.first, int32(len(b.st.devices)))
 	forest, root := grow(b.st.nodes, b.ideals, len(b.c.Rails), len(b.c.Elements))
 	b.st.forest = forest
+	b.st.listBehind()
 	b.number(root)
 	plan, err := sparse.Analyse(b.st.n, b.st.entries())
 	if err != nil {
@@ -172,6 +173,29 @@ func (b *builder) number(root []int32) {
 	for node := range st.row {
 		if st.row[node] < 0 {
 			st.row[node] = int32(st.n)
+		}
+	}
+}
+
+// listBehind lists, for each rail, the device terminals on its node and on the nodes
+// behind it: their currents are what it delivers.
+func (st *structure) listBehind() {
+	owner := make([]int32, st.nodes) // 1 + the rail whose branch leads to the node
+	for rail, at := range st.forest.byRail {
+		owner[st.forest.branches[at].child] = int32(rail) + 1
+	}
+	for _, b := range st.forest.branches { // a parent comes before its child
+		if owner[b.child] == 0 {
+			owner[b.child] = owner[b.parent]
+		}
+	}
+	st.behind = make([][]terminal, len(st.forest.byRail))
+	for i := range st.devices {
+		d := &st.devices[i]
+		for j := 0; j < d.terminals(); j++ {
+			if rail := owner[d.node[j]]; rail > 0 {
+				st.behind[rail-1] = append(st.behind[rail-1], terminal{int32(i), int32(j)})
+			}
 		}
 	}
 }

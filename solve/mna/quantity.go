@@ -178,7 +178,19 @@ func (st *State) rail(r netlist.Ref, seed *Seed, weight float64) (float64, bool)
 	node := int32(st.s.circuit.Rails[r.Index].Node)
 	v := func(w float64) float64 { return st.voltage(node, 0, seed, w) }
 	i := func(w float64) float64 { return st.branchCurrent(st.s.forest.byRail[r.Index], 1, seed, w) }
+	if st.live && seed == nil {
+		i = func(float64) float64 { return st.delivered(r.Index) }
+	}
 	return byType(r.Symbol, v, i, 1, weight)
+}
+
+// delivered adds up a rail's current from the system's last evaluation.
+func (st *State) delivered(rail int) float64 {
+	sum := 0.0
+	for _, t := range st.s.behind[rail] {
+		sum += st.s.terminalCurrents(&st.s.devices[t.device])[t.at]
+	}
+	return sum
 }
 
 // byType evaluates V, I or P = sign·V·I.

@@ -60,6 +60,7 @@ type structure struct {
 	between  []between
 	row      []int32 // local node -> unknown, or n for a known node
 	forest   forest
+	behind   [][]terminal // by rail: the device terminals behind it
 	devices  []device
 	first    []int32 // element -> its first device; len(elements)+1
 	plan     *sparse.Plan
@@ -91,6 +92,9 @@ type device struct {
 	node    [3]int32
 	at      int32 // index into the kind's own list
 }
+
+// A terminal is one of a device.
+type terminal struct{ device, at int32 }
 
 type deviceKind uint8
 
