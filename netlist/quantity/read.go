@@ -99,8 +99,10 @@ func Parse(text string) (Reading, error) {
 	r, err := Scan(body)
 	if errors.Is(err, ErrName) {
 		if r, ok := ScanCode(body); ok {
-			r.Length = len(text)
-			return r, nil
+			return r.signed(negative, len(text)), nil
+		}
+		if body == "" {
+			return r, &Error{Code: "bad-number", Message: "there is no number", Length: len(text)}
 		}
 		return r, &Error{Code: "bad-number", Message: fmt.Sprintf("%s is not a number with a unit", clip(text)), Hint: likely(body), Length: len(text)}
 	}
@@ -116,11 +118,16 @@ func Parse(text string) (Reading, error) {
 		}
 		return r, e
 	}
+	return r.signed(negative, len(text)), nil
+}
+
+// signed is the reading of a whole text of that length, with its sign.
+func (r Reading) signed(negative bool, length int) Reading {
 	if negative {
 		r.Value = -r.Value
 	}
-	r.Length = len(text)
-	return r, nil
+	r.Length = length
+	return r
 }
 
 // Reads tells whether a word reads as a quantity wherever it stands: 5V, 4k7,
@@ -309,11 +316,9 @@ func scale(digits string, ten int) (float64, error) {
 	mantissa, exponent := digits, 0
 	if i := strings.IndexAny(digits, "eE"); i >= 0 {
 		mantissa = digits[:i]
-		var err error
 		// Atoi saturates, and adding a prefix to the largest int would wrap.
-		if exponent, err = strconv.Atoi(digits[i+1:]); err != nil {
-			exponent = max(min(exponent, math.MaxInt32), math.MinInt32)
-		}
+		exponent, _ = strconv.Atoi(digits[i+1:])
+		exponent = max(min(exponent, math.MaxInt32), math.MinInt32)
 	}
 	exponent += ten
 	if exponent != 0 {

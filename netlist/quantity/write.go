@@ -136,6 +136,9 @@ func (d decimalNumber) shift(ten int) string {
 // space before the unit, for people: "1.8 kΩ", "-40 °C". Zeros at the end
 // are left out.
 func Format(q Quantity, digits int) string {
+	if math.IsInf(q.Value, 0) || math.IsNaN(q.Value) {
+		return Exact(q) // words, in which a u is a u
+	}
 	return strings.NewReplacer("ohm", "Ω", "degC", "°C", "u", "µ").Replace(FormatASCII(q, digits))
 }
 
