@@ -44,7 +44,10 @@ func TestText(t *testing.T) {
 		{"behind a wide letter", "# 漢 x\n", 5, 6, false, "  # 漢 x\n       ^\n"},
 		{"behind an ohm sign", "R1 68 Ω x\n", 9, 10, true, "  R1 68 ? x\n          ^\n"},
 		{"at the end of the line", "path a ->\n", 10, 10, false, "  path a ->\n           ^\n"},
-		{"a control character", "a \x1b[31m b\n", 9, 10, false, ""},
+		{"a control character", "a \x1b[31m b\n", 9, 10, false, "  a ?[31m b\n          ^\n"},
+		{"behind a combining accent", "# e\u0301 x\n", 6, 7, false, "  # e\u0301 x\n      ^\n"},
+		{"behind a byte order mark", "\uFEFFR1 x\n", 5, 6, false, "  R1 x\n     ^\n"},
+		{"a line that ends in CR LF", "R1 x\r\n", 4, 5, false, "  R1 x\n     ^\n"},
 	} {
 		t.Run(test.name, func(t *testing.T) {
 			p := &diag.Printer{Source: func(string) []byte { return []byte(test.source) }, Plain: test.plain}
@@ -56,7 +59,7 @@ func TestText(t *testing.T) {
 			if strings.ContainsRune(got, '\x1b') {
 				t.Errorf("%q: a control character reaches the terminal", got)
 			}
-			if body := strings.TrimPrefix(got, head); test.want != "" && body != test.want {
+			if body := strings.TrimPrefix(got, head); body != test.want {
 				t.Errorf("got\n%swant\n%s", body, test.want)
 			}
 		})

@@ -65,14 +65,34 @@ func (p *Printer) one(b *strings.Builder, d *Diagnostic) {
 	if d.Severity == Warning {
 		colour = colourWarning
 	}
-	fmt.Fprintf(b, "%s %s %s\n", place(d.Span), p.paint(colour, d.Severity.String()+":"), d.Message)
+	fmt.Fprintf(b, "%s %s %s\n", place(d.Span), p.paint(colour, d.Severity.String()+":"), printable(d.Message))
 	p.excerpt(b, d.Span, colour)
 	if d.Hint != "" {
-		fmt.Fprintf(b, "%shint: %s\n", indent, d.Hint)
+		fmt.Fprintf(b, "%shint: %s\n", indent, printable(d.Hint))
 	}
 	for _, r := range d.Related {
-		fmt.Fprintf(b, "%s%s %s\n", indent, place(r.Span), r.Message)
+		fmt.Fprintf(b, "%s%s %s\n", indent, place(r.Span), printable(r.Message))
 	}
+}
+
+// printable is a text as one line that a terminal only shows: messages quote
+// texts and file names, and those may hold anything.
+func printable(text string) string {
+	return strings.Map(func(r rune) rune {
+		switch {
+		case unicode.IsSpace(r):
+			return ' '
+		case obeyed(r):
+			return '?'
+		}
+		return r
+	}, text)
+}
+
+// obeyed tells the characters that do more than show themselves, and the bytes
+// that are none.
+func obeyed(r rune) bool {
+	return r == utf8.RuneError || !unicode.IsPrint(r) && !unicode.IsMark(r)
 }
 
 func (p *Printer) paint(colour, text string) string {
@@ -86,9 +106,9 @@ func (p *Printer) paint(colour, text string) string {
 func place(s Span) string {
 	switch {
 	case s.Start.Line > 0:
-		return fmt.Sprintf("%s:%d:%d:", s.File, s.Start.Line, s.Start.Column)
+		return fmt.Sprintf("%s:%d:%d:", printable(s.File), s.Start.Line, s.Start.Column)
 	case s.File != "":
-		return s.File + ":"
+		return printable(s.File) + ":"
 	}
 	return "biaswright:"
 }
@@ -181,7 +201,7 @@ func (p *Printer) clean(piece []byte, column int) string {
 			b.WriteString("        "[:spaces])
 		case r == '\uFEFF' || r == '\r':
 			// a byte order mark, or the first half of a line's end
-		case r == utf8.RuneError || !unicode.IsPrint(r) && !unicode.IsMark(r) || p.Plain && r >= utf8.RuneSelf:
+		case obeyed(r) || p.Plain && r >= utf8.RuneSelf:
 			b.WriteByte('?')
 		default:
 			b.WriteRune(r)
