@@ -53,6 +53,11 @@ func TestGrammar(t *testing.T) {
 	if len(seen) < 30 { // the grammar has 35 productions: the pattern still fits
 		t.Fatalf("found only %d productions", len(seen))
 	}
+	for name := range frames {
+		if _, ok := seen[name]; !ok {
+			t.Errorf("there is a frame for %s, which is no production", name)
+		}
+	}
 	for name, n := range seen {
 		if n == 0 {
 			t.Errorf("%s has no example", name)

@@ -102,7 +102,7 @@ func TestElements(t *testing.T) {
 }
 
 func TestSpansCountCodePoints(t *testing.T) {
-	f := parse(t, "\uFEFFpath Ω1\n"[:0]+"title \"Ωµ\" # x\npath a → R1 68 Ω → b\n")
+	f := parse(t, "\uFEFFtitle \"Ωµ\" # x\npath a → R1 68 Ω → b\n")
 	path := f.Statements[1].(*Path)
 	last := path.Segments[2].Node.Span
 	if last.Start.Line != 2 || last.Start.Column != 20 { // counted by hand
@@ -128,8 +128,8 @@ func TestParseValue(t *testing.T) {
 	if list.HasErrors() || v.At.Literal.Value != 1e-3 {
 		t.Errorf("point: %v %v", v, list)
 	}
-	for _, text := range []string{"", "12 V 13", "1 k", "5 V\n6 V", "\x00", "#", "5 V #"} {
-		if v, list := ParseValue("--set", text); !list.HasErrors() && text != "5 V #" {
+	for _, text := range []string{"", "12 V 13", "1 k", "5 V\n6 V", "\x00", "#"} {
+		if v, list := ParseValue("--set", text); !list.HasErrors() || v != nil {
 			t.Errorf("%q is accepted as %v", text, v)
 		}
 	}
@@ -175,8 +175,8 @@ func TestEmpty(t *testing.T) {
 
 func TestDepthIsBounded(t *testing.T) {
 	deep := map[string]string{
-		"brackets": "given x = " + strings.Repeat("(", 1e6), "calls": "given x = " + strings.Repeat("ln(", 1e5),
-		"signs": "given x = " + strings.Repeat("-", 1e6), "powers": "given x = " + strings.Repeat("2^", 1e5) + "2",
+		"brackets": "given x = " + strings.Repeat("(", 1e5), "calls": "given x = " + strings.Repeat("ln(", 1e5),
+		"signs": "given x = " + strings.Repeat("-", 1e5), "powers": "given x = " + strings.Repeat("2^", 1e5) + "2",
 	}
 	for name, text := range deep {
 		_, list := Parse("x", []byte(text))
@@ -221,14 +221,14 @@ func TestResumeIsLinear(t *testing.T) {
 	}
 }
 
-// A text of tokens in one line costs no more for each than one of many lines: the
-// work is counted by allocations, which a quadratic scanner would not show, so
-// the text is long enough that one would not end.
+// A text of tokens in one line is read like one of many lines, and its errors are
+// few. The line is so long that a scanner which looked at the rest of it for each
+// token would not end.
 func TestLongLines(t *testing.T) {
-	for _, piece := range []string{" 1", " a", " \"x\"", " ?", " é", "->", " 1 ", ","} {
+	for piece, most := range map[string]int{" a": 0, " 1": 1, " \"x\"": 1, " ?": 1, " é": maxErrors + 1, "->": 1, " 1 ": 1, ",": 1} {
 		_, list := Parse("x", []byte("load A"+strings.Repeat(piece, 1<<18/len(piece))))
-		if piece == " a" && len(list) != 0 {
-			t.Errorf("%v", list)
+		if len(list) > most || list.HasErrors() != (most > 0) {
+			t.Errorf("%q: %d diagnostics, at most %d are wanted; the first %v", piece, len(list), most, list[:1])
 		}
 	}
 }

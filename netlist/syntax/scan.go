@@ -154,7 +154,8 @@ func (s *scanner) token() token {
 func (s *scanner) number(t token) token {
 	head := s.head()
 	r, err := quantity.Scan(head)
-	if err == nil && r.Length == longestNumber {
+	var wrong *quantity.Error
+	if errors.As(err, &wrong) && wrong.Length == longestNumber || err == nil && r.Length == longestNumber {
 		err = &quantity.Error{Code: "bad-number", Message: "the number has too many digits", Length: chain(s.rest())}
 	}
 	if err == nil {
@@ -163,7 +164,6 @@ func (s *scanner) number(t token) token {
 		t.end = s.pos
 		return t
 	}
-	var wrong *quantity.Error
 	if !errors.As(err, &wrong) {
 		t.kind = kindWord
 		s.skip(chain(s.rest()))

@@ -63,7 +63,7 @@ func (p *parser) literal() *Literal {
 // comma refuses a decimal comma: a number, a comma and a number without a space.
 func (p *parser) comma(t token) {
 	c, n := p.tok(), p.ahead(1)
-	if c.punct != ',' || n.kind != kindNumber || c.start != t.end || n.start != c.end || !t.bare {
+	if c.punct != ',' || n.kind != kindNumber || c.start != t.end || n.start != c.end || !t.bare || strings.Contains(p.text(t), ".") {
 		return
 	}
 	whole := token{start: t.start, end: n.end}
