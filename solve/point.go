@@ -221,3 +221,9 @@ func (p *Point) Depth(element int) float64 {
 	collector, base, _, _ := p.state.Saturation(element)
 	return math.Abs(collector / (saturatedShare * base))
 }
+
+// SpareVolts is how far a transistor element's V_CE (a pnp's V_EC) in V may still fall
+// with its present V_BE before it counts as saturated; negative where it is.
+func (p *Point) SpareVolts(element int) float64 {
+	return p.Elements[element].Vce - p.state.SaturationEdge(element, saturatedShare)
+}

@@ -243,6 +243,31 @@ func point0(t testing.TB, c *netlist.Circuit) *solve.Point {
 	return r.Point
 }
 
+// TestSpareVolts moves a transistor's collector by its spare volts, base and emitter
+// held: it then stands at the edge of saturation, as the language defines that.
+func TestSpareVolts(t *testing.T) {
+	for _, text := range []string{
+		"part n npn Isat = 1e-15 A, betaF = 150, betaR = 2, VA = 70 V, Irec = 1e-13 A\nrail B = 0.68 V\nrail C = 5 V\npath C -> Q1 n base=B -> gnd\n",
+		"part p pnp Isat = 1e-15 A, betaF = 40, betaR = 0.5\nrail B = -0.68 V\nrail C = -5 V\npath gnd -> Q1 p base=B -> C\n",
+	} {
+		c := point(t, text).Point.Circuit
+		p := point0(t, c)
+		spare := p.SpareVolts(0)
+		if !(spare > 4) {
+			t.Errorf("spare %g V of %g V", spare, p.Elements[0].Vce)
+		}
+		volts := c.Value(c.Rails[1].Volts)
+		edge, list := c.With(netlist.Setting{Name: "C", Value: fmt.Sprintf("%.17g", volts*(1-spare/math.Abs(volts)))})
+		if list.HasErrors() {
+			t.Fatal(list)
+		}
+		at := point0(t, edge)
+		if left := at.SpareVolts(0); math.Abs(left) > 1e-12 || math.Abs(at.Depth(0)-1) > 1e-9 {
+			t.Errorf("at the edge: spare %g V, depth %g", left, at.Depth(0))
+		}
+	}
+}
+
 func TestCautions(t *testing.T) {
 	for _, test := range []struct{ name, text, want string }{
 		{"high voltage between two rails", "rail P = 40 V\nrail N = -30 V\npath P -> R1 100k -> N\n", "high-voltage P N"},

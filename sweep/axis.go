@@ -83,6 +83,13 @@ func ParseAxis(c *netlist.Circuit, text string, points int, logarithmic bool) (A
 	return a, err
 }
 
+// NewAxis is the axis of that name, as ParseAxis reads it, over the values given, in
+// the axis's unit. The caller keeps them as they are. The error is an *Error.
+func NewAxis(c *netlist.Circuit, name string, values []float64) (Axis, error) {
+	a := Axis{Values: values}
+	return a, a.bind(c, name)
+}
+
 // bind finds what the name moves.
 func (a *Axis) bind(c *netlist.Circuit, name string) error {
 	if element, ok := strings.CutSuffix(name, ".row"); ok {

@@ -62,13 +62,18 @@ var rules = map[string]row{
 		tests: "devices solve/reftest",
 	},
 	"sweep/limits": {
-		code:  "netlist netlist/quantity devices solve solve/mna solve/newton solve/follow",
+		code:  "netlist netlist/quantity devices solve solve/mna solve/newton solve/follow sweep",
 		tests: "devices devices/shelf solve/reftest",
 	},
 
 	"cmd/biaswright": {code: "cmd/biaswright/internal/cli"},
 	"cmd/biaswright/internal/cli": {
-		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits cmd/biaswright/internal/render",
+		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
+	},
+	"cmd/biaswright/internal/figure": {},
+	"cmd/biaswright/internal/chart": {
+		code:  "netlist netlist/quantity solve sweep sweep/limits cmd/biaswright/internal/figure cmd/biaswright/internal/render",
+		tests: "devices devices/shelf netlist/diag",
 	},
 	"cmd/biaswright/internal/render": {
 		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits",

@@ -49,7 +49,7 @@ func fences(text string) ([]fence, error) {
 
 // TestREADME runs what README shows. In a block fenced as console each line that
 // begins with "$ " is a command, and the lines up to the next are what it prints,
-// standard output first. A block fenced as bias must parse; where a comment on
+// standard output first; a last line of "…" stands for what is not shown. A block fenced as bias must parse; where a comment on
 // the line before names a file, as in <!-- sink.bias -->, the file is there for
 // the commands.
 func TestREADME(t *testing.T) {
@@ -121,11 +121,23 @@ func runs(t *testing.T, dir string, f fence) int {
 			t.Errorf("README line %d: %v", line, err)
 			continue
 		}
+		got, want = shown(got, want)
 		if err := alike(strings.TrimRight(got, "\n"), strings.TrimRight(strings.Join(want, "\n"), "\n")); err != nil {
 			t.Errorf("README line %d: %v\nall of it:\n%s", line, err, got)
 		}
 	}
 	return count
+}
+
+// shown cuts what was printed where README shows only its beginning: there the block
+// ends with a line of "…".
+func shown(got string, want []string) (string, []string) {
+	last := len(want) - 1
+	if last < 0 || want[last] != "…" {
+		return got, want
+	}
+	lines := strings.Split(got, "\n")
+	return strings.Join(lines[:min(last, len(lines))], "\n"), want[:last]
 }
 
 // run runs a command line of README, which a reader would type in a clone, and

@@ -350,6 +350,24 @@ func (st *State) Saturation(element int) (collector, base, vbc, vbe float64) {
 	return p.Ir * b.k.InvBetaR, p.Ib, vbc, vbe
 }
 
+// SaturationEdge is the V_CE in V, pnp in its own sense, below which a transistor
+// element would count as saturated with its present V_BE: there the collector
+// junction takes a share of the base current. With that share s and the base
+// current I of forward operation, I_r/betaR = s/(1 - s) I.
+func (st *State) SaturationEdge(element int, share float64) float64 {
+	d := &st.s.devices[st.s.first[element]]
+	b := &st.s.bipolars[d.at]
+	vbe := b.sign * (st.V[d.node[1]] - st.V[d.node[2]])
+	if b.k.InvBetaR == 0 { // the collector junction takes no base current
+		return 0
+	}
+	var open devices.BipolarPoint // the collector junction at 0 V
+	b.k.At(vbe, 0, &open)
+	ir := share / (1 - share) * open.Ib / b.k.InvBetaR
+	vbc := math.Log1p(math.Max(0, ir)/b.k.Isat) / b.k.InvNVt
+	return vbe - math.Min(vbc, vbe)
+}
+
 // EarlyBroken names a transistor whose v_BC has reached its VA, beyond which the
 // model means nothing; "" where none has.
 func (st *State) EarlyBroken() string {

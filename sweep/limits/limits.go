@@ -56,6 +56,8 @@ type Limit struct {
 	Axis    string // "VCC.V", "ambient", "load.V"
 	Unit    quantity.Unit
 	Nominal float64
+	From    float64 // the range of the search
+	To      float64
 	Low     Side // algebraically
 	High    Side
 	// Headroom is how far a supply may still fall towards 0 from nominal, and the
@@ -235,7 +237,7 @@ func span(c *netlist.Circuit) (low, high float64) {
 }
 
 func (a *Answer) limit(ax *axis) (Limit, error) {
-	l := Limit{Axis: ax.name, Unit: ax.c.Slots[ax.slot].Unit, Nominal: ax.c.Value(ax.slot), Headroom: math.NaN()}
+	l := Limit{Axis: ax.name, Unit: ax.c.Slots[ax.slot].Unit, Nominal: ax.c.Value(ax.slot), From: ax.low, To: ax.high, Headroom: math.NaN()}
 	var err error
 	if l.Low, err = a.side(ax, -1); err != nil {
 		return l, err

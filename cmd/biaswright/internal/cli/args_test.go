@@ -43,7 +43,8 @@ func TestValuedOptions(t *testing.T) {
 	r := &runner{}
 	got := valued(r.app())
 	if d := cmp.Diff(map[string]bool{
-		"set": true, "at": true, "near": true, "within": true, "workers": true,
+		"set": true, "at": true,
+		"chart": true, "near": true, "within": true, "workers": true,
 		"over": true, "points": true, "log": true, "show": true,
 	}, got); d != "" {
 		t.Error(d)

@@ -155,3 +155,31 @@ func (r *runner) replace(name string, text []byte) (err error) {
 	}
 	return plainError(os.Rename(f.Name(), target))
 }
+
+// create writes a file, new or in the place of an old one; no part of it is left where
+// that fails. What is no ordinary file, such as a pipe, is written to as it is.
+func (r *runner) create(name string, text []byte) error {
+	info, err := os.Stat(name)
+	switch {
+	case err == nil && info.Mode().IsRegular():
+		return r.replace(name, text)
+	case err == nil && info.IsDir():
+		return errors.New("it is a directory")
+	case err == nil:
+		return plainError(os.WriteFile(name, text, 0))
+	}
+	f, err := os.OpenFile(name, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o666)
+	if err != nil {
+		return plainError(err)
+	}
+	r.partial.set(name)
+	defer r.partial.set("")
+	_, err = f.Write(text)
+	if closing := f.Close(); err == nil {
+		err = closing
+	}
+	if err != nil {
+		os.Remove(name)
+	}
+	return plainError(err)
+}

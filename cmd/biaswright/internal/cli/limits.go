@@ -24,6 +24,8 @@ func (r *runner) limitsCommand() *cli.Command {
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
 			&cli.StringFlag{Name: "within", Usage: "`WIDTH`: how far the held quantity may move, such as 2% or 10mV, in place of the file's"},
+			chartFlag("the curves, their limits and the headroom"),
+			sketchFlag(),
 			&cli.IntFlag{Name: "workers", Usage: "`N` axes at a time; the answer is the same", Value: runtime.NumCPU()},
 			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
@@ -51,6 +53,13 @@ func (r *runner) limits(c *cli.Context) error {
 	q := &limitsRequest{request: *base, workers: c.Int("workers")}
 	if q.workers < 1 {
 		return usagef("--workers %d: at least one must work", q.workers)
+	}
+	q.sketch = c.Bool("sketch")
+	if q.chart, err = chartOption(c); err != nil {
+		return err
+	}
+	if err := q.chart.oneFile(c); err != nil {
+		return err
 	}
 	if text := c.String("within"); text != "" {
 		reading, err := quantity.Parse(text)
@@ -138,6 +147,7 @@ func (r *runner) limitsOf(name string, q *limitsRequest) (*render.LimitsAnswer, 
 		a.Failure = failure(err)
 		return a, nil
 	}
+	r.illustrateLimits(q, a)
 	for i := range a.Limits.Limits {
 		if low, high := a.Short(&a.Limits.Limits[i]); low || high {
 			r.raise(exitNotMet)

@@ -23,6 +23,8 @@ func (r *runner) solveCommand() *cli.Command {
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
 			&cli.StringSliceFlag{Name: "at", Usage: "`NAME=low|high,...`: take the stated ends of rails and of ambient, and judge hold against nominal"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: start there, and take the nearest of several operating points; may be repeated"},
+			chartFlag("where the volts go, path by path,"),
+			sketchFlag(),
 			&cli.BoolFlag{Name: "trace", Usage: "tell the solver's steps on standard error", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
@@ -36,6 +38,8 @@ type request struct {
 	set, at []netlist.Setting
 	near    []netlist.Setting
 	trace   func(string)
+	chart   chartFile
+	sketch  bool
 }
 
 func (r *runner) solve(c *cli.Context) error {
@@ -45,6 +49,13 @@ func (r *runner) solve(c *cli.Context) error {
 	r.plain = c.Bool("plain")
 	q, err := r.request(c)
 	if err != nil {
+		return err
+	}
+	q.sketch = c.Bool("sketch")
+	if q.chart, err = chartOption(c); err != nil {
+		return err
+	}
+	if err := q.chart.oneFile(c); err != nil {
 		return err
 	}
 	files := c.Args().Slice()
@@ -174,6 +185,10 @@ func (r *runner) answer(name string, q *request) (*render.Answer, *trouble) {
 	}
 	a := &render.Answer{File: shown, Circuit: actual, Set: q.set, At: q.at, Inner: q.trace != nil, Warnings: warnings}
 	r.fill(a, nominal, solve.Options{Near: near, Trace: q.trace})
+	if a.Failure != nil {
+		return a, nil
+	}
+	r.illustrate(q, a)
 	return a, nil
 }
 

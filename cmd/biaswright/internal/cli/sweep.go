@@ -34,6 +34,7 @@ func (r *runner) sweepCommand() *cli.Command {
 			&cli.StringSliceFlag{Name: "log", Usage: "`AXIS`: step this range by equal ratios; may be repeated"},
 			&cli.StringSliceFlag{Name: "show", Usage: "`WHAT`: quantities or expressions, separated by commas; may be repeated"},
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			chartFlag("the rows as curves over the innermost axis"),
 			&cli.IntFlag{Name: "workers", Usage: "`N` outer steps at a time; the rows are the same", Value: runtime.NumCPU()},
 			&cli.BoolFlag{Name: "csv", Usage: "print comma-separated values", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
@@ -49,6 +50,7 @@ type sweepRequest struct {
 	over, log, show []string
 	points, workers int
 	csv, json       bool
+	chart           chartFile
 }
 
 func (r *runner) sweep(c *cli.Context) error {
@@ -60,6 +62,9 @@ func (r *runner) sweep(c *cli.Context) error {
 	q := &sweepRequest{
 		request: *base, over: c.StringSlice("over"), log: c.StringSlice("log"),
 		points: c.Int("points"), workers: c.Int("workers"), csv: c.Bool("csv"), json: c.Bool("json"),
+	}
+	if q.chart, err = chartOption(c); err != nil {
+		return err
 	}
 	for _, list := range c.StringSlice("show") {
 		q.show = append(q.show, items(list)...)
@@ -119,8 +124,10 @@ func (r *runner) sweepFile(name string, q *sweepRequest) error {
 	rows := r.rowPrinter(a, q)
 	progress := r.progress(plan.Points())
 	var tally render.Tally
+	drawn := r.sweepDrawing(q, a, plan)
 	err := sweep.Run(context.Background(), *plan, func(row sweep.Row) error {
 		tally.Add(row)
+		drawn.add(row)
 		progress.step()
 		return rows.Row(row)
 	})
@@ -138,7 +145,11 @@ func (r *runner) sweepFile(name string, q *sweepRequest) error {
 		r.raise(exitNotMet)
 	}
 	a.Tally = tally
-	return r.finishSweep(a, q, rows)
+	if err := r.finishSweep(a, q, rows); err != nil {
+		return err
+	}
+	drawn.finish()
+	return nil
 }
 
 // rowPrinter is what takes rows as they come.

@@ -49,23 +49,23 @@ func CautionText(c *solve.Caution) string {
 			between += " and " + c.Other
 		}
 		return fmt.Sprintf("%s between %s: above %s DC a touch can injure or kill. Isolate, discharge and measure before you touch; follow your local electrical code, and leave the work to licensed people where it asks for them.",
-			measured(math.Abs(c.Value), "V"), between, stated(c.Limit, "V"))
+			Measured(math.Abs(c.Value), "V"), between, stated(c.Limit, "V"))
 	case "rating":
 		unit := ratingUnit(c.Rating)
 		return fmt.Sprintf("%s stands at %s, above its %s of %s (as stated, not derated for temperature).",
-			c.Subject, measured(c.Value, unit), ratingName(c.Rating), stated(c.Limit, unit))
+			c.Subject, Measured(c.Value, unit), ratingName(c.Rating), stated(c.Limit, unit))
 	case "zener-forward":
-		return fmt.Sprintf("%s conducts forward, as an ordinary diode, at %s; in its reference role a zener stands reversed.", c.Subject, measured(c.Value, "A"))
+		return fmt.Sprintf("%s conducts forward, as an ordinary diode, at %s; in its reference role a zener stands reversed.", c.Subject, Measured(c.Value, "A"))
 	case "beta-current":
 		return fmt.Sprintf("%s carries %s. Above about %s a transistor of its stated kind no longer has a constant beta: expect less gain, and more base current, than this model gives.",
-			c.Subject, measured(c.Value, "A"), stated(c.Limit, "A"))
+			c.Subject, Measured(c.Value, "A"), stated(c.Limit, "A"))
 	case "slip":
 		return slipText(c)
 	case "hot":
-		return fmt.Sprintf("%s dissipates %s, more than %s, and states no rating: it may burn whoever touches it, or itself.", c.Subject, measured(c.Value, "W"), stated(c.Limit, "W"))
+		return fmt.Sprintf("%s dissipates %s, more than %s, and states no rating: it may burn whoever touches it, or itself.", c.Subject, Measured(c.Value, "W"), stated(c.Limit, "W"))
 	case "bright":
 		return fmt.Sprintf("%s runs at %s: do not look into a bright emitter, infrared least of all, which the eye does not see; IEC 62471 says how its light is judged.",
-			c.Subject, measured(c.Value, "A"))
+			c.Subject, Measured(c.Value, "A"))
 	default:
 		return fmt.Sprintf("%s: %s.", c.Subject, c.Kind)
 	}

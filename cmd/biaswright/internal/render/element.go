@@ -114,7 +114,7 @@ func (s *stair) junction(i int) cell {
 	case own < 0:
 		return cell{"off", faint} // its leakage alone
 	case e.Row > 1:
-		state = measured(q.V/float64(e.Row), "V") + " each"
+		state = Measured(q.V/float64(e.Row), "V") + " each"
 	}
 	return cell{s.look.text(state), noInk}
 }

@@ -21,6 +21,7 @@ type LimitsAnswer struct {
 	Limits   *limits.Answer // nil with a Failure
 	Within   *limits.Within // the width asked for on the command line
 	Failure  *solve.Failure
+	Sketch   []string // as Answer's
 	Warnings diag.List
 }
 
@@ -49,14 +50,15 @@ func LimitsScreen(w io.Writer, a *LimitsAnswer, l Look) error {
 		return p.err
 	}
 	found := a.Limits
-	wrap(p, "", l.text(holdText(a)))
+	printSketch(p, a.Sketch, l)
+	wrap(p, "", l.text(HoldText(a)))
 	fmt.Fprintln(p)
 	printLimits(p, a, l)
 	fmt.Fprintln(p)
 	fmt.Fprintln(p, l.paint("Why", bold))
 	for i := range found.Limits {
 		for _, side := range []bool{false, true} {
-			if says := sideSays(a, &found.Limits[i], side); says != "" {
+			if says := SideSays(a, &found.Limits[i], side); says != "" {
 				wrap(p, "  ", l.text(says))
 			}
 		}
@@ -70,13 +72,13 @@ func LimitsScreen(w io.Writer, a *LimitsAnswer, l Look) error {
 	return p.err
 }
 
-// holdText says what is held.
-func holdText(a *LimitsAnswer) string {
+// HoldText says what is held.
+func HoldText(a *LimitsAnswer) string {
 	h := &a.Limits.Hold
 	v := solve.Verdict{Q: h.Q, Value: h.Nominal, Low: h.Low, High: h.High}
 	f := figuresOf(&v, h.Q.Unit.Symbol())
 	half := (h.High - h.Low) / 2
-	width := measured(half, h.Q.Unit.Symbol())
+	width := Measured(half, h.Q.Unit.Symbol())
 	if _, within, relative := solve.HoldOf(a.Circuit); (a.Within == nil && relative) || (a.Within != nil && a.Within.Relative) {
 		if a.Within != nil {
 			within = a.Within.Value
@@ -140,8 +142,8 @@ func statedRange(c *netlist.Circuit, lim *limits.Limit) string {
 	return stated(b.Low, "") + " .. " + stated(b.High, lim.Unit.Symbol())
 }
 
-// sideSays is why one side ends, a sentence without a stop.
-func sideSays(a *LimitsAnswer, lim *limits.Limit, high bool) string {
+// SideSays is why one side ends, a sentence without a stop.
+func SideSays(a *LimitsAnswer, lim *limits.Limit, high bool) string {
 	side, beyond := lim.Low, "below"
 	if high {
 		side, beyond = lim.High, "above"
@@ -151,13 +153,13 @@ func sideSays(a *LimitsAnswer, lim *limits.Limit, high bool) string {
 		if side.SearchedTo == lim.Nominal {
 			return ""
 		}
-		return fmt.Sprintf("%s holds to %s, where the search ends", lim.Axis, with(side.SearchedTo, unit))
+		return fmt.Sprintf("%s holds to %s, where the search ends", lim.Axis, With(side.SearchedTo, unit))
 	}
-	return fmt.Sprintf("%s %s %s: %s", lim.Axis, beyond, with(side.At, unit), Says(a.Limits, lim, side))
+	return fmt.Sprintf("%s %s %s: %s", lim.Axis, beyond, With(side.At, unit), Says(a.Limits, lim, side))
 }
 
-// with writes a number of an axis with its unit, unscaled.
-func with(x float64, unit string) string { return strings.TrimSpace(number(x) + " " + unit) }
+// With writes a number of an axis with its unit, unscaled.
+func With(x float64, unit string) string { return strings.TrimSpace(number(x) + " " + unit) }
 
 // Says tells in words why a side ends.
 func Says(a *limits.Answer, lim *limits.Limit, side limits.Side) string {
@@ -191,13 +193,13 @@ func leftText(left []limits.PartState, most int) string {
 		}
 		switch p.State {
 		case "saturated":
-			said = append(said, fmt.Sprintf("%s saturates, %s %s", p.Name, symbol, measured(p.Volts, "V")))
+			said = append(said, fmt.Sprintf("%s saturates, %s %s", p.Name, symbol, Measured(p.Volts, "V")))
 		case "starved":
-			said = append(said, fmt.Sprintf("%s starves at %s (%s at nominal)", p.Name, measured(p.Amps, "A"), measured(p.Nominal, "A")))
+			said = append(said, fmt.Sprintf("%s starves at %s (%s at nominal)", p.Name, Measured(p.Amps, "A"), Measured(p.Nominal, "A")))
 		case "off":
-			said = append(said, fmt.Sprintf("%s turns off at %s (%s at nominal)", p.Name, measured(p.Amps, "A"), measured(p.Nominal, "A")))
+			said = append(said, fmt.Sprintf("%s turns off at %s (%s at nominal)", p.Name, Measured(p.Amps, "A"), Measured(p.Nominal, "A")))
 		default:
-			said = append(said, fmt.Sprintf("%s works in reverse, %s %s", p.Name, symbol, measured(p.Volts, "V")))
+			said = append(said, fmt.Sprintf("%s works in reverse, %s %s", p.Name, symbol, Measured(p.Volts, "V")))
 		}
 	}
 	return strings.Join(said, "; ")
@@ -272,21 +274,21 @@ func resistanceText(ohms float64) string {
 	if ohms > beyond {
 		return "beyond measure"
 	}
-	return measured(ohms, "Ω")
+	return Measured(ohms, "Ω")
 }
 
 func printWindow(w io.Writer, a *LimitsAnswer, l Look) {
 	load := a.Limits.Load
 	fmt.Fprintln(w, l.paint("Load", bold))
 	if !math.IsNaN(load.High) {
-		says := fmt.Sprintf("holds from %s to %s at the load", with(load.Low, "V"), with(load.High, "V"))
+		says := fmt.Sprintf("holds from %s to %s at the load", With(load.Low, "V"), With(load.High, "V"))
 		for _, o := range load.Outputs {
-			says += fmt.Sprintf(", with %s at %s and %s", o.Node, with(o.AtLow, "V"), with(o.AtHigh, "V"))
+			says += fmt.Sprintf(", with %s at %s and %s", o.Node, With(o.AtLow, "V"), With(o.AtHigh, "V"))
 		}
 		wrap(w, "  ", l.text(says))
 	}
 	if !math.IsNaN(load.MaxOhms) {
-		wrap(w, "  ", l.text("largest load resistance "+measured(load.MaxOhms, "Ω")))
+		wrap(w, "  ", l.text("largest load resistance "+Measured(load.MaxOhms, "Ω")))
 	}
 	if load.Row != "" {
 		var said []string

@@ -97,8 +97,8 @@ func stated(x float64, unit string) string {
 	return strings.TrimRight(v+" "+s.prefix+unit, " ")
 }
 
-// measured writes a number with its own prefix and four significant digits.
-func measured(x float64, unit string) string {
+// Measured writes a number with its own prefix and four significant digits.
+func Measured(x float64, unit string) string {
 	s := noScale
 	if prefixable(unit) {
 		s = scaleFor(x)

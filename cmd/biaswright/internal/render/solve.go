@@ -24,6 +24,8 @@ type Answer struct {
 	Cautions []solve.Caution
 	// Inner asks for the nodes behind bulk resistances in the JSON form.
 	Inner bool
+	// Sketch is a picture in characters, printed above all else; nil for none.
+	Sketch []string
 	// Warnings are about the text; the screen leaves them to standard error.
 	Warnings diag.List
 }
@@ -41,6 +43,7 @@ func Screen(out io.Writer, a *Answer, l Look) error {
 		wrap(w, "", "This point cannot be stable: the circuit would leave it by itself.")
 		io.WriteString(w, "\n")
 	}
+	printSketch(w, a.Sketch, l)
 	s := newStair(l, p, exceeded(a.Cautions))
 	for i := range a.Circuit.Paths {
 		s.path(&a.Circuit.Paths[i])
@@ -53,6 +56,16 @@ func Screen(out io.Writer, a *Answer, l Look) error {
 	printCautions(w, a.Cautions, l)
 	printEvidence(w, a.Result, l)
 	return w.err
+}
+
+// printSketch puts a picture in characters.
+func printSketch(w io.Writer, lines []string, l Look) {
+	for _, line := range lines {
+		fmt.Fprintln(w, l.text(line))
+	}
+	if len(lines) > 0 {
+		fmt.Fprintln(w)
+	}
 }
 
 // writer remembers the first error, so that printing need not ask each time.
@@ -70,25 +83,31 @@ func (w *writer) Write(b []byte) (int, error) {
 	return n, err
 }
 
-func printTitle(w io.Writer, a *Answer, l Look) {
+// Under is the line below an answer's title: the file, the ambient temperature, and
+// what was set.
+func Under(a *Answer) string {
 	under := []string{a.File}
 	if a.Circuit.Title == "" {
 		under = nil
 	}
 	ambient := a.Circuit.Slots[a.Circuit.Ambient].Value
-	under = append(under, "ambient "+l.text(stated(ambient, "°C")))
+	under = append(under, "ambient "+stated(ambient, "°C"))
 	for _, s := range a.Set {
 		under = append(under, s.Name+" = "+s.Value)
 	}
 	for _, s := range a.At {
 		under = append(under, s.Name+" "+s.Value)
 	}
+	return strings.Join(under, ", ")
+}
+
+func printTitle(w io.Writer, a *Answer, l Look) {
 	title := a.Circuit.Title
 	if title == "" {
 		title = a.File
 	}
 	fmt.Fprintln(w, l.paint(l.text(title), bold))
-	wrap(w, "", l.text(strings.Join(under, ", ")))
+	wrap(w, "", l.text(Under(a)))
 	fmt.Fprintln(w)
 }
 
@@ -102,7 +121,7 @@ func printLoad(w io.Writer, p *solve.Point, l Look) {
 	for _, i := range p.Circuit.Load {
 		names = append(names, p.Circuit.Elements[i].Name)
 	}
-	text := fmt.Sprintf("%s: %s, %s", strings.Join(names, ", "), measured(p.LoadV, "V"), measured(p.LoadI, "A"))
+	text := fmt.Sprintf("%s: %s, %s", strings.Join(names, ", "), Measured(p.LoadV, "V"), Measured(p.LoadI, "A"))
 	fmt.Fprintln(w, l.paint("Load", bold))
 	wrap(w, "  ", l.text(text))
 	fmt.Fprintln(w)
@@ -179,7 +198,7 @@ func otherText(p, o *solve.Point) string {
 		a, b := p.NodeV[n], o.NodeV[n]
 		if b-a > seen || a-b > seen {
 			name := p.Circuit.Nodes[n].Name
-			return fmt.Sprintf("%s: %s at %s, where this one has %s; --near %s=%.3g asks for it.", text, name, measured(b, "V"), measured(a, "V"), name, b)
+			return fmt.Sprintf("%s: %s at %s, where this one has %s; --near %s=%.3g asks for it.", text, name, Measured(b, "V"), Measured(a, "V"), name, b)
 		}
 	}
 	return text + "."

@@ -117,13 +117,13 @@ func (f verdictFigures) write(x float64, s scale) string {
 	return text
 }
 
-func (f verdictFigures) with(text string, s scale) string {
+func (f verdictFigures) With(text string, s scale) string {
 	return strings.TrimSpace(text + " " + s.prefix + f.unit)
 }
 
-func (f verdictFigures) value(x float64) string { return f.with(f.write(x, f.actual), f.actual) }
+func (f verdictFigures) value(x float64) string { return f.With(f.write(x, f.actual), f.actual) }
 
-func (f verdictFigures) margin(x float64) string { return f.with(number(f.actual.in(x)), f.actual) }
+func (f verdictFigures) margin(x float64) string { return f.With(number(f.actual.in(x)), f.actual) }
 
 func (f verdictFigures) allowed(v *solve.Verdict) string {
 	low, high := f.write(v.Low, f.bound), f.write(v.High, f.bound)
@@ -131,11 +131,11 @@ func (f verdictFigures) allowed(v *solve.Verdict) string {
 	case math.IsInf(v.Low, -1) && math.IsInf(v.High, 1):
 		return ""
 	case math.IsInf(v.Low, -1):
-		return f.with("below "+high, f.bound)
+		return f.With("below "+high, f.bound)
 	case math.IsInf(v.High, 1):
-		return f.with("above "+low, f.bound)
+		return f.With("above "+low, f.bound)
 	default:
-		return f.with(low+" .. "+high, f.bound)
+		return f.With(low+" .. "+high, f.bound)
 	}
 }
 
@@ -151,7 +151,7 @@ func requirementText(c *netlist.Circuit, v *solve.Verdict) string {
 		q, within, relative := solve.HoldOf(c)
 		text := fmt.Sprintf("hold %s within %s", q.Text, withinText(within, relative, unit))
 		if nominal := (v.Low + v.High) / 2; !math.IsNaN(nominal) {
-			text += " of nominal " + measured(nominal, unit)
+			text += " of nominal " + Measured(nominal, unit)
 		}
 		return text
 	default:
