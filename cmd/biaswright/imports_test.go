@@ -65,10 +65,14 @@ var rules = map[string]row{
 		code:  "netlist netlist/quantity devices solve solve/mna solve/newton solve/follow sweep",
 		tests: "devices devices/shelf solve/reftest",
 	},
+	"sweep/choose": {
+		code:  "netlist netlist/diag netlist/quantity solve solve/mna solve/newton",
+		tests: "devices devices/shelf",
+	},
 
 	"cmd/biaswright": {code: "cmd/biaswright/internal/cli"},
 	"cmd/biaswright/internal/cli": {
-		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
+		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits sweep/choose cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
 	},
 	"cmd/biaswright/internal/figure": {},
 	"cmd/biaswright/internal/chart": {
@@ -76,7 +80,7 @@ var rules = map[string]row{
 		tests: "devices devices/shelf netlist/diag",
 	},
 	"cmd/biaswright/internal/render": {
-		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits",
+		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits sweep/choose",
 		tests: "netlist/syntax devices/shelf",
 	},
 }

@@ -46,6 +46,7 @@ func TestValuedOptions(t *testing.T) {
 		"set": true, "at": true,
 		"chart": true, "near": true, "within": true, "workers": true,
 		"over": true, "points": true, "log": true, "show": true,
+		"reopen": true, "list": true,
 	}, got); d != "" {
 		t.Error(d)
 	}

@@ -195,16 +195,9 @@ func (r *runner) answer(name string, q *request) (*render.Answer, *trouble) {
 // circuits reads a text and applies the settings. The first circuit is at its
 // nominal point; the second at the ends asked for, and the same without any.
 func (r *runner) circuits(name string, text []byte, q *request) (nominal, actual *netlist.Circuit, warnings, wrong diag.List) {
-	c, found := netlist.Read(name, text, devices.Catalogue(), r.library())
-	if found.HasErrors() {
-		return nil, nil, nil, found
-	}
-	warnings = found
-	if len(q.set) > 0 {
-		if c, found = c.With(q.set...); found.HasErrors() {
-			return nil, nil, nil, found
-		}
-		warnings = append(warnings, found...)
+	c, warnings, wrong := r.circuit(name, text, q)
+	if wrong.HasErrors() {
+		return nil, nil, nil, wrong
 	}
 	if wrong := stillOpen(c); len(wrong) > 0 {
 		return nil, nil, nil, wrong
@@ -219,6 +212,22 @@ func (r *runner) circuits(name string, text []byte, q *request) (nominal, actual
 	return c, at, append(warnings, found...), nil
 }
 
+// circuit reads a text and applies the settings; resistances may be open.
+func (r *runner) circuit(name string, text []byte, q *request) (c *netlist.Circuit, warnings, wrong diag.List) {
+	c, found := netlist.Read(name, text, devices.Catalogue(), r.library())
+	if found.HasErrors() {
+		return nil, nil, found
+	}
+	warnings = found
+	if len(q.set) > 0 {
+		if c, found = c.With(q.set...); found.HasErrors() {
+			return nil, nil, found
+		}
+		warnings = append(warnings, found...)
+	}
+	return c, warnings, nil
+}
+
 // stillOpen finds resistances without a value: nothing can be solved with them.
 func stillOpen(c *netlist.Circuit) diag.List {
 	var wrong diag.List
@@ -227,7 +236,7 @@ func stillOpen(c *netlist.Circuit) diag.List {
 			wrong = append(wrong, diag.Diagnostic{
 				Code: "open-value", Span: e.Span,
 				Message: fmt.Sprintf("%s has no value yet (? %s)", e.Name, e.Series),
-				Hint:    fmt.Sprintf("give it one with --set %s=VALUE", e.Name),
+				Hint:    fmt.Sprintf("biaswright choose finds one; --set %s=VALUE gives it one", e.Name),
 			})
 		}
 	}

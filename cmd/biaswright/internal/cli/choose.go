@@ -1,0 +1,133 @@
+package cli
+
+import (
+	"errors"
+	"runtime"
+
+	"github.com/urfave/cli/v2"
+
+	"biaswright/cmd/biaswright/internal/render"
+	"biaswright/netlist/diag"
+	"biaswright/sweep/choose"
+)
+
+// defaultList is how many choices are listed: enough to see what a step up or down
+// costs.
+const defaultList = 5
+
+// chooseObjective says what is best, for --help.
+const chooseObjective = "Finds the resistances written ? E24: first the exact values that meet the targets, then the best of all\n" +
+	"combinations of preferred values (IEC 60063) from a tenth of the exact ones to ten times them. Best is, in\n" +
+	"this order: no rating exceeded; fewest of targets, keeps and hold not met somewhere over the stated ranges\n" +
+	"and tolerances; the smallest deviation of a target there, in units of its band. Where currents must not\n" +
+	"grow without need, say so in the file: keep VCC.I < 30 mA."
+
+func (r *runner) chooseCommand() *cli.Command {
+	return &cli.Command{
+		Name:        "choose",
+		Usage:       "find preferred values for the resistances that a file leaves open",
+		UsageText:   "biaswright choose [options] FILE",
+		Description: chooseObjective,
+		Flags: []cli.Flag{
+			&cli.StringSliceFlag{Name: "reopen", Usage: "`NAME=SERIES`: choose a stated resistance anew, such as RE=E24; may be repeated"},
+			&cli.IntFlag{Name: "list", Usage: "the best `N` choices", Value: defaultList},
+			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
+			&cli.IntFlag{Name: "workers", Usage: "`N` parts of the search at a time; the answer is the same", Value: runtime.NumCPU()},
+			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+		},
+		Action: r.choose,
+	}
+}
+
+// A chooseRequest is what the options of choose ask for.
+type chooseRequest struct {
+	request
+	reopen        []choose.Reopening
+	list, workers int
+	json          bool
+}
+
+func (r *runner) choose(c *cli.Context) error {
+	r.plain = c.Bool("plain")
+	base, err := r.request(c)
+	if err != nil {
+		return err
+	}
+	q := &chooseRequest{request: *base, list: c.Int("list"), workers: c.Int("workers"), json: c.Bool("json")}
+	for _, text := range c.StringSlice("reopen") {
+		s, err := setting("reopen", text, "NAME=SERIES, such as RE=E24")
+		if err != nil {
+			return err
+		}
+		q.reopen = append(q.reopen, choose.Reopening{Name: s.Name, Series: s.Value})
+	}
+	switch {
+	case c.NArg() == 0:
+		return &usageError{"choose needs a file", `"-" is standard input`}
+	case c.NArg() > 1:
+		return usagef("choose takes one file, and %d are named", c.NArg())
+	case q.list < 1:
+		return usagef("--list %d: at least one choice is to be listed", q.list)
+	case q.workers < 1:
+		return usagef("--workers %d: at least one must work", q.workers)
+	}
+	return r.chooseFile(c.Args().First(), q)
+}
+
+func (r *runner) chooseFile(name string, q *chooseRequest) error {
+	a, trouble := r.chosen(name, q)
+	switch {
+	case trouble != nil && q.json:
+		return r.writeAll([]any{trouble.json()})
+	case trouble != nil:
+		r.tell(trouble)
+		return nil
+	case q.json:
+		return r.writeAll([]any{render.ChooseJSON(a)})
+	}
+	r.diagnose(a.Warnings)
+	if err := render.ChooseScreen(r.out, a, r.look()); err != nil {
+		return &writeError{err}
+	}
+	return nil
+}
+
+// chosen answers for a file and notes the exit code it earns.
+func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *trouble) {
+	shown := shownName(name)
+	text, err := r.read(name)
+	if err != nil {
+		r.raise(exitFile)
+		return nil, &trouble{file: shown, err: err}
+	}
+	r.texts[shown] = text
+	refuse := func(found diag.List) (*render.ChooseAnswer, *trouble) {
+		r.raise(exitUsage)
+		return nil, &trouble{file: shown, found: found}
+	}
+	c, warnings, wrong := r.circuit(shown, text, &q.request)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	near, wrong := nearPoint(c, q.near)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	a := &render.ChooseAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
+	a.Found, err = choose.Find(c, choose.Options{Reopen: q.reopen, List: q.list, Near: near, Workers: q.workers})
+	var mend *choose.Error
+	switch {
+	case errors.As(err, &mend):
+		return refuse(diag.List{{Code: mend.Code, Span: mend.Span, Message: mend.Message, Hint: mend.Hint}})
+	case err != nil:
+		r.raise(exitNoPoint)
+		a.Failure = failure(err)
+		return a, nil
+	}
+	if !a.Found.Reached || !a.Found.Choices[0].Met() {
+		r.raise(exitNotMet)
+	}
+	return a, nil
+}

@@ -1,0 +1,237 @@
+// Package choose finds the resistances that a circuit still leaves open: first the
+// exact values at which its targets are met, then the best combination of preferred
+// values (IEC 60063) around them.
+//
+// Every combination is judged by solving the circuit itself: at the nominal point,
+// at every combination of the ends of the stated rail and ambient ranges, and at
+// each of these with the tolerances turned against each requirement in turn (the
+// corner that the signs of the exact derivatives show, then solved). What is best is
+// decided in this order:
+//
+//  1. no stated rating is exceeded at any end of the ranges;
+//  2. the number of requirements (targets, keeps, the hold) that are not met somewhere
+//     there: the fewer the better;
+//  3. the largest deviation of a target there, in units of its band: |Q - target|
+//     over the width that the file states, 1 at the band's edge;
+//  4. the distance from the exact values, Σ ln²(R/R_exact), where two combinations
+//     deviate alike;
+//  5. the lower values.
+//
+// The grid is every value of each series from a tenth of the exact value to ten times
+// it, in all combinations. All of it is searched: the deviation at the nominal point is a
+// lower bound of the worst one, so that most combinations need one solution only, and
+// none is passed over that could still be among the best.
+package choose
+
+import (
+	"fmt"
+	"math"
+
+	"biaswright/netlist"
+	"biaswright/netlist/diag"
+	"biaswright/solve"
+)
+
+// A Reopening takes a stated resistance back and has it chosen anew.
+type Reopening struct {
+	Name   string // an element
+	Series string // "E3" to "E192"
+}
+
+// Options steer a search.
+type Options struct {
+	// Reopen are stated resistances that are to be chosen as well; for an open one it
+	// replaces the series.
+	Reopen []Reopening
+	// List is how many choices are wanted; 0 is 5.
+	List int
+	// Near, where set, chooses among several nominal points, as solve.Options does.
+	Near map[netlist.NodeID]float64
+	// Workers is how many goroutines share the grid; 0 is one. The answer is the same.
+	Workers int
+	// Most bounds the combinations tried; 0 is MostCombinations. The grid is narrowed
+	// about the exact values where it is larger.
+	Most int
+}
+
+// MostCombinations is the largest grid that is searched whole: three values of E96,
+// each over two decades, are 7.2 million.
+const MostCombinations = 8_000_000
+
+// An Unknown is a resistance to be chosen.
+type Unknown struct {
+	Element int
+	Name    string
+	Series  string
+	// Exact is the resistance in ohms at which the targets are met.
+	Exact float64
+	// Low and High are the least and largest value searched, in ohms, and Count how
+	// many there are.
+	Low, High float64
+	Count     int
+
+	slot   netlist.SlotID
+	stated float64 // of a reopened one, else NaN
+	grid   []float64
+}
+
+// Fit is how far the targets fix the values.
+type Fit string
+
+// The fits.
+const (
+	Fixed      Fit = "fixed"      // as many targets as values
+	Free       Fit = "free"       // fewer targets: other values would meet them too
+	Compromise Fit = "compromise" // more targets: the largest deviation is least
+	Nearest    Fit = "nearest"    // the targets are not met exactly by any value
+)
+
+// An Answer is all that was found.
+type Answer struct {
+	// Circuit has every open resistance at its exact value.
+	Circuit  *netlist.Circuit
+	Unknowns []Unknown
+	Fit      Fit
+	// Exact is the circuit at the exact values.
+	Exact Choice
+	// Reached tells that every target lies in its band at the exact values; if not,
+	// nothing was searched, and Exact is the nearest that the targets come.
+	Reached bool
+	// Combinations is the size of the grid; Whole tells that it spans a decade to
+	// each side of every exact value.
+	Combinations int
+	Whole        bool
+	Choices      []Choice // the best first
+}
+
+// A Choice is a value for each unknown, and what the circuit does with them.
+type Choice struct {
+	Ohms []float64 // by unknown
+	// Unmet counts the requirements that are not met somewhere in the stated ranges
+	// and tolerances. Score is the largest deviation of a target there, in units of
+	// its band; +Inf where some corner has no operating point.
+	Unmet int
+	Score float64
+	// Nominal is the nominal point; Requirements are in the order of solve.Judge.
+	Nominal      *solve.Point
+	Requirements []Requirement
+	// Draw is the current in A that the rails deliver at the nominal point.
+	Draw float64
+	// Ratings are those exceeded at some end of the ranges.
+	Ratings []Rating
+	// Failed is a corner without an operating point; nil where every one has one.
+	Failed *[]End
+}
+
+// A Rating is one that is exceeded, and where by most.
+type Rating struct {
+	solve.Caution
+	At []End
+}
+
+// A Requirement is a target, keep or hold judged where it is worst.
+type Requirement struct {
+	Nominal solve.Verdict // a hold's is against itself
+	Worst   solve.Verdict // Met tells of all corners
+	At      []End         // where it is worst; empty for the nominal point
+}
+
+// An End is a value taken at one end of its range or tolerance.
+type End struct {
+	Name  string // as settings call it: "VCC", "ambient", "RE", "Q1.betaF"
+	Slot  netlist.SlotID
+	Value float64 // in the slot's unit
+	High  bool
+	Range bool // a rail's or the ambient's range, not a tolerance
+}
+
+// An Error is what a file or an option can mend.
+type Error struct {
+	Code, Message, Hint string
+	Span                diag.Span
+}
+
+func (e *Error) Error() string { return e.Message }
+
+func wrong(code string, at diag.Span, hint, format string, args ...any) error {
+	return &Error{Code: code, Message: fmt.Sprintf(format, args...), Hint: hint, Span: at}
+}
+
+// Find chooses a circuit's open resistances. The error is an *Error where the file
+// must be mended, a *solve.Failure where no values give an operating point, or says
+// what went wrong.
+func Find(c *netlist.Circuit, o Options) (*Answer, error) {
+	if o.List <= 0 {
+		o.List = 5
+	}
+	if o.Most <= 0 {
+		o.Most = MostCombinations
+	}
+	unknowns, err := unknownsOf(c, o.Reopen)
+	if err != nil {
+		return nil, err
+	}
+	if len(c.Targets) == 0 {
+		return nil, wrong("no-target", diag.Span{File: c.File}, "add: target LAMP.I = 15 mA within 10%", "there is no target that the open values could meet")
+	}
+	start := make([]float64, len(unknowns))
+	for i := range start {
+		const kilo = 1e3 // any value will do to set the circuit up
+		start[i] = kilo
+	}
+	a := &Answer{Unknowns: unknowns, Whole: true}
+	if a.Circuit, err = withValues(c, unknowns, start); err != nil {
+		return nil, err
+	}
+	t, err := newTrial(a.Circuit, unknowns, o.Near)
+	if err != nil {
+		return nil, err
+	}
+	ohms, err := a.exact(t)
+	if err != nil {
+		return nil, err
+	}
+	if a.Circuit, err = withValues(c, unknowns, ohms); err != nil {
+		return nil, err
+	}
+	for i := range unknowns {
+		unknowns[i].Exact = ohms[i]
+	}
+	if a.Exact, err = a.detail(ohms, o.Near); err != nil {
+		return nil, err
+	}
+	a.Reached = a.Exact.NominalScore() <= 1
+	if !a.Reached {
+		return a, nil
+	}
+	a.layGrid(o.Most)
+	if err := a.search(o); err != nil {
+		return nil, err
+	}
+	return a, nil
+}
+
+// NominalScore is the largest deviation of a target at the nominal point, in units of
+// its band.
+func (c *Choice) NominalScore() float64 {
+	score := 0.0
+	for i := range c.Requirements {
+		if v := &c.Requirements[i].Nominal; v.Kind == "target" {
+			score = math.Max(score, Deviation(v))
+		}
+	}
+	return score
+}
+
+// Deviation is how far a target's quantity lies from its middle, in units of its
+// band: 1 at the edge. It is +Inf where the quantity has no number.
+func Deviation(v *solve.Verdict) float64 {
+	d := math.Abs(2*v.Value-v.Low-v.High) / (v.High - v.Low)
+	if math.IsNaN(d) {
+		return math.Inf(1)
+	}
+	return d
+}
+
+// Met tells that every requirement is met everywhere and no rating is exceeded.
+func (c *Choice) Met() bool { return c.Unmet == 0 && len(c.Ratings) == 0 }

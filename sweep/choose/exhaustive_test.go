@@ -1,0 +1,488 @@
+package choose_test
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"os"
+	"path/filepath"
+	"slices"
+	"sort"
+	"strconv"
+	"strings"
+	"testing"
+
+	"biaswright/devices"
+	"biaswright/netlist"
+	"biaswright/netlist/quantity"
+	"biaswright/solve"
+	"biaswright/solve/mna"
+	"biaswright/solve/newton"
+	"biaswright/sweep/choose"
+)
+
+func read(t testing.TB, name, text string) *netlist.Circuit {
+	t.Helper()
+	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), netlist.Files{})
+	if list.HasErrors() {
+		t.Fatalf("%s: %+v", name, list)
+	}
+	return c
+}
+
+func shipped(t testing.TB, name string) string {
+	t.Helper()
+	text, err := os.ReadFile(filepath.Join("..", "..", "testdata", "circuits", name+".bias"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	return string(text)
+}
+
+// An exhaustive search tries every combination of a grid by building each circuit anew
+// with settings and solving it cold: none of what package choose does to be quick.
+type exhaustive struct {
+	t     *testing.T
+	c     *netlist.Circuit
+	names []string
+	grids [][]float64
+}
+
+type result struct {
+	ohms  []float64
+	burnt bool
+	unmet int
+	score float64
+	away  float64
+}
+
+func (x *exhaustive) set(c *netlist.Circuit, names []string, values []float64) *netlist.Circuit {
+	x.t.Helper()
+	settings := make([]netlist.Setting, len(names))
+	for i, name := range names {
+		settings[i] = netlist.Setting{Name: name, Value: strconv.FormatFloat(values[i], 'g', -1, 64)}
+	}
+	out, list := c.With(settings...)
+	if list.HasErrors() {
+		x.t.Fatalf("%v: %+v", settings, list)
+	}
+	return out
+}
+
+// solveCold gives the operating point, nil where there is none that could be stable.
+func solveCold(t *testing.T, c *netlist.Circuit) *solve.Point {
+	t.Helper()
+	s, err := mna.New(c)
+	if err != nil {
+		t.Fatal(err)
+	}
+	values := make([]float64, s.Size())
+	var w newton.Work
+	if r := newton.Solve(s, values, &w, newton.Options{}); r.Outcome == newton.Converged && s.LastSign() > 0 {
+		return solve.PointAt(s, values, "cold")
+	}
+	res, err := solve.SolveSystem(s, solve.Options{})
+	if err != nil || res.Point.Unstable {
+		return nil
+	}
+	return res.Point
+}
+
+// corners are the nominal circuit and every combination of the ends of its ranges.
+func (x *exhaustive) corners(c *netlist.Circuit) []*netlist.Circuit {
+	var ranged []string
+	for i := range c.Rails {
+		if c.Slots[c.Rails[i].Volts].Bounds.Stated {
+			ranged = append(ranged, c.Rails[i].Name)
+		}
+	}
+	if c.Slots[c.Ambient].Bounds.Stated {
+		ranged = append(ranged, "ambient")
+	}
+	out := []*netlist.Circuit{c}
+	if len(ranged) == 0 {
+		return out
+	}
+	for k := range 1 << len(ranged) {
+		var ends []netlist.Setting
+		for i, name := range ranged {
+			ends = append(ends, netlist.Setting{Name: name, Value: []string{"low", "high"}[k>>i&1]})
+		}
+		at, list := c.At(ends...)
+		if list.HasErrors() {
+			x.t.Fatal(list)
+		}
+		out = append(out, at)
+	}
+	return out
+}
+
+// drawn lists the names of all numbers with a tolerance, those of a batch together.
+func drawn(c *netlist.Circuit) [][]string {
+	groups := map[string][]string{}
+	var order []string
+	add := func(id netlist.SlotID, group string) {
+		if id == netlist.None || !c.Slots[id].Bounds.Stated || math.IsNaN(c.Value(id)) {
+			return
+		}
+		if groups[group] == nil {
+			order = append(order, group)
+		}
+		groups[group] = append(groups[group], c.Slots[id].Name)
+	}
+	for _, id := range c.Givens {
+		add(id, "given "+c.Slots[id].Name)
+	}
+	for i := range c.Elements {
+		e := &c.Elements[i]
+		who := e.Name
+		for b := range c.Batches {
+			if slices.Contains(c.Batches[b], i) {
+				who = fmt.Sprint("batch ", b)
+			}
+		}
+		add(e.Value, who+" value")
+		add(e.TC, who+" TC")
+		add(e.Size, who+" size")
+		for k, id := range e.Params {
+			add(id, fmt.Sprint(who, " param ", k))
+		}
+	}
+	var out [][]string
+	for _, g := range order {
+		out = append(out, groups[g])
+	}
+	return out
+}
+
+// judge tries one combination.
+func (x *exhaustive) judge(ohms []float64) result {
+	r := result{ohms: slices.Clone(ohms)}
+	c := x.set(x.c, x.names, ohms)
+	var unmet map[string]bool
+	var nominal *solve.Point
+	see := func(p *solve.Point) {
+		if p == nil {
+			r.score = math.Inf(1)
+			for _, v := range solve.Judge(nominal, holdFrom(c, nominal)) {
+				unmet[fmt.Sprint(v.Kind, v.Index)] = true
+			}
+			return
+		}
+		for _, v := range solve.Judge(p, holdFrom(c, nominal)) {
+			if !v.Met {
+				unmet[fmt.Sprint(v.Kind, v.Index)] = true
+			}
+			if v.Kind == "target" {
+				target := &c.Targets[v.Index]
+				width := target.Within
+				if target.Relative {
+					width *= math.Abs(target.Value)
+				}
+				r.score = math.Max(r.score, math.Abs(v.Value-target.Value)/width)
+			}
+		}
+	}
+	unmet = map[string]bool{}
+	for i, at := range x.corners(c) {
+		p := solveCold(x.t, at)
+		if i == 0 {
+			if nominal = p; p == nil {
+				r.score, r.unmet = math.Inf(1), math.MaxInt
+				return r
+			}
+		}
+		see(p)
+		if p == nil {
+			continue
+		}
+		for _, caution := range solve.Cautions(p) {
+			r.burnt = r.burnt || caution.Kind == "rating"
+		}
+		for _, turned := range x.turned(at, p) {
+			see(solveCold(x.t, turned))
+		}
+	}
+	r.unmet = len(unmet)
+	return r
+}
+
+func holdFrom(c *netlist.Circuit, nominal *solve.Point) *solve.Point {
+	if c.Hold == nil {
+		return nil
+	}
+	return nominal
+}
+
+// turned are the circuits with their tolerances against each requirement, each way.
+func (x *exhaustive) turned(at *netlist.Circuit, p *solve.Point) []*netlist.Circuit {
+	groups := drawn(at)
+	if len(groups) == 0 {
+		return nil
+	}
+	slope := func(q *netlist.Expr) []float64 {
+		_, d, err := p.Sensitivity(q)
+		if err != nil {
+			x.t.Fatal(err)
+		}
+		return d
+	}
+	both := []bool{false, true}
+	var gains [][]float64
+	var senses [][]bool // a keep is hurt one way, a target or hold both ways
+	for i := range at.Targets {
+		gains, senses = append(gains, slope(at.Targets[i].Q)), append(senses, both)
+	}
+	for i := range at.Keeps {
+		d := slope(at.Keeps[i].Left)
+		for k, less := range slope(at.Keeps[i].Right) {
+			d[k] -= less
+		}
+		gains, senses = append(gains, d), append(senses, []bool{!at.Keeps[i].Greater})
+	}
+	if at.Hold != nil {
+		gains, senses = append(gains, slope(at.Hold.Q)), append(senses, both)
+	}
+	var out []*netlist.Circuit
+	for i, d := range gains {
+		for _, up := range senses[i] {
+			var names []string
+			var values []float64
+			for _, group := range groups {
+				sum := 0.0
+				for _, name := range group {
+					id, _ := at.Lookup(name)
+					b := at.Slots[id].Bounds
+					sum += d[id] * (b.High - b.Low)
+				}
+				for _, name := range group {
+					id, _ := at.Lookup(name)
+					if d[id] == 0 {
+						continue
+					}
+					b := at.Slots[id].Bounds
+					end := b.Low
+					if sum > 0 == up {
+						end = b.High
+					}
+					names, values = append(names, name), append(values, end)
+				}
+			}
+			if len(names) > 0 {
+				out = append(out, x.set(at, names, values))
+			}
+		}
+	}
+	return out
+}
+
+// best tries everything and sorts it.
+func (x *exhaustive) best(exact []float64) []result {
+	var all []result
+	count := make([]int, len(x.grids))
+	for {
+		ohms := make([]float64, len(count))
+		away := 0.0
+		for i, k := range count {
+			ohms[i] = x.grids[i][k]
+			d := math.Log(ohms[i] / exact[i])
+			away += d * d
+		}
+		r := x.judge(ohms)
+		r.away = away
+		all = append(all, r)
+		i := len(count) - 1
+		for ; i >= 0; i-- {
+			if count[i]++; count[i] < len(x.grids[i]) {
+				break
+			}
+			count[i] = 0
+		}
+		if i < 0 {
+			break
+		}
+	}
+	sort.SliceStable(all, func(i, j int) bool {
+		a, b := all[i], all[j]
+		switch {
+		case a.burnt != b.burnt:
+			return b.burnt
+		case a.unmet != b.unmet:
+			return a.unmet < b.unmet
+		case math.Abs(a.score-b.score) > alike && !(math.IsInf(a.score, 1) && math.IsInf(b.score, 1)):
+			return a.score < b.score
+		}
+		return a.away < b.away-alike
+	})
+	return all
+}
+
+// alike is a difference of scores that rounding may turn round.
+const alike = 1e-8
+
+// gridOf lists the values of a series between two of its values, both included, by the
+// tables of IEC 60063.
+func gridOf(t *testing.T, series string, low, high float64) []float64 {
+	t.Helper()
+	s, ok := quantity.Series(series)
+	if !ok {
+		t.Fatal(series)
+	}
+	var out []float64
+	for decade := -3; decade < 10; decade++ {
+		for _, v := range s.Values() {
+			v, err := strconv.ParseFloat(fmt.Sprintf("%ge%d", v, decade), 64)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if v >= low && v <= high {
+				out = append(out, v)
+			}
+		}
+	}
+	return out
+}
+
+// compare finds values both ways and holds the short list against everything there is.
+func compare(t *testing.T, name, text string, o choose.Options) {
+	t.Helper()
+	c := read(t, name, text)
+	a, err := choose.Find(c, o)
+	if err != nil {
+		t.Fatalf("%v\n%s", err, text)
+	}
+	if !a.Reached {
+		t.Fatalf("out of reach: %+v\n%s", a.Exact.Requirements, text)
+	}
+	x := &exhaustive{t: t, c: c}
+	var exact []float64
+	for _, u := range a.Unknowns {
+		grid := gridOf(t, u.Series, u.Low, u.High)
+		if len(grid) != u.Count {
+			t.Fatalf("%s: %d values searched, %d between %g and %g", u.Name, u.Count, len(grid), u.Low, u.High)
+		}
+		// A grid that was not narrowed begins and ends a decade away: the next value beyond
+		// is further than that.
+		if a.Whole {
+			s, _ := quantity.Series(u.Series)
+			below, _ := s.Neighbours(math.Nextafter(u.Low, 0))
+			_, above := s.Neighbours(math.Nextafter(u.High, math.Inf(1)))
+			if below >= u.Exact/10 || above <= 10*u.Exact || u.Low < u.Exact/10 || u.High > 10*u.Exact {
+				t.Errorf("%s: searched %g .. %g about %g", u.Name, u.Low, u.High, u.Exact)
+			}
+		}
+		x.names, x.grids, exact = append(x.names, u.Name), append(x.grids, grid), append(exact, u.Exact)
+	}
+	all := x.best(exact)
+	if want := min(len(all), max(o.List, 5)); o.List == 0 && len(a.Choices) != want {
+		t.Errorf("%d choices, want %d", len(a.Choices), want)
+	}
+	for i, got := range a.Choices {
+		want := all[i]
+		if len(got.Ratings) > 0 != want.burnt || got.Unmet != want.unmet && want.unmet != math.MaxInt || !(math.Abs(got.Score-want.score) <= alike || got.Score == want.score) {
+			t.Errorf("%s, place %d: %v with %d unmet, score %.12g, ratings %v; exhaustive has %+v\n%s", name, i+1, got.Ohms, got.Unmet, got.Score, got.Ratings, want, text)
+			return
+		}
+		unique := !slices.ContainsFunc(all, func(r result) bool {
+			return !slices.Equal(r.ohms, want.ohms) && r.burnt == want.burnt && r.unmet == want.unmet &&
+				(math.Abs(r.score-want.score) <= alike || r.score == want.score)
+		})
+		if unique && !slices.Equal(got.Ohms, want.ohms) {
+			t.Errorf("%s, place %d: %v, exhaustive has %v", name, i+1, got.Ohms, want.ohms)
+		}
+	}
+}
+
+// The short list is that of an exhaustive search of the stated grid, on every circuit
+// that ships with one to three of its resistors reopened.
+func TestAgainstExhaustiveSearch(t *testing.T) {
+	for _, x := range []struct {
+		circuit, more string
+		reopen        string
+		most          int
+	}{
+		{circuit: "mast-lamp", reopen: "RE=E24"},
+		{circuit: "mast-lamp", reopen: "RE=E6 R1=E3"},
+		{circuit: "pressure-source", reopen: "RE=E96"},
+		{circuit: "pressure-source", reopen: "RE=E6 RB=E6"},
+		{circuit: "pressure-source", reopen: "RE=E6 RB=E3 BRIDGE=E3"},
+		{circuit: "sensor-bank", reopen: "RSET=E12"},
+		{circuit: "sensor-bank", reopen: "RP1=E3 RP2=E3"},
+		{circuit: "sensor-bank", reopen: "RP1=E24 RP2=E24 RP3=E24", most: 27},
+		{circuit: "w1", more: "target LAMP.I = 12 mA within 5%\n", reopen: "RE=E24 R1=E6"},
+		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\ntarget RL8.V = 5 V within 0.5 V\nkeep QO8.Vec > 1 V\n", reopen: "RREF=E6 RL8=E6"},
+		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\n", reopen: "RREF=E3 RN1=E3 RE1=E3"},
+	} {
+		t.Run(x.circuit+" "+x.reopen, func(t *testing.T) {
+			t.Parallel()
+			o := choose.Options{Workers: 2, Most: x.most}
+			for _, word := range strings.Fields(x.reopen) {
+				name, series, _ := strings.Cut(word, "=")
+				o.Reopen = append(o.Reopen, choose.Reopening{Name: name, Series: series})
+			}
+			compare(t, x.circuit, shipped(t, x.circuit)+x.more, o)
+		})
+	}
+}
+
+// The same on random sinks whose base hangs on a divider; everything is drawn within
+// what such circuits have (common practice).
+func TestAgainstExhaustiveSearchOnRandomSinks(t *testing.T) {
+	const sinks, shares = 200, 4
+	for share := range uint64(shares) {
+		t.Run(fmt.Sprint(share), func(t *testing.T) {
+			t.Parallel()
+			for seed := share; seed < sinks; seed += shares {
+				r := rand.New(rand.NewPCG(seed, 1))
+				compare(t, fmt.Sprint("sink ", seed), randomSink(r), choose.Options{})
+			}
+		})
+	}
+}
+
+func randomSink(r *rand.Rand) string {
+	pick := func(of ...string) string { return of[r.IntN(len(of))] }
+	between := func(low, high float64) float64 { return low * math.Pow(high/low, r.Float64()) }
+	var b strings.Builder
+	supply := between(5, 24)
+	fmt.Fprintf(&b, "rail VCC = %.3g V", supply)
+	if r.IntN(2) == 0 {
+		fmt.Fprintf(&b, " (%.3g V .. %.3g V)", 0.9*supply, 1.1*supply)
+	}
+	beta := between(60, 400)
+	fmt.Fprintf(&b, "\npart gp npn Vbe = %.3g V at 1 mA, betaF = %.3g", between(0.58, 0.7), beta)
+	if r.IntN(3) == 0 {
+		fmt.Fprintf(&b, " (%.3g .. %.3g)", beta/2, beta*2)
+	}
+	amps := between(0.2e-3, 20e-3)
+	volts := supply * (0.2 + 0.2*r.Float64())             // at the base
+	re := (volts - 0.65) / amps                           // about; the rest is what is looked for
+	tolerance := pick("", "", " 1%", " 5%")               // of resistors
+	current := amps / 10 * between(0.7, 2)                // through the divider
+	upper, lower := (supply-volts)/current, volts/current // ohm
+	resistor := func(name string, ohms float64, open bool, series string) string {
+		if open {
+			return name + " ? " + series + tolerance
+		}
+		return fmt.Sprintf("%s %.3g%s", name, ohms, tolerance)
+	}
+	// Two are open, or RE alone in a finer series.
+	series := "E3"
+	two := r.IntN(2) == 0
+	if !two {
+		series = pick("E6", "E12", "E24")
+	}
+	fmt.Fprintf(&b, "\npath VCC -> %s -> base -> %s -> gnd\n", resistor("RU", upper, two, series), resistor("RD", lower, false, ""))
+	fmt.Fprintf(&b, "path VCC -> RL %.3g -> out -> Q1 gp base=base -> tail -> %s -> gnd\n", 0.3*supply/amps, resistor("RE", re, true, series))
+	fmt.Fprintf(&b, "target Q1.Ic = %.3g mA within %d%%\n", amps*1e3, 3+r.IntN(20))
+	if r.IntN(2) == 0 {
+		fmt.Fprintf(&b, "keep Q1.Vce > %.2g V\n", 0.1*supply)
+	}
+	if r.IntN(3) == 0 {
+		fmt.Fprintf(&b, "keep VCC.I < %.3g mA\n", 1.3*amps*1e3)
+	}
+	if r.IntN(3) == 0 {
+		fmt.Fprintf(&b, "hold Q1.Ic within %d%%\n", 5+r.IntN(20))
+	}
+	return b.String()
+}
