@@ -39,13 +39,22 @@ func shipped(t testing.TB, name string) string {
 	return string(text)
 }
 
-// An exhaustive search tries every combination of a grid by building each circuit anew
-// with settings and solving it cold: none of what package choose does to be quick.
+// An exhaustive search tries every combination of a grid, each corner solved cold, and
+// gives none up before its end: none of what package choose does to be quick.
 type exhaustive struct {
-	t     *testing.T
-	c     *netlist.Circuit
-	names []string
-	grids [][]float64
+	t       *testing.T
+	c       *netlist.Circuit
+	slots   []netlist.SlotID // of the unknowns
+	grids   [][]float64
+	drawn   [][]netlist.SlotID
+	corners []corner
+}
+
+// A corner is the circuit at one combination of the ends of its ranges, on one system
+// for its tolerances' middles and one for their ends.
+type corner struct {
+	c            *netlist.Circuit
+	plain, moved *mna.System
 }
 
 type result struct {
@@ -56,40 +65,26 @@ type result struct {
 	away  float64
 }
 
-func (x *exhaustive) set(c *netlist.Circuit, names []string, values []float64) *netlist.Circuit {
-	x.t.Helper()
-	settings := make([]netlist.Setting, len(names))
-	for i, name := range names {
-		settings[i] = netlist.Setting{Name: name, Value: strconv.FormatFloat(values[i], 'g', -1, 64)}
-	}
-	out, list := c.With(settings...)
-	if list.HasErrors() {
-		x.t.Fatalf("%v: %+v", settings, list)
-	}
-	return out
-}
-
-// solveCold gives the operating point, nil where there is none that could be stable.
-func solveCold(t *testing.T, c *netlist.Circuit) *solve.Point {
+func newExhaustive(t *testing.T, c *netlist.Circuit, a *choose.Answer) *exhaustive {
 	t.Helper()
-	s, err := mna.New(c)
-	if err != nil {
-		t.Fatal(err)
+	var open []netlist.Setting
+	for _, u := range a.Unknowns {
+		open = append(open, netlist.Setting{Name: u.Name, Value: "1k"})
 	}
-	values := make([]float64, s.Size())
-	var w newton.Work
-	if r := newton.Solve(s, values, &w, newton.Options{}); r.Outcome == newton.Converged && s.LastSign() > 0 {
-		return solve.PointAt(s, values, "cold")
+	c, list := c.With(open...) // from now on every unknown has a number of its own
+	if list.HasErrors() {
+		t.Fatal(list)
 	}
-	res, err := solve.SolveSystem(s, solve.Options{})
-	if err != nil || res.Point.Unstable {
-		return nil
+	x := &exhaustive{t: t, c: c}
+	for _, u := range a.Unknowns {
+		id, ok := c.Lookup(u.Name)
+		if !ok {
+			t.Fatal(u.Name)
+		}
+		x.slots = append(x.slots, id)
 	}
-	return res.Point
-}
-
-// corners are the nominal circuit and every combination of the ends of its ranges.
-func (x *exhaustive) corners(c *netlist.Circuit) []*netlist.Circuit {
+	x.drawn = drawn(c)
+	x.corner(c)
 	var ranged []string
 	for i := range c.Rails {
 		if c.Slots[c.Rails[i].Volts].Bounds.Stated {
@@ -99,27 +94,32 @@ func (x *exhaustive) corners(c *netlist.Circuit) []*netlist.Circuit {
 	if c.Slots[c.Ambient].Bounds.Stated {
 		ranged = append(ranged, "ambient")
 	}
-	out := []*netlist.Circuit{c}
-	if len(ranged) == 0 {
-		return out
-	}
-	for k := range 1 << len(ranged) {
+	for k := 0; len(ranged) > 0 && k < 1<<len(ranged); k++ {
 		var ends []netlist.Setting
 		for i, name := range ranged {
 			ends = append(ends, netlist.Setting{Name: name, Value: []string{"low", "high"}[k>>i&1]})
 		}
 		at, list := c.At(ends...)
 		if list.HasErrors() {
-			x.t.Fatal(list)
+			t.Fatal(list)
 		}
-		out = append(out, at)
+		x.corner(at)
 	}
-	return out
+	return x
 }
 
-// drawn lists the names of all numbers with a tolerance, those of a batch together.
-func drawn(c *netlist.Circuit) [][]string {
-	groups := map[string][]string{}
+func (x *exhaustive) corner(c *netlist.Circuit) {
+	x.t.Helper()
+	plain, err := mna.New(c)
+	if err != nil {
+		x.t.Fatal(err)
+	}
+	x.corners = append(x.corners, corner{c, plain, plain.Clone()})
+}
+
+// drawn lists all numbers with a tolerance, those of a batch together.
+func drawn(c *netlist.Circuit) [][]netlist.SlotID {
+	groups := map[string][]netlist.SlotID{}
 	var order []string
 	add := func(id netlist.SlotID, group string) {
 		if id == netlist.None || !c.Slots[id].Bounds.Stated || math.IsNaN(c.Value(id)) {
@@ -128,7 +128,7 @@ func drawn(c *netlist.Circuit) [][]string {
 		if groups[group] == nil {
 			order = append(order, group)
 		}
-		groups[group] = append(groups[group], c.Slots[id].Name)
+		groups[group] = append(groups[group], id)
 	}
 	for _, id := range c.Givens {
 		add(id, "given "+c.Slots[id].Name)
@@ -148,33 +148,48 @@ func drawn(c *netlist.Circuit) [][]string {
 			add(id, fmt.Sprint(who, " param ", k))
 		}
 	}
-	var out [][]string
+	var out [][]netlist.SlotID
 	for _, g := range order {
 		out = append(out, groups[g])
 	}
 	return out
 }
 
+// cold solves with these numbers from nothing; nil where there is no point that could be
+// stable.
+func cold(s *mna.System, values []float64) *solve.Point {
+	s.Apply(values)
+	x := make([]float64, s.Size())
+	var w newton.Work
+	if r := newton.Solve(s, x, &w, newton.Options{}); r.Outcome == newton.Converged && s.LastSign() > 0 {
+		return solve.PointAt(s, x, "cold")
+	}
+	res, err := solve.SolveSystem(s, solve.Options{})
+	if err != nil || res.Point.Unstable {
+		return nil
+	}
+	return res.Point
+}
+
 // judge tries one combination.
 func (x *exhaustive) judge(ohms []float64) result {
 	r := result{ohms: slices.Clone(ohms)}
-	c := x.set(x.c, x.names, ohms)
-	var unmet map[string]bool
-	var nominal *solve.Point
+	unmet := map[[2]any]bool{}
+	var nominal, holdFrom *solve.Point
 	see := func(p *solve.Point) {
 		if p == nil {
 			r.score = math.Inf(1)
-			for _, v := range solve.Judge(nominal, holdFrom(c, nominal)) {
-				unmet[fmt.Sprint(v.Kind, v.Index)] = true
+			for _, v := range solve.Judge(nominal, holdFrom) {
+				unmet[[2]any{v.Kind, v.Index}] = true
 			}
 			return
 		}
-		for _, v := range solve.Judge(p, holdFrom(c, nominal)) {
+		for _, v := range solve.Judge(p, holdFrom) {
 			if !v.Met {
-				unmet[fmt.Sprint(v.Kind, v.Index)] = true
+				unmet[[2]any{v.Kind, v.Index}] = true
 			}
 			if v.Kind == "target" {
-				target := &c.Targets[v.Index]
+				target := &x.c.Targets[v.Index]
 				width := target.Within
 				if target.Relative {
 					width *= math.Abs(target.Value)
@@ -183,13 +198,20 @@ func (x *exhaustive) judge(ohms []float64) result {
 			}
 		}
 	}
-	unmet = map[string]bool{}
-	for i, at := range x.corners(c) {
-		p := solveCold(x.t, at)
+	for i, at := range x.corners {
+		values := at.c.Values()
+		for k, id := range x.slots {
+			values[id] = ohms[k]
+		}
+		at.c.Propagate(values)
+		p := cold(at.plain, values)
 		if i == 0 {
 			if nominal = p; p == nil {
 				r.score, r.unmet = math.Inf(1), math.MaxInt
 				return r
+			}
+			if x.c.Hold != nil {
+				holdFrom = p
 			}
 		}
 		see(p)
@@ -199,27 +221,17 @@ func (x *exhaustive) judge(ohms []float64) result {
 		for _, caution := range solve.Cautions(p) {
 			r.burnt = r.burnt || caution.Kind == "rating"
 		}
-		for _, turned := range x.turned(at, p) {
-			see(solveCold(x.t, turned))
+		for _, turned := range x.turned(at.c, p, values) {
+			see(cold(at.moved, turned))
 		}
 	}
 	r.unmet = len(unmet)
 	return r
 }
 
-func holdFrom(c *netlist.Circuit, nominal *solve.Point) *solve.Point {
-	if c.Hold == nil {
-		return nil
-	}
-	return nominal
-}
-
-// turned are the circuits with their tolerances against each requirement, each way.
-func (x *exhaustive) turned(at *netlist.Circuit, p *solve.Point) []*netlist.Circuit {
-	groups := drawn(at)
-	if len(groups) == 0 {
-		return nil
-	}
+// turned are the numbers with their tolerances against each requirement: a keep is hurt
+// one way, a target or hold both ways.
+func (x *exhaustive) turned(at *netlist.Circuit, p *solve.Point, values []float64) [][]float64 {
 	slope := func(q *netlist.Expr) []float64 {
 		_, d, err := p.Sensitivity(q)
 		if err != nil {
@@ -227,53 +239,72 @@ func (x *exhaustive) turned(at *netlist.Circuit, p *solve.Point) []*netlist.Circ
 		}
 		return d
 	}
-	both := []bool{false, true}
-	var gains [][]float64
-	var senses [][]bool // a keep is hurt one way, a target or hold both ways
+	var out [][]float64
+	against := func(d []float64, ups ...bool) {
+		for _, up := range ups {
+			if v := x.moved(at, values, d, up); v != nil {
+				out = append(out, v)
+			}
+		}
+	}
 	for i := range at.Targets {
-		gains, senses = append(gains, slope(at.Targets[i].Q)), append(senses, both)
+		against(slope(at.Targets[i].Q), false, true)
 	}
 	for i := range at.Keeps {
 		d := slope(at.Keeps[i].Left)
 		for k, less := range slope(at.Keeps[i].Right) {
 			d[k] -= less
 		}
-		gains, senses = append(gains, d), append(senses, []bool{!at.Keeps[i].Greater})
+		against(d, !at.Keeps[i].Greater)
 	}
 	if at.Hold != nil {
-		gains, senses = append(gains, slope(at.Hold.Q)), append(senses, both)
-	}
-	var out []*netlist.Circuit
-	for i, d := range gains {
-		for _, up := range senses[i] {
-			var names []string
-			var values []float64
-			for _, group := range groups {
-				sum := 0.0
-				for _, name := range group {
-					id, _ := at.Lookup(name)
-					b := at.Slots[id].Bounds
-					sum += d[id] * (b.High - b.Low)
-				}
-				for _, name := range group {
-					id, _ := at.Lookup(name)
-					if d[id] == 0 {
-						continue
-					}
-					b := at.Slots[id].Bounds
-					end := b.Low
-					if sum > 0 == up {
-						end = b.High
-					}
-					names, values = append(names, name), append(values, end)
-				}
-			}
-			if len(names) > 0 {
-				out = append(out, x.set(at, names, values))
-			}
-		}
+		against(slope(at.Hold.Q), false, true)
 	}
 	return out
+}
+
+// moved puts every tolerance at the end that moves what has the derivatives d up or
+// down; nil where none does.
+func (x *exhaustive) moved(at *netlist.Circuit, values, d []float64, up bool) []float64 {
+	out := slices.Clone(values)
+	any := false
+	for _, givens := range []bool{true, false} {
+		for _, group := range x.drawn {
+			if slices.Contains(at.Givens, group[0]) != givens {
+				continue
+			}
+			sum := 0.0
+			for _, id := range group {
+				low, high := ends(&at.Slots[id], values[id])
+				sum += d[id] * (high - low)
+			}
+			for _, id := range group {
+				if d[id] == 0 {
+					continue
+				}
+				any = true
+				low, high := ends(&at.Slots[id], out[id])
+				if out[id] = low; sum > 0 == up {
+					out[id] = high
+				}
+			}
+		}
+		if givens {
+			at.Propagate(out)
+		}
+	}
+	if !any {
+		return nil
+	}
+	return out
+}
+
+// ends of a tolerance; no number here is negative.
+func ends(s *netlist.Slot, value float64) (low, high float64) {
+	if r := s.Bounds.Relative; r != 0 {
+		return value * (1 - r), value * (1 + r)
+	}
+	return s.Bounds.Low, s.Bounds.High
 }
 
 // best tries everything and sorts it.
@@ -354,7 +385,7 @@ func compare(t *testing.T, name, text string, o choose.Options) {
 	if !a.Reached {
 		t.Fatalf("out of reach: %+v\n%s", a.Exact.Requirements, text)
 	}
-	x := &exhaustive{t: t, c: c}
+	x := newExhaustive(t, c, a)
 	var exact []float64
 	for _, u := range a.Unknowns {
 		grid := gridOf(t, u.Series, u.Low, u.High)
@@ -371,7 +402,7 @@ func compare(t *testing.T, name, text string, o choose.Options) {
 				t.Errorf("%s: searched %g .. %g about %g", u.Name, u.Low, u.High, u.Exact)
 			}
 		}
-		x.names, x.grids, exact = append(x.names, u.Name), append(x.grids, grid), append(exact, u.Exact)
+		x.grids, exact = append(x.grids, grid), append(exact, u.Exact)
 	}
 	all := x.best(exact)
 	if want := min(len(all), max(o.List, 5)); o.List == 0 && len(a.Choices) != want {
