@@ -89,7 +89,7 @@ func exactText(ohms float64) string {
 	if ohms < 1 {
 		return number(ohms) + " Ω"
 	}
-	return measured(ohms, "Ω")
+	return Measured(ohms, "Ω")
 }
 
 func exactHeading(a *choose.Answer) string {
@@ -155,7 +155,7 @@ func ReachText(a *choose.Answer, requirement int) string {
 	}
 	t := &a.Circuit.Targets[v.Index]
 	unit := t.Q.Unit.Symbol()
-	return fmt.Sprintf("%s comes to %s at %s; wanted is %s within %s%s", t.Q.Text, measured(v.Value, unit), strings.Join(at, ", "),
+	return fmt.Sprintf("%s comes to %s at %s; wanted is %s within %s%s", t.Q.Text, Measured(v.Value, unit), strings.Join(at, ", "),
 		stated(t.Value, unit), withinText(t.Within, t.Relative, unit), met)
 }
 
@@ -291,7 +291,7 @@ func printChosen(w io.Writer, a *choose.Answer, l Look) {
 	for _, r := range c.Ratings {
 		unit := ratingUnit(r.Rating)
 		wrap(w, "  ", l.text(fmt.Sprintf("%s exceeds its %s: %s, where %s is rated, at %s", r.Subject, ratingName(r.Rating),
-			measured(r.Value, unit), stated(r.Limit, unit), EndsText(a.Circuit, r.At, shownEnds))))
+			Measured(r.Value, unit), stated(r.Limit, unit), EndsText(a.Circuit, r.At, shownEnds))))
 	}
 	if c.Failed != nil {
 		wrap(w, "  ", l.text("no operating point at "+EndsText(a.Circuit, *c.Failed, shownEnds)))
