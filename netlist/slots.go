@@ -128,3 +128,7 @@ func ends(value, relative float64) (low, high float64) {
 	low, high = value*(1-relative), value*(1+relative)
 	return math.Min(low, high), math.Max(low, high)
 }
+
+// Follows tells whether a slot has no number of its own, but that of others: an element's
+// parameter its part's, a value the given value that stands for it.
+func (c *Circuit) Follows(id SlotID) bool { return c.Slots[id].def.follows }

@@ -31,7 +31,7 @@ func TestDiodeResistorByWrightOmega(t *testing.T) {
 		n := rapid.Float64Range(1, 2).Draw(r, "n")
 		text := fmt.Sprintf("rail VS = %s V\npart d diode Isat = %s A, n = %s\npath VS -> R1 %s -> a -> D1 d -> gnd\n",
 			number(volts), number(isat), number(n), number(ohms))
-		c, list := netlist.Read("closed.bias", []byte(text), devices.Catalogue(), alone{})
+		c, list := netlist.Read("closed.bias", []byte(text), devices.Catalogue(), library{})
 		if list.HasErrors() {
 			r.Fatalf("%v\n%s", list, text)
 		}

@@ -6,6 +6,7 @@ import (
 	"testing"
 
 	"biaswright/devices"
+	"biaswright/devices/shelf"
 
 	"biaswright/netlist"
 	"biaswright/solve"
@@ -20,7 +21,7 @@ const (
 // read resolves a text of this package's own making.
 func read(t *testing.T, name string, text []byte) *netlist.Circuit {
 	t.Helper()
-	c, list := netlist.Read(name, text, devices.Catalogue(), alone{})
+	c, list := netlist.Read(name, text, devices.Catalogue(), library{})
 	if c == nil {
 		for _, d := range list {
 			t.Errorf("%s:%d:%d: %s", name, d.Span.Start.Line, d.Span.Start.Column, d.Message)
@@ -94,10 +95,7 @@ func within(got, want, rel, abs float64) bool {
 	return math.Abs(got-want) <= max(rel*math.Abs(want), abs)
 }
 
-// alone is a source for texts that use no others.
-type alone struct{}
+// library is the shelf that ships, and the files beside a text.
+type library struct{ netlist.Files }
 
-func (alone) Open(_, path string) (string, []byte, error) {
-	return "", nil, errors.New(path + ": no files here")
-}
-func (alone) Shelf(string) ([]byte, bool) { return nil, false }
+func (library) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
