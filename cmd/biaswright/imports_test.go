@@ -70,17 +70,22 @@ var rules = map[string]row{
 		tests: "devices devices/shelf",
 	},
 
+	"sweep/compare": {
+		code:  "netlist netlist/quantity solve sweep/limits",
+		tests: "devices sweep",
+	},
+
 	"cmd/biaswright": {code: "cmd/biaswright/internal/cli"},
 	"cmd/biaswright/internal/cli": {
-		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits sweep/choose cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
+		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits sweep/choose sweep/compare cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
 	},
 	"cmd/biaswright/internal/figure": {},
 	"cmd/biaswright/internal/chart": {
-		code:  "netlist netlist/quantity solve sweep sweep/limits cmd/biaswright/internal/figure cmd/biaswright/internal/render",
+		code:  "netlist netlist/quantity solve sweep sweep/limits sweep/compare cmd/biaswright/internal/figure cmd/biaswright/internal/render",
 		tests: "devices devices/shelf netlist/diag",
 	},
 	"cmd/biaswright/internal/render": {
-		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits sweep/choose",
+		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits sweep/choose sweep/compare",
 		tests: "netlist/syntax devices/shelf",
 	},
 }

@@ -26,6 +26,9 @@ type Options struct {
 	Within *Within
 	// Near, where set, chooses among several nominal points, as solve.Options does.
 	Near map[netlist.NodeID]float64
+	// NoCounts leaves out how many emitters may stand in a row, which takes as long
+	// as all the rest.
+	NoCounts bool
 	// Workers is how many axes are followed at a time; 0 is one.
 	Workers int
 }
@@ -126,7 +129,7 @@ func Find(c *netlist.Circuit, o Options) (*Answer, error) {
 		return nil, err
 	}
 	if len(c.Load) > 0 {
-		a.loadAnswers(c)
+		a.loadAnswers(c, !o.NoCounts)
 	}
 	return a, nil
 }

@@ -38,14 +38,17 @@ type Count struct {
 	Most  int
 }
 
-// loadAnswers reads the window off the limits, and counts.
-func (a *Answer) loadAnswers(c *netlist.Circuit) {
+// loadAnswers reads the window off the limits, and counts where that is asked for.
+func (a *Answer) loadAnswers(c *netlist.Circuit, counts bool) {
 	l := &Load{Low: math.NaN(), High: math.NaN(), MaxOhms: math.NaN()}
 	a.Load = l
 	for i := range a.Limits {
 		if lim := &a.Limits[i]; lim.Axis == netlist.LoadName {
 			a.window(c, l, lim)
 		}
+	}
+	if !counts {
+		return
 	}
 	for _, i := range c.Load {
 		if c.Elements[i].Kind == netlist.JunctionPart {

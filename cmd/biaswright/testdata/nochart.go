@@ -20,6 +20,9 @@ func (chartFile) oneFile(*cli.Context) error      { return nil }
 func (*runner) illustrate(*request, *render.Answer)                   {}
 func (*runner) illustrateLimits(*limitsRequest, *render.LimitsAnswer) {}
 
+func (*runner) illustrateComparison(chartFile, *render.CompareAnswer) {}
+func (chartFile) wanted() bool                                        { return false }
+
 type sweepDrawing struct{}
 
 func (*runner) sweepDrawing(*sweepRequest, *render.SweepAnswer, *sweep.Plan) sweepDrawing {

@@ -13,6 +13,8 @@ type Curve struct {
 	X, Y []float64
 	// Doubtful marks points that cannot be stable; nil where all may be.
 	Doubtful []bool
+	// Look says which strokes, shape and paint the curve has: those of the Look-th.
+	Look int
 }
 
 // A Mark is a value of the horizontal axis at which something ends.
@@ -321,7 +323,7 @@ func (fr *frame) curves() {
 // stable are dotted.
 func (fr *frame) curve(i int) {
 	c := &fr.p.Curves[i]
-	paint := figure.Curve(i)
+	paint := figure.Curve(c.Look)
 	var piece []figure.Point
 	doubtful := false
 	flush := func() {
@@ -329,10 +331,10 @@ func (fr *frame) curve(i int) {
 		case len(piece) == 0:
 		case len(piece) == 1 || fr.p.Steps:
 			for _, pt := range piece {
-				fr.shape(i, pt)
+				fr.shape(c.Look, pt)
 			}
 		default:
-			l := &figure.Line{Points: piece, Paint: paint, Width: 2, Dash: strokes[i%len(strokes)]}
+			l := &figure.Line{Points: piece, Paint: paint, Width: 2, Dash: strokes[c.Look%len(strokes)]}
 			if doubtful {
 				l.Width, l.Dash = 1, []float64{1, 2}
 			}
@@ -386,13 +388,13 @@ func (fr *frame) points(i int) {
 	for k := range shapes {
 		at := (2*k+1)*n/(2*shapes) + i*n/(2*shapes*max(1, len(fr.p.Curves)))
 		if at < n && c.Y[at] >= fr.y.low && c.Y[at] <= fr.y.high && !(fr.p.Log && c.X[at] <= 0) {
-			fr.shape(i, figure.Point{X: fr.x.place(c.X[at]), Y: fr.y.place(c.Y[at])})
+			fr.shape(c.Look, figure.Point{X: fr.x.place(c.X[at]), Y: fr.y.place(c.Y[at])})
 		}
 	}
 }
 
-// shape draws curve i's own shape: six of them, filled for the first six curves and
-// hollow for the next.
+// shape draws the i-th look's own shape: six of them, filled for the first six looks
+// and hollow for the next.
 func (fr *frame) shape(i int, at figure.Point) {
 	paint := figure.Curve(i)
 	fill := paint
@@ -456,9 +458,9 @@ func (fr *frame) curveNames() {
 	places := apart(wanted, small*line, fr.top, fr.bottom+below)
 	for k, e := range ends {
 		x := fr.right + leader
-		l := &figure.Line{Points: []figure.Point{e.at, {X: fr.right + 3, Y: places[k]}, {X: x - 2, Y: places[k]}}, Paint: figure.Curve(e.curve), Width: 0.75}
+		l := &figure.Line{Points: []figure.Point{e.at, {X: fr.right + 3, Y: places[k]}, {X: x - 2, Y: places[k]}}, Paint: figure.Curve(fr.p.Curves[e.curve].Look), Width: 0.75}
 		fr.f.Add(l)
-		fr.f.Add(&figure.Text{At: figure.Point{X: x, Y: places[k] + small/3}, Text: cut(fr.p.Curves[e.curve].Name), Size: small, Paint: figure.Curve(e.curve)})
+		fr.f.Add(&figure.Text{At: figure.Point{X: x, Y: places[k] + small/3}, Text: cut(fr.p.Curves[e.curve].Name), Size: small, Paint: figure.Curve(fr.p.Curves[e.curve].Look)})
 	}
 }
 

@@ -96,6 +96,9 @@ func (s *Sweep) plot(unit quantity.Unit) *Plot {
 		s.bounds(p, e)
 	}
 	p.YName = strings.Join(names, ", ")
+	for i := range p.Curves {
+		p.Curves[i].Look = i
+	}
 	if len(names) == 1 { // the axis says what is shown; the curves say where
 		for i := range p.Curves {
 			p.Curves[i].Name = strings.TrimPrefix(p.Curves[i].Name, names[0]+" ")

@@ -139,6 +139,7 @@ func (r *runner) app() *cli.App {
 			r.solveCommand(),
 			r.sweepCommand(),
 			r.limitsCommand(),
+			r.compareCommand(),
 			r.chooseCommand(),
 			r.tidyCommand(),
 			r.partsCommand(),

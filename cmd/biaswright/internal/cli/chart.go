@@ -76,6 +76,11 @@ func (r *runner) illustrateLimits(q *limitsRequest, a *render.LimitsAnswer) {
 	}
 }
 
+func (r *runner) illustrateComparison(f chartFile, a *render.CompareAnswer) {
+	fig, err := chart.Compare(a)
+	r.drawIf(f, fig, err)
+}
+
 // A sweepDrawing takes a sweep's rows as they come; without a chart it lets them pass.
 type sweepDrawing struct {
 	r    *runner

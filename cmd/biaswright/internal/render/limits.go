@@ -267,11 +267,13 @@ func printRegulation(w io.Writer, a *limits.Answer, l Look) {
 	t.print(w, l)
 }
 
-// resistanceText writes an output resistance; what lies beyond any insulation is
-// rounding.
+// beyondMeasure is a resistance in ohm that lies beyond any insulation: what is left of
+// a slope there is rounding.
+const beyondMeasure = 1e15
+
+// resistanceText writes an output resistance.
 func resistanceText(ohms float64) string {
-	const beyond = 1e15
-	if ohms > beyond {
+	if ohms > beyondMeasure {
 		return "beyond measure"
 	}
 	return Measured(ohms, "Ω")
