@@ -11,16 +11,21 @@
 //  1. no stated rating is exceeded at any end of the ranges;
 //  2. the number of requirements (targets, keeps, the hold) that are not met somewhere
 //     there: the fewer the better;
-//  3. the largest deviation of a target there, in units of its band: |Q - target|
+//  3. where all are met, fewer resistors;
+//  4. the largest deviation of a target there, in units of its band: |Q - target|
 //     over the width that the file states, 1 at the band's edge;
-//  4. the distance from the exact values, Σ ln²(R/R_exact), where two combinations
+//  5. the distance from the exact values, Σ ln²(R/R_exact), where two combinations
 //     deviate alike;
-//  5. the lower values.
+//  6. the lower values.
 //
 // The grid is every value of each series from a tenth of the exact value to ten times
 // it, in all combinations. All of it is searched: the deviation at the nominal point is a
 // lower bound of the worst one, so that most combinations need one solution only, and
 // none is passed over that could still be among the best.
+//
+// Two resistors in series or parallel stand for one value where that was asked for and
+// no combination of single ones meets everything. The pairs tried are those nearest to
+// the values, preferred or not, whose worst deviation is least.
 package choose
 
 import (
@@ -49,14 +54,27 @@ type Options struct {
 	Near map[netlist.NodeID]float64
 	// Workers is how many goroutines share the grid; 0 is one. The answer is the same.
 	Workers int
-	// Most bounds the combinations tried; 0 is MostCombinations. The grid is narrowed
-	// about the exact values where it is larger.
+	// Pair admits two resistors for a value where one will not do.
+	Pair bool
+	// Most bounds the combinations tried. The grid is narrowed about the exact values
+	// where it is larger. 0 is 8 million for up to three unknowns, which holds three
+	// values of E96 over two decades each, and 300 000, some seconds, for more.
 	Most int
 }
 
-// MostCombinations is the largest grid that is searched whole: three values of E96,
-// each over two decades, are 7.2 million.
-const MostCombinations = 8_000_000
+func (o *Options) fill(unknowns int) {
+	const list, three, mostOfThree, mostOfMore = 5, 3, 8_000_000, 300_000
+	if o.List <= 0 {
+		o.List = list
+	}
+	switch {
+	case o.Most > 0:
+	case unknowns <= three:
+		o.Most = mostOfThree
+	default:
+		o.Most = mostOfMore
+	}
+}
 
 // An Unknown is a resistance to be chosen.
 type Unknown struct {
@@ -101,12 +119,18 @@ type Answer struct {
 	// each side of every exact value.
 	Combinations int
 	Whole        bool
-	Choices      []Choice // the best first
+	// Ideal is the circuit at the values, preferred or not, whose worst deviation is
+	// least, where pairs were tried because no single resistors would do; else nil.
+	Ideal   *Choice
+	Choices []Choice // the best first
 }
 
 // A Choice is a value for each unknown, and what the circuit does with them.
 type Choice struct {
 	Ohms []float64 // by unknown
+	// Pairs are the two resistors that make up a value, by unknown: nil for one, and
+	// nil altogether where every value is one resistor.
+	Pairs []*Pair
 	// Unmet counts the requirements that are not met somewhere in the stated ranges
 	// and tolerances. Score is the largest deviation of a target there, in units of
 	// its band; +Inf where some corner has no operating point.
@@ -161,16 +185,11 @@ func wrong(code string, at diag.Span, hint, format string, args ...any) error {
 // must be mended, a *solve.Failure where no values give an operating point, or says
 // what went wrong.
 func Find(c *netlist.Circuit, o Options) (*Answer, error) {
-	if o.List <= 0 {
-		o.List = 5
-	}
-	if o.Most <= 0 {
-		o.Most = MostCombinations
-	}
 	unknowns, err := unknownsOf(c, o.Reopen)
 	if err != nil {
 		return nil, err
 	}
+	o.fill(len(unknowns))
 	if len(c.Targets) == 0 {
 		return nil, wrong("no-target", diag.Span{File: c.File}, "add: target LAMP.I = 15 mA within 10%", "there is no target that the open values could meet")
 	}

@@ -14,7 +14,8 @@ import (
 // An entry is a combination with its key.
 type entry struct {
 	key
-	count []int // places in the unknowns' grids
+	ohms  []float64
+	pairs []*Pair // nil where every value is one resistor
 }
 
 // A short is the best so many entries, the best first.
@@ -36,7 +37,8 @@ func (l *short) add(e entry) {
 		return
 	}
 	at := sort.Search(len(l.entries), func(i int) bool { return e.key.less(l.entries[i].key) })
-	l.entries = slices.Insert(l.entries, at, entry{e.key, slices.Clone(e.count)})
+	e.ohms, e.pairs = slices.Clone(e.ohms), slices.Clone(e.pairs)
+	l.entries = slices.Insert(l.entries, at, e)
 	l.entries = l.entries[:min(len(l.entries), l.most)]
 }
 
@@ -85,15 +87,26 @@ func (a *Answer) search(o Options) error {
 			best.add(e)
 		}
 	}
+	if err := a.list(&best, o); err != nil || !o.Pair || a.Choices[0].Met() {
+		return err
+	}
+	ideal, err := a.detail(a.pairs(all[0].t, &best), o.Near)
+	if err != nil {
+		return err
+	}
+	a.Ideal = &ideal
+	return a.list(&best, o)
+}
+
+// list fills in the choices.
+func (a *Answer) list(best *short, o Options) error {
+	a.Choices = nil
 	for _, e := range best.entries {
-		ohms := make([]float64, len(a.Unknowns))
-		for i, k := range e.count {
-			ohms[i] = a.Unknowns[i].grid[k]
-		}
-		c, err := a.detail(ohms, o.Near)
+		c, err := a.detail(e.ohms, o.Near)
 		if err != nil {
 			return err
 		}
+		c.Pairs = e.pairs
 		a.Choices = append(a.Choices, c)
 	}
 	return nil
@@ -160,7 +173,7 @@ func (s *searcher) try(count []int) {
 	}
 	limit := s.best.limit()
 	if k = s.t.judge(s.ohms, k, limit); k.less(limit) {
-		s.best.add(entry{k, count})
+		s.best.add(entry{k, s.ohms, nil})
 	}
 }
 

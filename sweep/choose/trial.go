@@ -274,9 +274,10 @@ func followers(c *netlist.Circuit) []bool {
 type key struct {
 	burnt bool // a rating is exceeded
 	unmet int
+	pairs int // resistors more than one a value
 	score float64
 	away  float64
-	at    int // place in the grid
+	at    int // place in the grid; pairs stand behind it
 }
 
 // worstKey is behind every other.
@@ -291,6 +292,8 @@ func (a key) less(b key) bool {
 		return b.burnt
 	case a.unmet != b.unmet:
 		return a.unmet < b.unmet
+	case a.unmet == 0 && a.pairs != b.pairs:
+		return a.pairs < b.pairs
 	case !alike(a.score, b.score, parts):
 		return a.score < b.score
 	case !alike(a.away, b.away, parts):

@@ -30,6 +30,7 @@ func (r *runner) chooseCommand() *cli.Command {
 		Description: chooseObjective,
 		Flags: []cli.Flag{
 			&cli.StringSliceFlag{Name: "reopen", Usage: "`NAME=SERIES`: choose a stated resistance anew, such as RE=E24; may be repeated"},
+			&cli.BoolFlag{Name: "pair", Usage: "try two resistors in series or parallel where one will not do", DisableDefaultText: true},
 			&cli.IntFlag{Name: "list", Usage: "the best `N` choices", Value: defaultList},
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
@@ -45,8 +46,8 @@ func (r *runner) chooseCommand() *cli.Command {
 type chooseRequest struct {
 	request
 	reopen        []choose.Reopening
+	pair, json    bool
 	list, workers int
-	json          bool
 }
 
 func (r *runner) choose(c *cli.Context) error {
@@ -55,7 +56,7 @@ func (r *runner) choose(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
-	q := &chooseRequest{request: *base, list: c.Int("list"), workers: c.Int("workers"), json: c.Bool("json")}
+	q := &chooseRequest{request: *base, list: c.Int("list"), workers: c.Int("workers"), pair: c.Bool("pair"), json: c.Bool("json")}
 	for _, text := range c.StringSlice("reopen") {
 		s, err := setting("reopen", text, "NAME=SERIES, such as RE=E24")
 		if err != nil {
@@ -116,7 +117,7 @@ func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *t
 		return refuse(wrong)
 	}
 	a := &render.ChooseAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
-	a.Found, err = choose.Find(c, choose.Options{Reopen: q.reopen, List: q.list, Near: near, Workers: q.workers})
+	a.Found, err = choose.Find(c, choose.Options{Reopen: q.reopen, List: q.list, Near: near, Workers: q.workers, Pair: q.pair})
 	var mend *choose.Error
 	switch {
 	case errors.As(err, &mend):

@@ -172,44 +172,109 @@ func endOfRange(ohms float64) string {
 	return ""
 }
 
-// printChoices prints the short list, the exact values above it.
+// A listed is a line of the short list: its name, and what each value is called.
+type listed struct {
+	name   string
+	c      *choose.Choice
+	values []string
+}
+
+// listOf is the short list, the exact values above it.
+func listOf(a *choose.Answer) []listed {
+	exact := func(name string, c *choose.Choice) listed {
+		out := listed{name: name, c: c}
+		for _, ohms := range c.Ohms {
+			out.values = append(out.values, exactText(ohms))
+		}
+		return out
+	}
+	out := []listed{exact(exactHeading(a), &a.Exact)}
+	if a.Ideal != nil {
+		out = append(out, exact("ideal", a.Ideal))
+	}
+	for k := range a.Choices {
+		one := listed{name: strconv.Itoa(k + 1), c: &a.Choices[k]}
+		for i := range a.Unknowns {
+			one.values = append(one.values, valueText(a, one.c, i))
+		}
+		out = append(out, one)
+	}
+	return out
+}
+
+// printChoices prints the short list. Values that are too wide for columns stand below
+// it.
 func printChoices(w io.Writer, a *choose.Answer, l Look) {
-	n := len(a.Unknowns)
-	nominal, worst, drawn, verdict := n+1, n+2, n+3, n+4
-	cols := n + 5
+	lines := listOf(a)
+	beside := besides(lines)
+	n := 0
+	if beside {
+		n = len(a.Unknowns)
+	}
+	nominal, worst, drawn, verdict, cols := n+1, n+2, n+3, n+4, n+5
 	t := table{numeric: make([]bool, cols), most: make([]int, cols)}
 	h := make([]cell, cols)
 	h[0] = cell{"Choices", bold}
-	for i := range a.Unknowns {
+	for i := range n {
 		h[i+1] = cell{a.Unknowns[i].Name, faint}
 	}
-	draws := []float64{a.Exact.Draw}
-	for i := range a.Choices {
-		draws = append(draws, a.Choices[i].Draw)
+	var draws []float64
+	for _, line := range lines {
+		draws = append(draws, line.c.Draw)
 	}
 	s := scaleFor(draws...)
 	h[nominal], h[worst] = cell{"nominal", faint}, cell{"worst", faint}
 	h[drawn] = cell{l.text(heading("drawn", s, "A")), faint}
 	t.numeric[nominal], t.numeric[worst], t.numeric[drawn] = true, true, true
 	t.add(row{head: true, cells: h})
-	line := func(name string, c *choose.Choice, value func(i int) string) {
+	for _, line := range lines {
 		r := make([]cell, cols)
-		r[0] = cell{"  " + name, noInk}
-		for i := range a.Unknowns {
-			r[i+1] = cell{l.text(value(i)), noInk}
+		r[0] = cell{"  " + line.name, noInk}
+		for i := range n {
+			r[i+1] = cell{l.text(line.values[i]), noInk}
 		}
-		r[nominal], r[worst] = cell{bands(c.NominalScore()), noInk}, cell{bands(c.Score), noInk}
-		r[drawn] = cell{number(s.in(c.Draw)), noInk}
-		r[verdict] = verdictCell(c)
+		r[nominal], r[worst] = cell{bands(line.c.NominalScore()), noInk}, cell{bands(line.c.Score), noInk}
+		r[drawn] = cell{number(s.in(line.c.Draw)), noInk}
+		r[verdict] = verdictCell(line.c)
 		t.add(row{cells: r})
 	}
-	line(exactHeading(a), &a.Exact, func(i int) string { return exactText(a.Exact.Ohms[i]) })
-	for k := range a.Choices {
-		c := &a.Choices[k]
-		line(strconv.Itoa(k+1), c, func(i int) string { return valueText(a, c, i) })
-	}
 	t.print(w, l)
+	if !beside {
+		for _, line := range lines {
+			var words []string
+			for i, v := range line.values {
+				words = append(words, a.Unknowns[i].Name+" "+v+",")
+			}
+			last := len(words) - 1
+			words[last] = strings.TrimSuffix(words[last], ",")
+			for i := range words {
+				words[i] = l.text(words[i])
+			}
+			flow(w, fmt.Sprintf("  %-7s", line.name), words)
+		}
+	}
 	wrap(w, "", l.text("Nominal and worst: the largest deviation of a target, where 1 is the edge of its band. Behind a value: the coarsest series that has it; E24 is no part of E48 to E192."))
+	if a.Ideal != nil {
+		says := "No single resistors meet everything, so pairs were tried: + in series, ∥ in parallel. Ideal: the values, preferred or not, whose worst deviation is least"
+		if !a.Ideal.Met() {
+			says += "; even they do not meet everything"
+		}
+		wrap(w, "", l.text(says+"."))
+	}
+}
+
+// besides tells that the values leave room for the figures beside them.
+func besides(lines []listed) bool {
+	const figures = 50 // columns
+	sum := 0
+	for i := range lines[0].values {
+		widest := 0
+		for _, line := range lines {
+			widest = max(widest, width(line.values[i]))
+		}
+		sum += widest + gap
+	}
+	return sum <= Columns-figures
 }
 
 // bands writes a deviation in units of a band.
@@ -231,9 +296,20 @@ func verdictCell(c *choose.Choice) cell {
 	return cell{fmt.Sprintf("%d NOT MET", c.Unmet), bad}
 }
 
-// valueText writes a chosen value with the coarsest series of its family that has it.
+// valueText writes a chosen value, or the two that make it up, each with the coarsest
+// series of its family that has it.
 func valueText(a *choose.Answer, c *choose.Choice, i int) string {
-	return fmt.Sprintf("%s %s", stated(c.Ohms[i], "Ω"), coarsest(c.Ohms[i], a.Unknowns[i].Series))
+	one := func(ohms float64) string {
+		return stated(ohms, "Ω") + " " + coarsest(ohms, a.Unknowns[i].Series)
+	}
+	switch p := c.Pair(i); {
+	case p == nil:
+		return one(c.Ohms[i])
+	case p.Parallel:
+		return one(p.A) + " ∥ " + one(p.B)
+	default:
+		return one(p.A) + " + " + one(p.B)
+	}
 }
 
 // coarsest is the coarsest of the series in which the one asked for is nested that has

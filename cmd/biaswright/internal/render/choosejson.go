@@ -21,6 +21,7 @@ type chooseJSON struct {
 	Reached  *bool         `json:"reached,omitempty"`
 	Says     *[]string     `json:"says,omitempty"` // how near the targets come, out of reach
 	Search   *searchedJSON `json:"search,omitempty"`
+	Ideal    *choiceJSON   `json:"ideal,omitempty"` // where pairs were tried
 	Choices  *[]choiceJSON `json:"choices,omitempty"`
 	Warnings diag.List     `json:"warnings"`
 }
@@ -58,9 +59,15 @@ type choiceJSON struct {
 }
 
 type chosenJSON struct {
-	Element string   `json:"element"`
-	Ohms    num      `json:"ohms"`
-	In      []string `json:"in"`
+	Element   string         `json:"element"`
+	Ohms      num            `json:"ohms"`
+	Join      *string        `json:"join"` // null for one resistor
+	Resistors []resistorJSON `json:"resistors"`
+}
+
+type resistorJSON struct {
+	Ohms num      `json:"ohms"`
+	In   []string `json:"in"`
 }
 
 type requirementJSON struct {
@@ -116,6 +123,10 @@ func ChooseJSON(a *ChooseAnswer) any {
 		u := &found.Unknowns[i]
 		j.Search.Values = append(j.Search.Values, gridRangeJSON{u.Name, num(u.Low), num(u.High), u.Count})
 	}
+	if found.Ideal != nil {
+		ideal := choice(found, found.Ideal)
+		j.Ideal = &ideal
+	}
 	for i := range found.Choices {
 		*j.Choices = append(*j.Choices, choice(found, &found.Choices[i]))
 	}
@@ -128,7 +139,7 @@ func choice(a *choose.Answer, c *choose.Choice) choiceJSON {
 		Rails: list[railJSON]{}, Requirements: []requirementJSON{}, Ratings: []ratingJSON{},
 	}
 	for i := range a.Unknowns {
-		j.Values = append(j.Values, chosenJSON{a.Unknowns[i].Name, num(c.Ohms[i]), append([]string{}, choose.SeriesOf(c.Ohms[i])...)})
+		j.Values = append(j.Values, chosen(a.Unknowns[i].Name, c, i))
 	}
 	for i, r := range c.Nominal.Rails {
 		j.Rails.add(a.Circuit.Rails[i].Name, railJSON{num(r.V), num(r.I), num(r.P)})
@@ -149,6 +160,21 @@ func choice(a *choose.Answer, c *choose.Choice) choiceJSON {
 		j.NoPoint = &at
 	}
 	return j
+}
+
+func chosen(name string, c *choose.Choice, i int) chosenJSON {
+	one := func(ohms float64) resistorJSON {
+		return resistorJSON{num(ohms), append([]string{}, choose.SeriesOf(ohms)...)}
+	}
+	p := c.Pair(i)
+	if p == nil {
+		return chosenJSON{Element: name, Ohms: num(c.Ohms[i]), Resistors: []resistorJSON{one(c.Ohms[i])}}
+	}
+	join := "series"
+	if p.Parallel {
+		join = "parallel"
+	}
+	return chosenJSON{name, num(c.Ohms[i]), &join, []resistorJSON{one(p.A), one(p.B)}}
 }
 
 func endsJSON(ends []choose.End) list[num] {

@@ -47,7 +47,7 @@ func (l Look) glyph(g glyph) string {
 }
 
 // ascii spells what a plain screen cannot show.
-var ascii = strings.NewReplacer("Ω", "ohm", "Ω", "ohm", "µ", "u", "μ", "u", "°C", "degC", "→", "->", "×", "x", "±", "+-", "…", "...")
+var ascii = strings.NewReplacer("Ω", "ohm", "Ω", "ohm", "µ", "u", "μ", "u", "°C", "degC", "→", "->", "∥", "||", "×", "x", "±", "+-", "…", "...")
 
 // text gives s as this look shows it. Names stay as the file has them; what a
 // terminal would obey becomes '?', and in a plain look what is left beyond ASCII
