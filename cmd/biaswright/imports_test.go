@@ -66,7 +66,7 @@ var rules = map[string]row{
 		tests: "devices devices/shelf solve/reftest",
 	},
 	"sweep/choose": {
-		code:  "netlist netlist/diag netlist/quantity solve solve/mna solve/newton",
+		code:  "netlist netlist/diag netlist/quantity netlist/syntax solve solve/mna solve/newton",
 		tests: "devices devices/shelf",
 	},
 

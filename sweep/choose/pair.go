@@ -68,21 +68,27 @@ func (a *Answer) pairs(t *trial, best *short) (ideal []float64) {
 }
 
 // ideal looks for the values, as ln R, whose worst deviation is least, by a simplex
-// search from the exact ones.
+// search from the exact ones and within a decade of them.
 func (s *seeker) ideal(ohms []float64) []float64 {
 	u := make([]float64, len(ohms))
 	for i, v := range ohms {
 		u[i] = math.Log(v)
 	}
+	exact := slices.Clone(u)
 	best, bestKey := u, worstKey
 	problem := optimize.Problem{Func: func(u []float64) float64 {
-		k := s.t.judge(s.take(u), key{}, worstKey)
+		inside, beyond := make([]float64, len(u)), 0.0
+		for i, v := range u {
+			inside[i] = math.Max(exact[i]-math.Ln10, math.Min(exact[i]+math.Ln10, v))
+			beyond += math.Abs(v - inside[i])
+		}
+		k := s.t.judge(s.take(inside), key{}, worstKey)
 		if k.less(bestKey) {
-			best, bestKey = slices.Clone(u), k
+			best, bestKey = inside, k
 		}
 		// What is not met at all counts more than any deviation that could be.
 		const burnt, unmet, nowhere = 1e9, 1e6, 1e5
-		f := math.Min(k.score, nowhere) + unmet*float64(k.unmet)
+		f := math.Min(k.score, nowhere) + unmet*float64(k.unmet) + beyond
 		if k.burnt {
 			f += burnt
 		}
@@ -100,16 +106,19 @@ func (s *seeker) ideal(ohms []float64) []float64 {
 // is 0. Of two, the larger is at most a hundred times the other: one further off acts by
 // less than a tolerance.
 func near(series string, ohms float64, most int) []*Pair {
-	const widest = 100
+	const (
+		widest = 100
+		slack  = 2 // in a coarse series the nearest pair may be that far off
+	)
 	s, _ := quantity.Series(series)
 	below, above := s.Neighbours(ohms)
 	out := []*Pair{{A: below}, {A: above}}
-	for _, a := range preferred(series, ohms/2, ohms) { // the larger of two in series
+	for _, a := range preferred(series, ohms/2/slack, ohms*slack) { // the larger of two in series
 		for _, b := range preferred(series, a/widest, a) {
 			out = append(out, &Pair{A: a, B: b})
 		}
 	}
-	for _, b := range preferred(series, ohms, 2*ohms) { // the smaller of two in parallel
+	for _, b := range preferred(series, ohms/slack, 2*ohms*slack) { // the smaller of two in parallel
 		for _, a := range preferred(series, b, widest*b) {
 			out = append(out, &Pair{A: a, B: b, Parallel: true})
 		}

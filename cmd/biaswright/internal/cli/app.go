@@ -78,7 +78,7 @@ func Main(args []string, in io.Reader, out, errs io.Writer) int {
 
 func (r *runner) run(args []string) int {
 	app := r.app()
-	args, err := arrange(args, valued(app))
+	args, err := arrange(args, valued(app, commandIn(app, args[1:])))
 	if err == nil {
 		err = app.Run(args)
 	}

@@ -1,15 +1,34 @@
 package cli
 
 import (
+	"slices"
 	"strings"
 
 	"github.com/urfave/cli/v2"
 )
 
-// valued lists the options of all commands that take a value.
-func valued(app *cli.App) map[string]bool {
+// commandIn finds the command among the arguments: the first word that is one's name;
+// "" where there is none.
+func commandIn(app *cli.App, args []string) string {
+	for _, a := range args {
+		if a == "--" {
+			return ""
+		}
+		if slices.Contains(commandNames(app), a) {
+			return a
+		}
+	}
+	return ""
+}
+
+// valued lists the options of a command that take a value, or those of all commands for
+// "". One name may be a switch here and take a value there.
+func valued(app *cli.App, command string) map[string]bool {
 	names := map[string]bool{}
 	for _, c := range app.Commands {
+		if command != "" && c.Name != command {
+			continue
+		}
 		for _, f := range c.Flags {
 			d, ok := f.(cli.DocGenerationFlag)
 			if !ok || !d.TakesValue() {

@@ -1,6 +1,7 @@
 package cli
 
 import (
+	"strings"
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
@@ -38,15 +39,36 @@ func TestArrangePutsOptionsBeforeFiles(t *testing.T) {
 	}
 }
 
+// tidy's --write is a switch, choose's has a value.
+func TestValuedOptionsAreTheCommandsOwn(t *testing.T) {
+	r := &runner{}
+	for args, want := range map[string][]string{
+		"tidy --write a":       {"tidy", "--write", "--", "a"},
+		"--write tidy a":       {"tidy", "--write", "--", "a"},
+		"choose a --write b":   {"choose", "--write", "b", "--", "a"},
+		"choose --write b a":   {"choose", "--write", "b", "--", "a"},
+		"tidy --write -- list": {"tidy", "--write", "--", "list"},
+	} {
+		in := append([]string{"biaswright"}, strings.Fields(args)...)
+		got, err := arrange(in, valued(r.app(), commandIn(r.app(), in[1:])))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if d := cmp.Diff(append([]string{"biaswright"}, want...), got); d != "" {
+			t.Errorf("%s: %s", args, d)
+		}
+	}
+}
+
 // Every option that the commands declare is known to arrange.
 func TestValuedOptions(t *testing.T) {
 	r := &runner{}
-	got := valued(r.app())
+	got := valued(r.app(), "")
 	if d := cmp.Diff(map[string]bool{
 		"set": true, "at": true,
 		"chart": true, "near": true, "within": true, "workers": true,
 		"over": true, "points": true, "log": true, "show": true,
-		"reopen": true, "list": true,
+		"reopen": true, "list": true, "write": true,
 	}, got); d != "" {
 		t.Error(d)
 	}

@@ -2,6 +2,8 @@ package cli
 
 import (
 	"errors"
+	"fmt"
+	"os"
 	"runtime"
 
 	"github.com/urfave/cli/v2"
@@ -31,6 +33,8 @@ func (r *runner) chooseCommand() *cli.Command {
 		Flags: []cli.Flag{
 			&cli.StringSliceFlag{Name: "reopen", Usage: "`NAME=SERIES`: choose a stated resistance anew, such as RE=E24; may be repeated"},
 			&cli.BoolFlag{Name: "pair", Usage: "try two resistors in series or parallel where one will not do", DisableDefaultText: true},
+			&cli.StringFlag{Name: "write", Usage: "`FILE2`: put the best choice into a copy of the file"},
+			&cli.BoolFlag{Name: "replace", Usage: "let --write go over a file that exists", DisableDefaultText: true},
 			&cli.IntFlag{Name: "list", Usage: "the best `N` choices", Value: defaultList},
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
@@ -48,6 +52,7 @@ type chooseRequest struct {
 	reopen        []choose.Reopening
 	pair, json    bool
 	list, workers int
+	write         string // a file for the copy, or ""
 }
 
 func (r *runner) choose(c *cli.Context) error {
@@ -56,7 +61,7 @@ func (r *runner) choose(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
-	q := &chooseRequest{request: *base, list: c.Int("list"), workers: c.Int("workers"), pair: c.Bool("pair"), json: c.Bool("json")}
+	q := &chooseRequest{request: *base, list: c.Int("list"), workers: c.Int("workers"), pair: c.Bool("pair"), json: c.Bool("json"), write: c.String("write")}
 	for _, text := range c.StringSlice("reopen") {
 		s, err := setting("reopen", text, "NAME=SERIES, such as RE=E24")
 		if err != nil {
@@ -73,6 +78,13 @@ func (r *runner) choose(c *cli.Context) error {
 		return usagef("--list %d: at least one choice is to be listed", q.list)
 	case q.workers < 1:
 		return usagef("--workers %d: at least one must work", q.workers)
+	case c.IsSet("write") && (q.write == "" || q.write == standardInput):
+		return &usageError{"--write needs the name of a file", "the answer itself is on standard output"}
+	case q.write == "" && c.Bool("replace"):
+		return &usageError{"--replace is for --write", "add --write FILE2"}
+	}
+	if _, err := os.Lstat(q.write); q.write != "" && err == nil && !c.Bool("replace") {
+		return &usageError{fmt.Sprintf("--write %s: the file exists", q.write), "name another, or add --replace"}
 	}
 	return r.chooseFile(c.Args().First(), q)
 }
@@ -130,5 +142,43 @@ func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *t
 	if !a.Found.Reached || !a.Found.Choices[0].Met() {
 		r.raise(exitNotMet)
 	}
+	if q.write == "" || !a.Found.Reached {
+		return a, nil
+	}
+	if err := r.writeChoice(a, text, q); err != nil {
+		return nil, &trouble{file: shown, found: *err}
+	}
 	return a, nil
+}
+
+// writeChoice puts the best choice into a copy of the text. The copy is read and solved
+// before it is written: it must be the circuit that was chosen.
+func (r *runner) writeChoice(a *render.ChooseAnswer, text []byte, q *chooseRequest) *diag.List {
+	refuse := func(format string, args ...any) *diag.List {
+		r.raise(exitUsage)
+		return &diag.List{{Code: "copy", Message: "--write " + q.write + ": " + fmt.Sprintf(format, args...)}}
+	}
+	best := &a.Found.Choices[0]
+	copied, err := a.Found.Write(text, best)
+	if err != nil {
+		return refuse("%v", err)
+	}
+	c, _, wrong := r.circuit(q.write, copied, &q.request)
+	if wrong.HasErrors() {
+		return refuse("the copy would not stand: %s", wrong[0].Message)
+	}
+	near, wrong := nearPoint(c, q.near)
+	if wrong.HasErrors() {
+		return refuse("%s", wrong[0].Message)
+	}
+	if err := best.Verify(c, near); err != nil {
+		return refuse("the copy would be another circuit: %v", err)
+	}
+	if err := r.create(q.write, copied); err != nil {
+		r.raise(exitFile)
+		r.complain("cannot write %s: %v", q.write, err)
+		return nil
+	}
+	a.Written = q.write
+	return nil
 }

@@ -22,6 +22,9 @@ type ChooseAnswer struct {
 	Found    *choose.Answer // nil with a Failure
 	Failure  *solve.Failure
 	Warnings diag.List
+	// Written is the file that got the best choice; "" where none was asked for or it
+	// could not be written.
+	Written string
 }
 
 // ChooseScreen prints the answer for people.
@@ -44,6 +47,10 @@ func ChooseScreen(w io.Writer, a *ChooseAnswer, l Look) error {
 	printChoices(p, found, l)
 	fmt.Fprintln(p)
 	printChosen(p, found, l)
+	if a.Written != "" {
+		fmt.Fprintln(p)
+		wrap(p, "", l.text("Choice 1 is written to "+a.Written+"."))
+	}
 	return p.err
 }
 

@@ -23,6 +23,7 @@ type chooseJSON struct {
 	Search   *searchedJSON `json:"search,omitempty"`
 	Ideal    *choiceJSON   `json:"ideal,omitempty"` // where pairs were tried
 	Choices  *[]choiceJSON `json:"choices,omitempty"`
+	Written  *string       `json:"written,omitempty"`
 	Warnings diag.List     `json:"warnings"`
 }
 
@@ -96,7 +97,7 @@ type ratingJSON struct {
 func ChooseJSON(a *ChooseAnswer) any {
 	j := &chooseJSON{
 		Schema: ChooseSchema, File: a.File, Title: a.Circuit.Title, Set: settings(a.Set),
-		Warnings: append(diag.List{}, a.Warnings...),
+		Written: orNull(a.Written), Warnings: append(diag.List{}, a.Warnings...),
 	}
 	if a.Failure != nil {
 		j.Points, j.Failure = &[]pointJSON{}, failure(a.Failure)
