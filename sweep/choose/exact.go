@@ -56,10 +56,10 @@ func (a *Answer) exact(t *trial) ([]float64, error) {
 	if len(seen) == 0 {
 		return nil, s.noPoint()
 	}
-	if err := s.felt(seen); err != nil {
+	starts := s.starts(seen)
+	if err := s.felt(seen, starts); err != nil {
 		return nil, err
 	}
-	starts := s.starts(seen)
 	var found []*place
 	if a.Fit != Compromise {
 		found = s.solutions(starts, seen)
@@ -158,7 +158,7 @@ func (s *seeker) slopes() (*mat.Dense, bool) {
 // reopened.
 func (s *seeker) scan() []*place {
 	const (
-		most  = 5000 // places, some tens of milliseconds
+		most  = 1200 // places, some milliseconds
 		dense = 65   // eight a decade: two solutions of one value lie further apart
 	)
 	n := len(s.unknowns)
@@ -207,9 +207,9 @@ func next(count []int, base func(i int) int) bool {
 }
 
 // felt looks for an unknown that no target feels.
-func (s *seeker) felt(seen []*place) error {
+func (s *seeker) felt(seen, starts []*place) error {
 	const (
-		looks = 64   // places looked at
+		looks = 32   // places looked at, beside the starts
 		faint = 1e-6 // bands an e-fold; over the whole range that moves nothing
 	)
 	strongest := make([]float64, len(s.unknowns))
@@ -227,7 +227,7 @@ func (s *seeker) felt(seen []*place) error {
 	for i := 0; i < len(seen); i += len(seen)/looks + 1 {
 		look(seen[i])
 	}
-	for _, p := range s.starts(seen) {
+	for _, p := range starts {
 		look(p)
 	}
 	for i, g := range strongest {
