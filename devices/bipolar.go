@@ -17,6 +17,10 @@ type Bipolar struct {
 	// Knee and KneeRec are the arguments at which the exponentials of Isat and
 	// Irec give way to their tangents.
 	Knee, KneeRec float64
+	// Steep tells that Idealise has drawn both junctions to a fixed drop, as a
+	// Diode's; FloorRec belongs to Irec. NoCollector takes the collector junction away.
+	Steep, NoCollector     bool
+	Shift, Floor, FloorRec float64
 }
 
 // A BipolarPoint is a transistor's currents in A and conductances in S.
@@ -79,14 +83,21 @@ const closeBy = 0.25
 
 // exponentials fills If, Ir, Gf, Gr, and returns the transport current If - Ir.
 func (b *Bipolar) exponentials(vbe, vbc float64, out *BipolarPoint) (transport float64) {
-	ff, dff := physics.Junction(vbe*b.InvNVt, b.Knee)
-	fr, dfr := physics.Junction(vbc*b.InvNVt, b.Knee)
+	xf, xr := (vbe-b.Shift)*b.InvNVt, (vbc-b.Shift)*b.InvNVt
+	ff, dff := physics.Junction(xf, b.Knee)
+	fr, dfr := physics.Junction(xr, b.Knee)
+	if b.Steep {
+		ff, fr = aboveFloor(ff, dff, b.Floor), aboveFloor(fr, dfr, b.Floor)
+	}
+	if b.NoCollector {
+		fr, dfr = 0, 0
+	}
 	g := b.Isat * b.InvNVt
 	out.If, out.Gf = b.Isat*ff, g*dff
 	out.Ir, out.Gr = b.Isat*fr, g*dfr
 	// With the junctions close together, deep in saturation, the difference of
 	// two large exponentials is one of them times an expm1, to all digits.
-	if apart := (vbe - vbc) * b.InvNVt; math.Abs(apart) < closeBy && vbe*b.InvNVt < b.Knee && vbc*b.InvNVt < b.Knee {
+	if apart := (vbe - vbc) * b.InvNVt; math.Abs(apart) < closeBy && xf < b.Knee && xr < b.Knee && !b.NoCollector {
 		_, em1 := physics.ExpExpm1(apart)
 		return b.Isat * dfr * em1
 	}
@@ -95,7 +106,10 @@ func (b *Bipolar) exponentials(vbe, vbc float64, out *BipolarPoint) (transport f
 
 // recombine adds the base's recombination current.
 func (b *Bipolar) recombine(vbe float64, out *BipolarPoint) {
-	f, df := physics.Junction(vbe*b.InvNrecVt, b.KneeRec)
+	f, df := physics.Junction((vbe-b.Shift)*b.InvNrecVt, b.KneeRec)
+	if b.Steep {
+		f = aboveFloor(f, df, b.FloorRec)
+	}
 	out.Ib += b.Irec * f
 	out.IbVbe += b.Irec * b.InvNrecVt * df
 }

@@ -15,6 +15,11 @@ type Diode struct {
 	// Knee is the argument v/(n V_T) at which the exponential gives way to its
 	// tangent.
 	Knee float64
+	// Steep tells that Idealise has drawn the junction to a fixed drop: Isat is then
+	// the current at Shift volts, less Floor of it: i = Isat (exp((v - Shift)/(n V_T))
+	// - Floor), Floor = exp(-Shift/(n V_T)).
+	Steep        bool
+	Shift, Floor float64
 	// Zener tells that the breakdown term is present.
 	Zener                 bool
 	Iz, Vz, NzVt, InvNzVt float64 // A (with area), V at temperature, V, 1/V
@@ -26,7 +31,10 @@ type Diode struct {
 // V, and its derivative in S. It allocates nothing and is finite for every finite
 // v.
 func (d *Diode) At(v float64) (i, g float64) {
-	f, df := physics.Junction(v*d.InvNVt, d.Knee)
+	f, df := physics.Junction((v-d.Shift)*d.InvNVt, d.Knee)
+	if d.Steep {
+		f = aboveFloor(f, df, d.Floor)
+	}
 	i, g = d.Isat*f, d.Isat*d.InvNVt*df
 	if d.Zener {
 		f, df = d.breakdown(v)
@@ -41,8 +49,11 @@ func (d *Diode) At(v float64) (i, g float64) {
 // cancel, and what is left decides how they share the voltage; a sum in one double
 // would lose it.
 func (d *Diode) Terms(v float64) (exponential, constant, breakdown float64) {
-	f, df := physics.Junction(v*d.InvNVt, d.Knee)
-	if exponential = d.Isat * f; v < 0 {
+	f, df := physics.Junction((v-d.Shift)*d.InvNVt, d.Knee)
+	switch exponential = d.Isat * f; {
+	case d.Steep:
+		exponential = d.Isat * aboveFloor(f, df, d.Floor)
+	case v < 0:
 		exponential, constant = d.Isat*df, -d.Isat
 	}
 	if d.Zener {

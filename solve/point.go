@@ -227,3 +227,10 @@ func (p *Point) Depth(element int) float64 {
 func (p *Point) SpareVolts(element int) float64 {
 	return p.Elements[element].Vce - p.state.SaturationEdge(element, saturatedShare)
 }
+
+// CollectorShare is the share of a transistor element's base current that its collector
+// junction takes, as a fraction: above 0.05 the transistor counts as saturated.
+func (p *Point) CollectorShare(element int) float64 {
+	collector, base, _, _ := p.state.Saturation(element)
+	return collector / base
+}

@@ -69,6 +69,10 @@ var rules = map[string]row{
 		code:  "netlist netlist/diag netlist/quantity netlist/syntax solve solve/mna solve/newton",
 		tests: "devices devices/shelf",
 	},
+	"sweep/hand": {
+		code:  "netlist netlist/diag devices solve solve/mna solve/newton",
+		tests: "solve/reftest",
+	},
 
 	"sweep/compare": {
 		code:  "netlist netlist/quantity solve sweep/limits",
@@ -77,7 +81,7 @@ var rules = map[string]row{
 
 	"cmd/biaswright": {code: "cmd/biaswright/internal/cli"},
 	"cmd/biaswright/internal/cli": {
-		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits sweep/choose sweep/compare cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
+		code: "netlist netlist/diag netlist/quantity netlist/syntax devices devices/shelf solve sweep sweep/limits sweep/choose sweep/hand sweep/compare cmd/biaswright/internal/render cmd/biaswright/internal/chart cmd/biaswright/internal/figure",
 	},
 	"cmd/biaswright/internal/figure": {},
 	"cmd/biaswright/internal/chart": {
@@ -85,7 +89,7 @@ var rules = map[string]row{
 		tests: "devices devices/shelf netlist/diag",
 	},
 	"cmd/biaswright/internal/render": {
-		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits sweep/choose sweep/compare",
+		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits sweep/choose sweep/hand sweep/compare",
 		tests: "netlist/syntax devices/shelf",
 	},
 }

@@ -61,6 +61,9 @@ func (st *State) Sensitivity(q *netlist.Expr) (value float64, d []float64, err e
 // adjoint solves J^T L = dQ/dx; the entry behind the last, for known rows, is 0.
 func (st *State) adjoint(seed *Seed) ([]float64, error) {
 	s := st.s
+	if s.ideals != nil {
+		return nil, errIdealised
+	}
 	st.fill()
 	// Weights on ideal branches are weights on the currents of the nodes behind.
 	s.forest.spread(seed.branch)
@@ -112,7 +115,10 @@ func (s *System) solveTransposed(b []float64) bool {
 	return true
 }
 
-var errUndetermined = errors.New("the balances do not determine the voltages here")
+var (
+	errUndetermined = errors.New("the balances do not determine the voltages here")
+	errIdealised    = errors.New("an idealised circuit has no derivatives")
+)
 
 // unknowns are the state's unknowns.
 func (st *State) unknowns() []float64 {

@@ -364,7 +364,7 @@ func (st *State) SaturationEdge(element int, share float64) float64 {
 	var open devices.BipolarPoint // the collector junction at 0 V
 	b.k.At(vbe, 0, &open)
 	ir := share / (1 - share) * open.Ib / b.k.InvBetaR
-	vbc := math.Log1p(math.Max(0, ir)/b.k.Isat) / b.k.InvNVt
+	vbc := b.k.Reach(math.Max(0, ir), 1)
 	return vbe - math.Min(vbc, vbe)
 }
 

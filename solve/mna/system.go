@@ -18,6 +18,7 @@ package mna
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"biaswright/devices"
 	"biaswright/netlist"
@@ -35,7 +36,8 @@ const zeroCelsius = 273.15
 // gives another with the same structure.
 type System struct {
 	circuit *netlist.Circuit
-	values  []float64 // slot numbers in force
+	values  []float64       // slot numbers in force
+	ideals  []devices.Ideal // by element; nil where nothing is idealised
 
 	*structure
 	*numbers
@@ -219,6 +221,7 @@ func (s *System) Clone() *System {
 	c.numbers = s.numbers.clone()
 	c.factors = s.plan.NewFactors()
 	c.values = append([]float64(nil), s.values...)
+	c.ideals = slices.Clone(s.ideals)
 	c.Apply(c.values)
 	return c
 }
@@ -234,6 +237,22 @@ func (n *numbers) clone() *numbers {
 	c.junctions = append([]junction(nil), c.junctions...)
 	c.bipolars = append([]bipolar(nil), c.bipolars...)
 	return &c
+}
+
+// Idealise puts an idealisation in force for each element (length
+// len(Circuit().Elements), copied; those of other kinds than junctions and transistors
+// are not looked at), or takes all away with nil. Junctions keep their iteration state.
+// A bulk resistance stays beside a fixed drop unless it is 0. There are no derivatives
+// by slots while something is idealised: Sensitivity and its like fail.
+func (s *System) Idealise(ideals []devices.Ideal) {
+	s.ideals = slices.Clone(ideals)
+	scale := s.startCurrent()
+	for i := range s.devices {
+		if d := &s.devices[i]; d.kind == junctionDevice || d.kind == bipolarDevice {
+			s.setDevice(d, s.kelvin[i], scale)
+		}
+	}
+	s.near = false
 }
 
 // Size is the number of unknowns.
@@ -297,7 +316,10 @@ func (s *System) setDevice(d *device, kelvin, scale float64) {
 	case junctionDevice:
 		j := &s.junctions[d.at]
 		j.d, _ = devices.DiodeOf(s.kind(e), s.params(e), s.values[e.Size], kelvin)
-		j.corner = j.d.NVt * math.Log1p(scale/j.d.Isat)
+		if s.ideals != nil {
+			j.d.Idealise(&s.ideals[d.element], s.values[e.Size])
+		}
+		j.corner = j.d.Reach(scale)
 		j.start = j.corner
 		j.knee = math.Inf(-1)
 		if j.d.Zener {
@@ -309,9 +331,12 @@ func (s *System) setDevice(d *device, kelvin, scale float64) {
 	case bipolarDevice:
 		b := &s.bipolars[d.at]
 		b.k = devices.BipolarOf(s.kind(e), s.params(e), s.values[e.Size], kelvin)
-		b.corner = math.Log1p(scale/b.k.Isat) / b.k.InvNVt
+		if s.ideals != nil {
+			b.k.Idealise(&s.ideals[d.element], s.values[e.Size])
+		}
+		b.corner = b.k.Reach(scale, 1)
 		// The collector junction's own current is larger by 1/betaR.
-		b.cornerC = math.Log1p(scale/(b.k.Isat*(1+b.k.InvBetaR))) / b.k.InvNVt
+		b.cornerC = b.k.Reach(scale, 1+b.k.InvBetaR)
 		b.va = 1 / b.k.InvVA // +Inf for an infinite VA
 		b.reach = math.Min(b.cornerC, math.Nextafter(b.va, 0))
 	}

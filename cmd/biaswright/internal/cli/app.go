@@ -140,6 +140,7 @@ func (r *runner) app() *cli.App {
 			r.sweepCommand(),
 			r.limitsCommand(),
 			r.compareCommand(),
+			r.handcheckCommand(),
 			r.chooseCommand(),
 			r.tidyCommand(),
 			r.partsCommand(),

@@ -1,0 +1,99 @@
+package cli
+
+import (
+	"errors"
+	"fmt"
+
+	"github.com/urfave/cli/v2"
+
+	"biaswright/cmd/biaswright/internal/render"
+	"biaswright/netlist/diag"
+	"biaswright/sweep/hand"
+)
+
+func (r *runner) handcheckCommand() *cli.Command {
+	return &cli.Command{
+		Name:      "handcheck",
+		Usage:     "hold each file's hand calculation against the full solution, and say where they part",
+		UsageText: "biaswright handcheck [options] FILE...",
+		Flags: []cli.Flag{
+			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the operating point nearest to these voltages; may be repeated"},
+			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+		},
+		Action: r.handcheck,
+	}
+}
+
+func (r *runner) handcheck(c *cli.Context) error {
+	if c.NArg() == 0 {
+		return &usageError{"handcheck needs a file", `"-" is standard input`}
+	}
+	r.plain = c.Bool("plain")
+	q, err := r.request(c)
+	if err != nil {
+		return err
+	}
+	var all []any
+	for i, name := range c.Args().Slice() {
+		a, trouble := r.handchecked(name, q)
+		switch {
+		case c.Bool("json") && trouble != nil:
+			all = append(all, trouble.json())
+		case c.Bool("json"):
+			all = append(all, render.HandJSON(a))
+		case trouble != nil:
+			r.tell(trouble)
+		default:
+			r.diagnose(a.Warnings)
+			if i > 0 {
+				fmt.Fprintln(r.out)
+			}
+			if err := render.HandScreen(r.out, a, r.look()); err != nil {
+				return &writeError{err}
+			}
+		}
+	}
+	return r.writeAll(all)
+}
+
+// handchecked answers for one file and notes the exit code it earns.
+func (r *runner) handchecked(name string, q *request) (*render.HandAnswer, *trouble) {
+	shown := shownName(name)
+	text, err := r.read(name)
+	if err != nil {
+		r.raise(exitFile)
+		return nil, &trouble{file: shown, err: err}
+	}
+	r.texts[shown] = text
+	refuse := func(found diag.List) (*render.HandAnswer, *trouble) {
+		r.raise(exitUsage)
+		return nil, &trouble{file: shown, found: found}
+	}
+	c, _, warnings, wrong := r.circuits(shown, text, q)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	near, wrong := nearPoint(c, q.near)
+	if wrong.HasErrors() {
+		return refuse(wrong)
+	}
+	a := &render.HandAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
+	a.Hand, err = hand.Check(c, hand.Options{Near: near})
+	var mend *hand.Error
+	switch {
+	case errors.As(err, &mend):
+		return refuse(diag.List{{Code: mend.Code, Span: mend.Span, Message: mend.Message, Hint: mend.Hint}})
+	case err != nil:
+		r.raise(exitNoPoint)
+		a.Failure = failure(err)
+		return a, nil
+	}
+	for i := range a.Hand.Verdicts {
+		if !a.Hand.Verdicts[i].Met {
+			r.raise(exitNotMet)
+		}
+	}
+	return a, nil
+}

@@ -1,0 +1,249 @@
+package hand
+
+import (
+	"math"
+	"slices"
+
+	"biaswright/devices"
+	"biaswright/netlist"
+	"biaswright/solve"
+	"biaswright/solve/mna"
+)
+
+// A RuleKind is a rule of thumb.
+type RuleKind string
+
+// The rules of thumb that are tested.
+const (
+	// Stiffness: a divider that feeds the base of a transistor with an emitter resistor
+	// is stiff where beta times that resistor is ten times the divider's parallel
+	// resistance or more (common practice).
+	Stiffness RuleKind = "stiffness"
+	// Reference: a junction that stands as a reference for bases carries ten times
+	// what they take or more (common practice).
+	Reference RuleKind = "reference"
+	// Saturation: a transistor keeps at least 0.3 V above the V_CE at which it
+	// saturates: half a volt in all (common practice).
+	Saturation RuleKind = "saturation"
+)
+
+// The rules' bounds, common practice all.
+const (
+	stiffEnough = 10
+	feedsEnough = 10
+	spareEnough = 0.3 // V
+)
+
+// A Rule is a rule of thumb tested on the circuit.
+type Rule struct {
+	Kind RuleKind
+	// Element is the transistor (Stiffness, Saturation) or the reference.
+	Element int
+	// Node is the base's (Stiffness, Reference), Bases the transistors fed there.
+	Node  netlist.NodeID
+	Bases []int
+	// Figure is a ratio, or volts for Saturation; Wanted is what the rule asks for.
+	Figure, Wanted float64
+	// Beta is I_C/I_B, Emitter the emitter resistor and Divider the parallel
+	// resistance of the divider, in ohm (Stiffness). Amps is the reference's current
+	// and Base what the bases take, in A (Stiffness: Base alone).
+	Beta, Emitter, Divider, Amps, Base float64
+	// Costs is by row what it costs here: the full solution over that without the
+	// bases' currents (Saturation: without the collector junction), less 1. NaN where
+	// there is none.
+	Costs []float64
+}
+
+// Kept tells whether the rule holds.
+func (r *Rule) Kept() bool { return r.Figure >= r.Wanted }
+
+// rules tests every rule of thumb where it applies, in the order of the elements.
+func (a *Answer) rules() []Rule {
+	var out []Rule
+	c, p := a.Circuit, a.Full
+	done := map[netlist.NodeID]bool{} // bases on one node are one matter
+	for i := range c.Elements {
+		e := &c.Elements[i]
+		if e.Kind != netlist.TransistorPart || p.Elements[i].State == "off" {
+			continue
+		}
+		if r, ok := a.stiffness(i); ok {
+			out = append(out, r)
+		}
+		if !done[e.Base] {
+			done[e.Base] = true
+			out = append(out, a.references(e.Base)...)
+		}
+		out = append(out, a.saturation(i))
+	}
+	return out
+}
+
+// basesAt are the conducting transistors whose bases hang on a node.
+func (a *Answer) basesAt(node netlist.NodeID) []int {
+	var out []int
+	for i := range a.Circuit.Elements {
+		if e := &a.Circuit.Elements[i]; e.Kind == netlist.TransistorPart && e.Base == node && a.Full.Elements[i].State != "off" {
+			out = append(out, i)
+		}
+	}
+	return out
+}
+
+// baseCurrent is what transistors take by their bases, in A.
+func (a *Answer) baseCurrent(of []int) float64 {
+	sum := 0.0
+	for _, i := range of {
+		sum += a.Full.Elements[i].Ib
+	}
+	return sum
+}
+
+// isGiven tells a node whose voltage is given: gnd or a rail's.
+func isGiven(c *netlist.Circuit, n netlist.NodeID) bool {
+	return n == netlist.Gnd || c.Nodes[n].Rail != netlist.None
+}
+
+// legs are the resistors from a node to given ones, and what they make in parallel, in
+// ohm.
+func legs(c *netlist.Circuit, node netlist.NodeID) (ends []netlist.NodeID, parallel float64) {
+	siemens := 0.0
+	for i := range c.Elements {
+		e := &c.Elements[i]
+		if e.Kind != netlist.Resistor {
+			continue
+		}
+		far := e.To
+		switch node {
+		case e.From:
+		case e.To:
+			far = e.From
+		default:
+			continue
+		}
+		if isGiven(c, far) {
+			ends = append(ends, far)
+			siemens += 1 / (float64(e.Row) * c.Value(e.Value))
+		}
+	}
+	return ends, 1 / siemens
+}
+
+// divider tells that a node hangs on a divider: resistors to two given nodes or more,
+// and no junction that holds it.
+func (a *Answer) divider(node netlist.NodeID) (parallel float64, ok bool) {
+	ends, parallel := legs(a.Circuit, node)
+	slices.Sort(ends)
+	return parallel, len(slices.Compact(ends)) > 1 && len(a.holders(node)) == 0
+}
+
+func (a *Answer) stiffness(q int) (Rule, bool) {
+	e := &a.Circuit.Elements[q]
+	parallel, ok := a.divider(e.Base)
+	emitter := e.To
+	if a.Circuit.Parts[e.Part].Kind.PNP {
+		emitter = e.From
+	}
+	ends, re := legs(a.Circuit, emitter)
+	if !ok || len(ends) == 0 {
+		return Rule{}, false
+	}
+	ep := &a.Full.Elements[q]
+	beta := ep.Ic / ep.Ib
+	return Rule{
+		Kind: Stiffness, Element: q, Node: e.Base, Bases: []int{q}, Figure: beta * re / parallel, Wanted: stiffEnough,
+		Beta: beta, Emitter: re, Divider: parallel, Base: ep.Ib, Costs: a.withoutBases([]int{q}),
+	}, true
+}
+
+// holders are the conducting junctions that hold a node: diodes and zeners tied to
+// it, and transistors whose collector is tied to their base there.
+func (a *Answer) holders(node netlist.NodeID) []int {
+	c, p := a.Circuit, a.Full
+	var out []int
+	for i := range c.Elements {
+		e := &c.Elements[i]
+		if e.Part == netlist.None || e.From != node && e.To != node {
+			continue
+		}
+		_, amps := junctionOf(p, i)
+		collector := e.From
+		if c.Parts[e.Part].Kind.PNP {
+			collector = e.To
+		}
+		tied := e.Kind == netlist.JunctionPart || e.Base == node && collector == node
+		if tied && math.Abs(amps) > idle*p.LargestCurrent() {
+			out = append(out, i)
+		}
+	}
+	return out
+}
+
+func (a *Answer) references(node netlist.NodeID) []Rule {
+	var out []Rule
+	for _, i := range a.holders(node) {
+		bases := a.basesAt(node)
+		taken := a.baseCurrent(bases)
+		_, amps := junctionOf(a.Full, i)
+		out = append(out, Rule{
+			Kind: Reference, Element: i, Node: node, Bases: bases, Figure: math.Abs(amps / taken), Wanted: feedsEnough,
+			Amps: math.Abs(amps), Base: taken, Costs: a.withoutBases(bases),
+		})
+	}
+	return out
+}
+
+func (a *Answer) saturation(q int) Rule {
+	ideals := make([]devices.Ideal, len(a.Circuit.Elements))
+	ideals[q].NoCollector = true
+	return Rule{
+		Kind: Saturation, Element: q, Node: netlist.None, Figure: a.Full.SpareVolts(q), Wanted: spareEnough,
+		Costs: a.costs(a.Circuit, ideals),
+	}
+}
+
+// withoutBases is what the base currents of these transistors cost.
+func (a *Answer) withoutBases(of []int) []float64 {
+	var set []netlist.Setting
+	for _, i := range of {
+		name := a.Circuit.Elements[i].Name
+		set = append(set, noRecombination(name)...)
+		set = append(set, netlist.Setting{Name: name + ".betaF", Value: "infinite"})
+	}
+	c, err := with(a.Circuit, set)
+	if err != nil {
+		return a.none()
+	}
+	return a.costs(c, nil)
+}
+
+func (a *Answer) none() []float64 {
+	out := make([]float64, len(a.Rows))
+	for i := range out {
+		out[i] = math.NaN()
+	}
+	return out
+}
+
+// costs compares the full solution with a circuit that has been made better.
+func (a *Answer) costs(c *netlist.Circuit, ideals []devices.Ideal) []float64 {
+	s, err := mna.New(c)
+	if err != nil {
+		return a.none()
+	}
+	if ideals != nil {
+		s.Idealise(ideals)
+	}
+	res, err := solve.SolveSystem(s, solve.Options{Near: a.near()})
+	if err != nil {
+		return a.none()
+	}
+	out := a.read(res.Point)
+	for i := range out {
+		out[i] = a.Rows[i].Full/out[i] - 1
+		if math.IsInf(out[i], 0) {
+			out[i] = math.NaN()
+		}
+	}
+	return out
+}
