@@ -123,6 +123,8 @@ type Answer struct {
 	// least, where pairs were tried because no single resistors would do; else nil.
 	Ideal   *Choice
 	Choices []Choice // the best first
+
+	how start // how the circuit is solved from nothing
 }
 
 // A Choice is a value for each unknown, and what the circuit does with them.
@@ -195,14 +197,18 @@ func Find(c *netlist.Circuit, o Options) (*Answer, error) {
 	}
 	start := make([]float64, len(unknowns))
 	for i := range start {
-		const kilo = 1e3 // any value will do to set the circuit up
-		start[i] = kilo
+		if start[i] = unknowns[i].stated; !(start[i] > 0) {
+			start[i] = unremarkable
+		}
 	}
 	a := &Answer{Unknowns: unknowns, Whole: true}
 	if a.Circuit, err = withValues(c, unknowns, start); err != nil {
 		return nil, err
 	}
-	t, err := newTrial(a.Circuit, unknowns, o.Near)
+	if a.how, err = startFor(a.Circuit, o.Near); err != nil {
+		return nil, err
+	}
+	t, err := newTrial(a.Circuit, unknowns, a.how)
 	if err != nil {
 		return nil, err
 	}
@@ -216,7 +222,7 @@ func Find(c *netlist.Circuit, o Options) (*Answer, error) {
 	for i := range unknowns {
 		unknowns[i].Exact = ohms[i]
 	}
-	if a.Exact, err = a.detail(ohms, o.Near); err != nil {
+	if a.Exact, err = a.detail(ohms); err != nil {
 		return nil, err
 	}
 	a.Reached = a.Exact.NominalScore() <= 1

@@ -260,3 +260,28 @@ func TestAnyDivider(t *testing.T) {
 		}
 	})
 }
+
+// A self-biased cell, its base-emitter drop on RE: about 0.65 V / 100 uA (common
+// practice). Leakage holds a state without current too, which a plain start finds and
+// which no value of RE would mend.
+func TestSelfBiasedCell(t *testing.T) {
+	const text = `rail VDD = 3 V (2 V .. 6 V)
+part n npn Isat = 1e-15 A, betaF = 150
+part p pnp Isat = 1e-15 A, betaF = 80
+path VDD -> QP1 p base=pm -> a -> QN1 n base=b -> gnd
+path VDD -> QP2 p base=pm -> pm -> QN2 n base=a -> b -> RE ? E24 -> gnd
+path a -> RL1 10M -> gnd
+path pm -> RL2 10M -> VDD
+target RE.I = 100 uA within 10%
+`
+	for _, reopen := range [][]choose.Reopening{nil, {{Name: "RL1", Series: "E3"}}} {
+		a := find(t, text, reopen...)
+		re := a.Unknowns[0].Exact
+		if a.Unknowns[0].Name != "RE" {
+			re = a.Unknowns[1].Exact
+		}
+		if !a.Reached || !close(re, 6.5e3, 0.05) || !a.Choices[0].Met() {
+			t.Errorf("%v: %g, %+v", reopen, re, a.Choices)
+		}
+	}
+}

@@ -28,6 +28,7 @@ const unremarkable = 1e3
 type place struct {
 	u     []float64
 	f     []float64 // by target
+	x     []float64 // the solution
 	unmet int       // keeps, at the nominal point
 	merit float64
 	away  float64
@@ -67,7 +68,7 @@ func (a *Answer) exact(t *trial) ([]float64, error) {
 	if len(found) == 0 {
 		p := s.nearest(starts)
 		if a.Fit != Compromise {
-			if q, ok := s.newton(p.u, nil); ok {
+			if q, ok := s.newton(p, nil); ok {
 				return s.take(q.u), nil
 			}
 			a.Fit = Nearest
@@ -88,10 +89,18 @@ func (s *seeker) take(u []float64) []float64 {
 
 // noPoint tells why no values gave an operating point.
 func (s *seeker) noPoint() error {
-	if _, err := solve.Solve(s.t.c, solve.Options{Near: s.t.nominal.near}); err != nil {
+	if _, err := solve.Solve(s.t.c, solve.Options{Near: s.t.nominal.how.near}); err != nil {
 		return err
 	}
 	return &solve.Failure{Says: fmt.Sprintf("no operating point found with resistances from %g to %g ohm", LeastOhms, float64(MostOhms))}
+}
+
+// from makes the next evaluation start from a place's solution, and so on its branch.
+func (s *seeker) from(p *place) {
+	b := s.t.nominal
+	copy(b.x, p.x)
+	b.s.From(b.x)
+	b.warm = true
 }
 
 // at evaluates the targets; nil where there is no operating point or no number.
@@ -102,7 +111,7 @@ func (s *seeker) at(u []float64) *place {
 	if !s.t.nominal.at(s.ohms) {
 		return nil
 	}
-	p := &place{u: slices.Clone(u), f: make([]float64, len(s.t.c.Targets))}
+	p := &place{u: slices.Clone(u), f: make([]float64, len(s.t.c.Targets)), x: slices.Clone(s.t.nominal.x)}
 	for _, v := range solve.JudgeAt(s.t.c, s.t.nominal.state, nil) {
 		if v.Kind == "keep" {
 			if !v.Met {
@@ -176,6 +185,9 @@ func (s *seeker) scan() []*place {
 		for i := range u {
 			u[i] = at(count[i])
 		}
+		if s.t.nominal.how.ladder { // a neighbour may stand on the branch that is not wanted
+			s.t.nominal.warm = false
+		}
 		if p := s.at(u); p != nil {
 			out = append(out, p)
 		}
@@ -214,6 +226,7 @@ func (s *seeker) felt(seen, starts []*place) error {
 	)
 	strongest := make([]float64, len(s.unknowns))
 	look := func(p *place) {
+		s.from(p)
 		if s.at(p.u) == nil {
 			return
 		}
@@ -290,7 +303,7 @@ func (s *seeker) solutions(starts, seen []*place) []*place {
 		}
 	}
 	for _, from := range starts {
-		if p, ok := s.newton(from.u, nil); ok {
+		if p, ok := s.newton(from, nil); ok {
 			add(p)
 		}
 	}
@@ -316,6 +329,7 @@ func (s *seeker) bracketed(seen []*place) []*place {
 		}
 		const halvings = 60 // to the last digit
 		for range halvings {
+			s.from(a)
 			m := s.at([]float64{(a.u[0] + b.u[0]) / 2})
 			if m == nil {
 				break
@@ -342,14 +356,15 @@ const met = 1e-9
 // newton goes from u to where f = goal (nil for 0) by damped steps of the least length
 // in ln R. It gives the last place, and whether the goal is met there; nil where
 // it could not even begin.
-func (s *seeker) newton(from, goal []float64) (*place, bool) {
+func (s *seeker) newton(from *place, goal []float64) (*place, bool) {
 	const (
 		steps   = 40
 		longest = 1.5  // e-folds; beyond it no linear model means much
 		least   = 1e-3 // fraction of a step
 		settled = 1e-11
 	)
-	p := s.at(from)
+	s.from(from)
+	p := s.at(from.u)
 	if p == nil {
 		return nil, false
 	}
@@ -374,6 +389,7 @@ func (s *seeker) newton(from, goal []float64) (*place, bool) {
 			for i := range trial {
 				trial[i] = within(p.u[i] + fraction*du[i])
 			}
+			s.from(p)
 			q = s.at(trial)
 			if q != nil && (norm(residual(q.f, goal)) < (1-fraction/4)*norm(r) || norm(r) < met) {
 				break
@@ -399,7 +415,7 @@ func (s *seeker) walk(from *place) (*place, bool) {
 		for i, f := range from.f {
 			goal[i] = (1 - to) * f
 		}
-		q, ok := s.newton(p.u, goal)
+		q, ok := s.newton(p, goal)
 		if ok {
 			p, at = q, to
 			step *= 2
@@ -456,7 +472,7 @@ func shortest(j *mat.Dense, f []float64) ([]float64, bool) {
 func (s *seeker) nearest(starts []*place) *place {
 	var best *place
 	for _, from := range starts {
-		p, _ := s.newton(from.u, nil)
+		p, _ := s.newton(from, nil)
 		if p == nil {
 			p = from
 		}
@@ -474,6 +490,7 @@ func (s *seeker) nearest(starts []*place) *place {
 			inside[i] = math.Max(math.Log(LeastOhms), math.Min(math.Log(MostOhms), v))
 			beyond += math.Abs(v - inside[i])
 		}
+		s.from(best)
 		p := s.at(inside)
 		if p == nil {
 			const nowhere = 1e9 // bands; above any deviation that is met
@@ -499,6 +516,7 @@ func (s *seeker) pick(found []*place) *place {
 	var best *place
 	var bestKey key
 	for i, p := range found {
+		s.from(p)
 		k := s.t.judge(s.take(p.u), key{at: i}, worstKey)
 		k.score, k.away = 0, p.away
 		if best == nil || k.less(bestKey) {

@@ -7,7 +7,6 @@ import (
 	"sync"
 	"sync/atomic"
 
-	"biaswright/netlist"
 	"biaswright/solve"
 )
 
@@ -55,7 +54,7 @@ func (a *Answer) search(o Options) error {
 	workers := max(1, min(o.Workers, len(a.Unknowns[0].grid)))
 	all := make([]*searcher, workers)
 	for i := range all {
-		t, err := newTrial(a.Circuit, a.Unknowns, o.Near)
+		t, err := newTrial(a.Circuit, a.Unknowns, a.how)
 		if err != nil {
 			return err
 		}
@@ -87,22 +86,22 @@ func (a *Answer) search(o Options) error {
 			best.add(e)
 		}
 	}
-	if err := a.list(&best, o); err != nil || !o.Pair || a.Choices[0].Met() {
+	if err := a.list(&best); err != nil || !o.Pair || a.Choices[0].Met() {
 		return err
 	}
-	ideal, err := a.detail(a.pairs(all[0].t, &best), o.Near)
+	ideal, err := a.detail(a.pairs(all[0].t, &best))
 	if err != nil {
 		return err
 	}
 	a.Ideal = &ideal
-	return a.list(&best, o)
+	return a.list(&best)
 }
 
 // list fills in the choices.
-func (a *Answer) list(best *short, o Options) error {
+func (a *Answer) list(best *short) error {
 	a.Choices = nil
 	for _, e := range best.entries {
-		c, err := a.detail(e.ohms, o.Near)
+		c, err := a.detail(e.ohms)
 		if err != nil {
 			return err
 		}
@@ -178,22 +177,24 @@ func (s *searcher) try(count []int) {
 }
 
 // detail judges values from the beginning, with all that is known of each requirement.
-func (a *Answer) detail(ohms []float64, near map[netlist.NodeID]float64) (Choice, error) {
+func (a *Answer) detail(ohms []float64) (Choice, error) {
 	c, err := withValues(a.Circuit, a.Unknowns, ohms)
 	if err != nil {
 		return Choice{}, err
 	}
-	res, err := solve.Solve(c, solve.Options{Near: near})
+	t, err := newTrial(c, a.Unknowns, a.how)
 	if err != nil {
 		return Choice{}, err
 	}
-	t, err := newTrial(c, a.Unknowns, near)
-	if err != nil {
+	out := Choice{Ohms: ohms}
+	if !t.nominal.at(ohms) {
+		_, err := solve.Solve(c, solve.Options{Near: a.how.near})
+		if err == nil {
+			err = &solve.Failure{Says: "no stable operating point was found"}
+		}
 		return Choice{}, err
 	}
-	copy(t.nominal.x, res.Point.Unknowns())
-	t.nominal.startFrom(t.nominal)
-	out := Choice{Ohms: ohms, Nominal: res.Point}
+	out.Nominal = solve.PointAt(t.nominal.s, t.nominal.x, "cold")
 	y := &t.tally
 	y.begin(len(t.requirements), key{})
 	t.visit(ohms, t.order, func(_ int, g sight) bool {
@@ -218,7 +219,7 @@ func (a *Answer) detail(ohms []float64, near map[netlist.NodeID]float64) (Choice
 	for i := range out.Requirements {
 		out.Requirements[i].Worst.Met = y.met[i]
 	}
-	for _, r := range res.Point.Rails {
+	for _, r := range out.Nominal.Rails {
 		out.Draw += math.Max(0, r.I)
 	}
 	return out, nil

@@ -18,7 +18,7 @@ type bench struct {
 	ends  []End
 	s     *mna.System
 	tuner *mna.Tuner
-	near  map[netlist.NodeID]float64
+	how   start
 	x     []float64
 	state *mna.State
 	work  newton.Work
@@ -33,7 +33,40 @@ type gain struct {
 	d    []float64
 }
 
-func newBench(c *netlist.Circuit, ends []End, unknowns []Unknown, near map[netlist.NodeID]float64) (*bench, error) {
+// A start is how a circuit is solved from nothing.
+type start struct {
+	// ladder goes up the whole ladder of strategies at once: what a plain start leads to
+	// is not the point that package solve picks, as in a self-biased cell that has a
+	// state without current.
+	ladder bool
+	home   []float64 // the point that was picked then, to start from elsewhere
+	near   map[netlist.NodeID]float64
+}
+
+// startFor finds out how a circuit wants to be started.
+func startFor(c *netlist.Circuit, near map[netlist.NodeID]float64) (start, error) {
+	how := start{near: near}
+	if near != nil {
+		return how, nil
+	}
+	b, err := newBench(c, nil, nil, how)
+	if err != nil {
+		return how, err
+	}
+	plain := b.at(nil)
+	x := slices.Clone(b.x)
+	res, err := solve.SolveSystem(b.s, solve.Options{})
+	if err != nil {
+		return how, nil // with other values, perhaps
+	}
+	const same = 1e-6 // V; two points lie further apart
+	if !plain || furthest(x, res.Point.Unknowns()) > same {
+		how.ladder, how.home = true, res.Point.Unknowns()
+	}
+	return how, nil
+}
+
+func newBench(c *netlist.Circuit, ends []End, unknowns []Unknown, how start) (*bench, error) {
 	s, err := mna.New(c)
 	if err != nil {
 		return nil, err
@@ -42,7 +75,7 @@ func newBench(c *netlist.Circuit, ends []End, unknowns []Unknown, near map[netli
 	for i := range unknowns {
 		slots[i] = unknowns[i].slot
 	}
-	return &bench{c: c, ends: ends, s: s, tuner: s.NewTuner(slots...), near: near, x: make([]float64, s.Size())}, nil
+	return &bench{c: c, ends: ends, s: s, tuner: s.NewTuner(slots...), how: how, x: make([]float64, s.Size())}, nil
 }
 
 // at solves the circuit with these values, in ohms. It reports false where no
@@ -63,14 +96,21 @@ func (b *bench) settle() bool {
 		}
 	}
 	b.warm = false
-	if b.near == nil {
+	if len(b.how.home) == len(b.x) && b.how.ladder {
+		copy(b.x, b.how.home)
+		b.s.From(b.x)
+		if b.iterate(newton.DefaultSteps) {
+			return true
+		}
+	}
+	if !b.how.ladder && b.how.near == nil {
 		b.s.Restart()
 		clear(b.x)
 		if b.iterate(newton.DefaultSteps) {
 			return true
 		}
 	}
-	res, err := solve.SolveSystem(b.s, solve.Options{Near: b.near})
+	res, err := solve.SolveSystem(b.s, solve.Options{Near: b.how.near})
 	if err != nil || res.Point.Unstable {
 		return false
 	}
@@ -148,10 +188,11 @@ type trial struct {
 // against each requirement as tolerances are.
 const mostRanges = 6
 
-func newTrial(c *netlist.Circuit, unknowns []Unknown, near map[netlist.NodeID]float64) (*trial, error) {
+func newTrial(c *netlist.Circuit, unknowns []Unknown, how start) (*trial, error) {
 	t := &trial{c: c, values: make([]float64, len(c.Slots)), requirements: requirementsOf(c)}
+	elsewhere := start{ladder: how.ladder, home: how.home} // voltages wished for are those of the nominal point
 	var err error
-	if t.nominal, err = newBench(c, nil, unknowns, near); err != nil {
+	if t.nominal, err = newBench(c, nil, unknowns, how); err != nil {
 		return nil, err
 	}
 	t.corners = []*bench{t.nominal}
@@ -177,7 +218,7 @@ func newTrial(c *netlist.Circuit, unknowns []Unknown, near map[netlist.NodeID]fl
 		if list.HasErrors() {
 			return nil, errors.New(list[0].Message)
 		}
-		b, err := newBench(at, ends, unknowns, nil)
+		b, err := newBench(at, ends, unknowns, elsewhere)
 		if err != nil {
 			return nil, err
 		}
@@ -185,7 +226,7 @@ func newTrial(c *netlist.Circuit, unknowns []Unknown, near map[netlist.NodeID]fl
 	}
 	t.variables = variablesOf(c, ranges[len(crossed):])
 	if len(t.variables) > 0 {
-		if t.spread, err = newBench(c, nil, unknowns, nil); err != nil {
+		if t.spread, err = newBench(c, nil, unknowns, elsewhere); err != nil {
 			return nil, err
 		}
 	}

@@ -1,6 +1,7 @@
 package choose
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -244,12 +245,25 @@ func OhmsText(ohms float64) string {
 
 // Verify tells whether a circuit, read from a copy that Write made, has a choice's
 // operating point. The error says what differs.
-func (c *Choice) Verify(copied *netlist.Circuit, near map[netlist.NodeID]float64) error {
-	res, err := solve.Solve(copied, solve.Options{Near: near})
+func (a *Answer) Verify(c *Choice, copied *netlist.Circuit) error {
+	how := a.how
+	if how.near != nil { // a node that a pair makes moves those behind it
+		how.near = map[netlist.NodeID]float64{}
+		for i := range copied.Nodes {
+			at := slices.IndexFunc(a.Circuit.Nodes, func(n netlist.Node) bool { return n.Name == copied.Nodes[i].Name })
+			if volts, ok := a.how.near[netlist.NodeID(at)]; ok {
+				how.near[netlist.NodeID(i)] = volts
+			}
+		}
+	}
+	b, err := newBench(copied, nil, nil, how)
 	if err != nil {
 		return err
 	}
-	verdicts := solve.Judge(res.Point, nil)
+	if !b.at(nil) {
+		return errors.New("it has no operating point")
+	}
+	verdicts := solve.JudgeAt(copied, b.state, nil)
 	if len(verdicts) > len(c.Requirements) {
 		return fmt.Errorf("it has %d requirements, and the file %d", len(verdicts), len(c.Requirements))
 	}

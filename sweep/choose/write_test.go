@@ -85,7 +85,7 @@ func TestWhatIsWrittenIsWhatWasChosen(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			if err := c.Verify(read(t, "copy.bias", string(copied)), nil); err != nil {
+			if err := a.Verify(c, read(t, "copy.bias", string(copied))); err != nil {
 				t.Errorf("%v\n%s", err, copied)
 			}
 		}
@@ -99,7 +99,7 @@ func TestVerifyTellsAnotherCircuit(t *testing.T) {
 	const text = "rail V = 9 V\npath V -> RU 2k -> tap -> RD ? E24 -> gnd\ntarget tap.V = 3 V within 5%\n"
 	a := find(t, text)
 	other := strings.Replace(text, "? E24", "1001", 1)
-	if err := a.Choices[0].Verify(read(t, "other.bias", other), nil); err == nil {
+	if err := a.Verify(&a.Choices[0], read(t, "other.bias", other)); err == nil {
 		t.Error("1001 ohm passes for 1 kohm")
 	}
 }

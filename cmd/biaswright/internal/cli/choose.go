@@ -167,11 +167,7 @@ func (r *runner) writeChoice(a *render.ChooseAnswer, text []byte, q *chooseReque
 	if wrong.HasErrors() {
 		return refuse("the copy would not stand: %s", wrong[0].Message)
 	}
-	near, wrong := nearPoint(c, q.near)
-	if wrong.HasErrors() {
-		return refuse("%s", wrong[0].Message)
-	}
-	if err := best.Verify(c, near); err != nil {
+	if err := a.Found.Verify(best, c); err != nil {
 		return refuse("the copy would be another circuit: %v", err)
 	}
 	if err := r.create(q.write, copied); err != nil {
