@@ -30,13 +30,15 @@ func read(t testing.TB, name, text string) *netlist.Circuit {
 	return c
 }
 
-func shipped(t testing.TB, name string) string {
+// shipped gives the name and text of a circuit that ships.
+func shipped(t testing.TB, circuit string) (name, text string) {
 	t.Helper()
-	text, err := os.ReadFile(filepath.Join("..", "..", "testdata", "circuits", name+".bias"))
+	name = filepath.Join("..", "..", "testdata", "circuits", circuit+".bias")
+	b, err := os.ReadFile(name)
 	if err != nil {
 		t.Fatal(err)
 	}
-	return string(text)
+	return name, string(b)
 }
 
 // An exhaustive search tries every combination of a grid, each corner solved cold, and
@@ -427,6 +429,11 @@ func compare(t *testing.T, name, text string, o choose.Options) {
 // The short list is that of an exhaustive search of the stated grid, on every circuit
 // that ships with one to three of its resistors reopened.
 func TestAgainstExhaustiveSearch(t *testing.T) {
+	files, err := filepath.Glob(filepath.Join("..", "..", "testdata", "circuits", "*.bias"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	seen := map[string]bool{}
 	for _, x := range []struct {
 		circuit, more string
 		reopen        string
@@ -434,16 +441,21 @@ func TestAgainstExhaustiveSearch(t *testing.T) {
 	}{
 		{circuit: "mast-lamp", reopen: "RE=E24"},
 		{circuit: "mast-lamp", reopen: "RE=E6 R1=E3"},
+		{circuit: "mast-resistor", reopen: "RS=E192"},
+		{circuit: "mast-divider", reopen: "R1=E3 R2=E3"},
+		{circuit: "mast-limiter", reopen: "RE=E6 R1=E3"},
+		{circuit: "mast-zener", reopen: "RE=E6 R1=E3"},
 		{circuit: "pressure-source", reopen: "RE=E96"},
-		{circuit: "pressure-source", reopen: "RE=E6 RB=E6"},
-		{circuit: "pressure-source", reopen: "RE=E6 RB=E3 BRIDGE=E3"},
+		{circuit: "pressure-source", reopen: "RE=E6 RB=E3"},
+		{circuit: "pressure-source", reopen: "RE=E3 RB=E3 BRIDGE=E3"},
 		{circuit: "sensor-bank", reopen: "RSET=E12"},
 		{circuit: "sensor-bank", reopen: "RP1=E3 RP2=E3"},
 		{circuit: "sensor-bank", reopen: "RP1=E24 RP2=E24 RP3=E24", most: 27},
 		{circuit: "w1", more: "target LAMP.I = 12 mA within 5%\n", reopen: "RE=E24 R1=E6"},
-		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\ntarget RL8.V = 5 V within 0.5 V\nkeep QO8.Vec > 1 V\n", reopen: "RREF=E6 RL8=E6"},
+		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\ntarget RL8.V = 5 V within 0.5 V\nkeep QO8.Vec > 1 V\n", reopen: "RREF=E6 RL8=E3"},
 		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\n", reopen: "RREF=E3 RN1=E3 RE1=E3"},
 	} {
+		seen[x.circuit+".bias"] = true
 		t.Run(x.circuit+" "+x.reopen, func(t *testing.T) {
 			t.Parallel()
 			o := choose.Options{Workers: 2, Most: x.most}
@@ -451,8 +463,14 @@ func TestAgainstExhaustiveSearch(t *testing.T) {
 				name, series, _ := strings.Cut(word, "=")
 				o.Reopen = append(o.Reopen, choose.Reopening{Name: name, Series: series})
 			}
-			compare(t, x.circuit, shipped(t, x.circuit)+x.more, o)
+			name, text := shipped(t, x.circuit)
+			compare(t, name, text+x.more, o)
 		})
+	}
+	for _, file := range files {
+		if !seen[filepath.Base(file)] {
+			t.Errorf("%s is not among them", file)
+		}
 	}
 }
 

@@ -68,7 +68,7 @@ func TestWrite(t *testing.T) {
 
 // What is written reads as the circuit that was chosen, pairs included.
 func TestWhatIsWrittenIsWhatWasChosen(t *testing.T) {
-	const sinks = 30
+	const sinks = 12
 	pairs := 0
 	for seed := range uint64(sinks) {
 		text := randomSink(rand.New(rand.NewPCG(seed, 2)))
