@@ -3,6 +3,7 @@ package choose
 import (
 	"fmt"
 	"math"
+	"math/big"
 	"slices"
 	"sort"
 
@@ -164,47 +165,66 @@ func (s *seeker) slopes() (*mat.Dense, bool) {
 }
 
 // scan evaluates a coarse grid of equal ratios, and the stated values of what was
-// reopened.
+// reopened. For more unknowns than three a grid would be too coarse: then as many places
+// are spread evenly over the usual sizes.
 func (s *seeker) scan() []*place {
 	const (
 		most  = 1200 // places, some milliseconds
 		dense = 65   // eight a decade: two solutions of one value lie further apart
+		three = 3
 	)
-	n := len(s.unknowns)
-	per := min(dense, max(1, int(math.Pow(most, 1/float64(n))+1e-9)))
-	low, high := math.Log(LeastOhms), math.Log(MostOhms)
-	at := func(k int) float64 {
-		if per == 1 {
-			return math.Log(unremarkable)
-		}
-		return low + (high-low)*float64(k)/float64(per-1)
-	}
 	var out []*place
-	u, count := make([]float64, n), make([]int, n)
-	for {
-		for i := range u {
-			u[i] = at(count[i])
-		}
+	look := func(u []float64) {
 		if s.t.nominal.how.ladder { // a neighbour may stand on the branch that is not wanted
 			s.t.nominal.warm = false
 		}
 		if p := s.at(u); p != nil {
 			out = append(out, p)
 		}
-		if !next(count, func(int) int { return per }) {
-			break
+	}
+	n := len(s.unknowns)
+	if n > three {
+		s.spread(most, look)
+	} else {
+		per := min(dense, int(math.Pow(most, 1/float64(n))))
+		low, high := math.Log(LeastOhms), math.Log(MostOhms)
+		u, count := make([]float64, n), make([]int, n)
+		for more := true; more; more = next(count, func(int) int { return per }) {
+			for i := range u {
+				u[i] = low + (high-low)*float64(count[i])/float64(per-1)
+			}
+			look(u)
 		}
 	}
-	if slices.ContainsFunc(s.unknowns, func(u Unknown) bool { return !(u.stated > 0) }) {
-		return out
+	stated := make([]float64, n)
+	for i := range s.unknowns {
+		if stated[i] = math.Log(s.unknowns[i].stated); math.IsNaN(stated[i]) {
+			stated[i] = math.Log(unremarkable)
+		}
 	}
-	for i := range u {
-		u[i] = math.Log(s.unknowns[i].stated)
-	}
-	if p := s.at(u); p != nil {
-		out = append(out, p)
-	}
+	look(stated)
 	return out
+}
+
+// spread looks at so many places over the usual sizes of bias resistors, evenly in every
+// direction: by the fractions of multiples of the square roots of primes (R. D. Richtmyer's
+// sequence; from memory).
+func (s *seeker) spread(places int, look func(u []float64)) {
+	const low, high = 10, 1e6 // ohm; common practice
+	u := make([]float64, len(s.unknowns))
+	var root []float64
+	for p := 2; len(root) < len(u); p++ {
+		if big.NewInt(int64(p)).ProbablyPrime(0) { // exact for numbers as small
+			root = append(root, math.Sqrt(float64(p)))
+		}
+	}
+	for k := range places {
+		for i := range u {
+			_, fraction := math.Modf(float64(k+1) * root[i])
+			u[i] = math.Log(low) + fraction*math.Log(high/low)
+		}
+		look(u)
+	}
 }
 
 // next counts on, the last digit first; false after the last.
