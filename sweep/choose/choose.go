@@ -9,8 +9,9 @@
 // decided in this order:
 //
 //  1. no stated rating is exceeded at any end of the ranges;
-//  2. the number of requirements (targets, keeps, the hold) that are not met somewhere
-//     there: the fewer the better;
+//  2. the largest miss of a target, keep or hold there: nothing where all are met;
+//     otherwise how far a quantity lies beyond its band, in units of the band, or beyond
+//     the bound of a keep, as a fraction of the bound;
 //  3. where all are met, fewer resistors;
 //  4. the largest deviation of a target there, in units of its band: |Q - target|
 //     over the width that the file states, 1 at the band's edge;
@@ -134,10 +135,11 @@ type Choice struct {
 	// nil altogether where every value is one resistor.
 	Pairs []*Pair
 	// Unmet counts the requirements that are not met somewhere in the stated ranges
-	// and tolerances. Score is the largest deviation of a target there, in units of
+	// and tolerances, and Miss is by how much the worst of them is missed: in units of the
+	// band beyond it, or of the bound of a keep. Score is the largest deviation of a target there, in units of
 	// its band; +Inf where some corner has no operating point.
-	Unmet int
-	Score float64
+	Unmet       int
+	Miss, Score float64
 	// Nominal is the nominal point; Requirements are in the order of solve.Judge.
 	Nominal      *solve.Point
 	Requirements []Requirement

@@ -285,3 +285,14 @@ target RE.I = 100 uA within 10%
 		}
 	}
 }
+
+// Where not everything can be met, the largest miss is made small, not their number.
+func TestLargestMissDecides(t *testing.T) {
+	a := find(t, "path gnd -> I1 1 mA -> a -> R ? E96 -> gnd\ntarget a.V = 1 V within 40%\nkeep a.V > 1.11 V\nkeep 2 * a.V < 2.11 V")
+	// At 1.05 kohm the first keep alone is missed, by 0.06/1.11; at 1.07 kohm both are, the
+	// first by 0.04/1.11 and the second by 0.03/2.11; at 1.1 kohm the second by 0.09/2.11.
+	c := a.Choices[0]
+	if want := 0.04 / 1.11; c.Ohms[0] != 1070 || !close(c.Miss, want, 1e-9) || c.Unmet != 2 {
+		t.Errorf("%v missed by %g with %d, want 1070 by %g", c.Ohms, c.Miss, c.Unmet, want)
+	}
+}

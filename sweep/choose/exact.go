@@ -534,13 +534,22 @@ func (s *seeker) nearest(starts []*place) *place {
 // deviates least is left to the grid: without need it leads to extremes.
 func (s *seeker) pick(found []*place) *place {
 	var best *place
-	var bestKey key
-	for i, p := range found {
+	burnt, unmet := true, math.MaxInt
+	for _, p := range found {
 		s.from(p)
-		k := s.t.judge(s.take(p.u), key{at: i}, worstKey)
-		k.score, k.away = 0, p.away
-		if best == nil || k.less(bestKey) {
-			best, bestKey = p, k
+		s.t.judge(s.take(p.u), key{}, worstKey)
+		y := &s.t.tally
+		better := false
+		switch {
+		case best == nil, burnt != y.burnt:
+			better = best == nil || burnt
+		case unmet != y.unmet:
+			better = y.unmet < unmet
+		default:
+			better = p.away < best.away
+		}
+		if better {
+			best, burnt, unmet = p, y.burnt, y.unmet
 		}
 	}
 	return best

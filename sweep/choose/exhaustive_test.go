@@ -63,6 +63,7 @@ type result struct {
 	ohms  []float64
 	burnt bool
 	unmet int
+	miss  float64
 	score float64
 	away  float64
 }
@@ -180,7 +181,7 @@ func (x *exhaustive) judge(ohms []float64) result {
 	var nominal, holdFrom *solve.Point
 	see := func(p *solve.Point) {
 		if p == nil {
-			r.score = math.Inf(1)
+			r.score, r.miss = math.Inf(1), math.Inf(1)
 			for _, v := range solve.Judge(nominal, holdFrom) {
 				unmet[[2]any{v.Kind, v.Index}] = true
 			}
@@ -189,6 +190,7 @@ func (x *exhaustive) judge(ohms []float64) result {
 		for _, v := range solve.Judge(p, holdFrom) {
 			if !v.Met {
 				unmet[[2]any{v.Kind, v.Index}] = true
+				r.miss = math.Max(r.miss, missed(x.c, &v))
 			}
 			if v.Kind == "target" {
 				target := &x.c.Targets[v.Index]
@@ -209,7 +211,7 @@ func (x *exhaustive) judge(ohms []float64) result {
 		p := cold(at.plain, values)
 		if i == 0 {
 			if nominal = p; p == nil {
-				r.score, r.unmet = math.Inf(1), math.MaxInt
+				r.score, r.miss, r.unmet = math.Inf(1), math.Inf(1), math.MaxInt
 				return r
 			}
 			if x.c.Hold != nil {
@@ -340,9 +342,9 @@ func (x *exhaustive) best(exact []float64) []result {
 		switch {
 		case a.burnt != b.burnt:
 			return b.burnt
-		case a.unmet != b.unmet:
-			return a.unmet < b.unmet
-		case math.Abs(a.score-b.score) > alike && !(math.IsInf(a.score, 1) && math.IsInf(b.score, 1)):
+		case differ(a.miss, b.miss):
+			return a.miss < b.miss
+		case differ(a.score, b.score):
 			return a.score < b.score
 		}
 		return a.away < b.away-alike
@@ -350,8 +352,36 @@ func (x *exhaustive) best(exact []float64) []result {
 	return all
 }
 
-// alike is a difference of scores that rounding may turn round.
+// alike is a difference of misses or scores that rounding may turn round.
 const alike = 1e-8
+
+func differ(a, b float64) bool { return a != b && !(math.Abs(a-b) <= alike) }
+
+// missed is by how much a requirement is missed, from what the file says of it.
+func missed(c *netlist.Circuit, v *solve.Verdict) float64 {
+	half := func(within float64, relative bool, about float64) float64 {
+		if relative {
+			return within * math.Abs(about)
+		}
+		return within
+	}
+	by := 0.0
+	switch v.Kind {
+	case "target":
+		target := &c.Targets[v.Index]
+		by = math.Abs(v.Value-target.Value)/half(target.Within, target.Relative, target.Value) - 1
+	case "hold":
+		middle := (v.Low + v.High) / 2
+		by = math.Abs(v.Value-middle)/half(c.Hold.Within, c.Hold.Relative, middle) - 1
+	default:
+		bound := v.High
+		if c.Keeps[v.Index].Greater {
+			bound = v.Low
+		}
+		by = math.Abs(v.Value-bound) / math.Abs(bound) // no bound here is 0
+	}
+	return math.Max(by, 0)
+}
 
 // gridOf lists the values of a series between two of its values, both included, by the
 // tables of IEC 60063.
@@ -412,13 +442,12 @@ func compare(t *testing.T, name, text string, o choose.Options) {
 	}
 	for i, got := range a.Choices {
 		want := all[i]
-		if len(got.Ratings) > 0 != want.burnt || got.Unmet != want.unmet && want.unmet != math.MaxInt || !(math.Abs(got.Score-want.score) <= alike || got.Score == want.score) {
+		if len(got.Ratings) > 0 != want.burnt || got.Unmet != want.unmet && want.unmet != math.MaxInt || differ(got.Miss, want.miss) || differ(got.Score, want.score) {
 			t.Errorf("%s, place %d: %v with %d unmet, score %.12g, ratings %v; exhaustive has %+v\n%s", name, i+1, got.Ohms, got.Unmet, got.Score, got.Ratings, want, text)
 			return
 		}
 		unique := !slices.ContainsFunc(all, func(r result) bool {
-			return !slices.Equal(r.ohms, want.ohms) && r.burnt == want.burnt && r.unmet == want.unmet &&
-				(math.Abs(r.score-want.score) <= alike || r.score == want.score)
+			return !slices.Equal(r.ohms, want.ohms) && r.burnt == want.burnt && !differ(r.miss, want.miss) && !differ(r.score, want.score)
 		})
 		if unique && !slices.Equal(got.Ohms, want.ohms) {
 			t.Errorf("%s, place %d: %v, exhaustive has %v", name, i+1, got.Ohms, want.ohms)

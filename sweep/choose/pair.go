@@ -86,9 +86,9 @@ func (s *seeker) ideal(ohms []float64) []float64 {
 		if k.less(bestKey) {
 			best, bestKey = inside, k
 		}
-		// What is not met at all counts more than any deviation that could be.
-		const burnt, unmet, nowhere = 1e9, 1e6, 1e5
-		f := math.Min(k.score, nowhere) + unmet*float64(k.unmet) + beyond
+		// What is missed counts more than any deviation within the bands.
+		const burnt, missed, nowhere = 1e9, 1e3, 1e5
+		f := math.Min(k.score, nowhere) + missed*math.Min(k.miss, nowhere) + beyond
 		if k.burnt {
 			f += burnt
 		}

@@ -314,7 +314,7 @@ func followers(c *netlist.Circuit) []bool {
 // A key orders combinations; see the package's documentation.
 type key struct {
 	burnt bool // a rating is exceeded
-	unmet int
+	miss  float64
 	pairs int // resistors more than one a value
 	score float64
 	away  float64
@@ -322,7 +322,7 @@ type key struct {
 }
 
 // worstKey is behind every other.
-var worstKey = key{burnt: true, unmet: math.MaxInt, score: math.Inf(1), away: math.Inf(1), at: math.MaxInt}
+var worstKey = key{burnt: true, miss: math.Inf(1), score: math.Inf(1), away: math.Inf(1), at: math.MaxInt}
 
 // less compares scores and distances to so many parts of a band or of an e-fold:
 // above what rounding does to a solution, below what matters.
@@ -331,9 +331,9 @@ func (a key) less(b key) bool {
 	switch {
 	case a.burnt != b.burnt:
 		return b.burnt
-	case a.unmet != b.unmet:
-		return a.unmet < b.unmet
-	case a.unmet == 0 && a.pairs != b.pairs:
+	case !alike(a.miss, b.miss, parts):
+		return a.miss < b.miss
+	case a.miss == 0 && a.pairs != b.pairs:
 		return a.pairs < b.pairs
 	case !alike(a.score, b.score, parts):
 		return a.score < b.score
@@ -350,11 +350,12 @@ func alike(a, b, parts float64) bool {
 // A tally is what is known so far of one combination.
 type tally struct {
 	key
-	met []bool // by requirement, in the order of verdicts
+	met   []bool // by requirement, in the order of verdicts
+	unmet int
 }
 
 func (y *tally) begin(requirements int, k key) {
-	y.key = k
+	y.key, y.unmet = k, 0
 	y.met = y.met[:0]
 	for range requirements {
 		y.met = append(y.met, true)
@@ -371,14 +372,40 @@ func (y *tally) add(g sight) {
 		}
 	}
 	if g.failed {
-		y.score = math.Inf(1)
+		y.miss, y.score = math.Inf(1), math.Inf(1)
 	}
 	for i := range g.verdicts {
-		if v := &g.verdicts[i]; v.Kind == "target" {
+		v := &g.verdicts[i]
+		if v.Kind == "target" {
 			y.score = math.Max(y.score, Deviation(v))
+		}
+		if !v.Met {
+			y.miss = math.Max(y.miss, missOf(v))
 		}
 	}
 	y.burnt = y.burnt || len(g.exceeded) > 0
+}
+
+// missOf is by how much a requirement is missed: beyond its band in units of the band, or
+// beyond a keep's bound as a fraction of the bound, of which a bound of 0 has none and
+// counts whole.
+func missOf(v *solve.Verdict) float64 {
+	const least = 1e-9 // a bound is strict: what stands on it is missed by nothing
+	by := math.Inf(1)
+	switch {
+	case math.IsNaN(v.Margin):
+	case v.Kind != "keep":
+		by = Deviation(v) - 1
+	default:
+		bound := v.Low
+		if math.IsInf(bound, 0) {
+			bound = v.High
+		}
+		if by = 1; bound != 0 {
+			by = -v.Margin / math.Abs(bound)
+		}
+	}
+	return math.Max(by, least)
 }
 
 // verdicts judges a solution. A hold is judged only where the file states one, against

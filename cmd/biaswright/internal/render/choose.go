@@ -260,9 +260,13 @@ func printChoices(w io.Writer, a *choose.Answer, l Look) {
 			flow(w, fmt.Sprintf("  %-7s", line.name), words)
 		}
 	}
-	wrap(w, "", l.text("Nominal and worst: the largest deviation of a target, where 1 is the edge of its band. Behind a value: the coarsest series that has it; E24 is no part of E48 to E192."))
+	says := "Nominal and worst: the largest deviation of a target, where 1 is the edge of its band."
+	if slices.ContainsFunc(lines, func(line listed) bool { return line.c.Unmet > 0 }) {
+		says += " By: the largest miss, beyond a band or, of a keep, as a share of its bound."
+	}
+	wrap(w, "", l.text(says+" Behind a value: the coarsest series that has it; E24 is no part of E48 to E192."))
 	if a.Ideal != nil {
-		says := "No single resistors meet everything, so pairs were tried: + in series, ∥ in parallel. Ideal: the values, preferred or not, whose worst deviation is least"
+		says = "No single resistors meet everything, so pairs were tried: + in series, ∥ in parallel. Ideal: the values, preferred or not, whose worst deviation is least"
 		if !a.Ideal.Met() {
 			says += "; even they do not meet everything"
 		}
@@ -300,7 +304,7 @@ func verdictCell(c *choose.Choice) cell {
 	case len(c.Ratings) > 0:
 		return cell{"RATING EXCEEDED", bad}
 	}
-	return cell{fmt.Sprintf("%d NOT MET", c.Unmet), bad}
+	return cell{fmt.Sprintf("%d NOT MET, by %s", c.Unmet, bands(c.Miss)), bad}
 }
 
 // valueText writes a chosen value, or the two that make it up, each with the coarsest

@@ -50,6 +50,7 @@ type choiceJSON struct {
 	Values       []chosenJSON      `json:"values"`
 	Met          bool              `json:"met"`
 	Unmet        int               `json:"unmet"`
+	MissedBy     num               `json:"missed_by"`
 	Nominal      num               `json:"nominal"`
 	Worst        num               `json:"worst"`
 	Drawn        num               `json:"drawn"`
@@ -136,7 +137,7 @@ func ChooseJSON(a *ChooseAnswer) any {
 
 func choice(a *choose.Answer, c *choose.Choice) choiceJSON {
 	j := choiceJSON{
-		Met: c.Met(), Unmet: c.Unmet, Nominal: num(c.NominalScore()), Worst: num(c.Score), Drawn: num(c.Draw),
+		Met: c.Met(), Unmet: c.Unmet, MissedBy: num(c.Miss), Nominal: num(c.NominalScore()), Worst: num(c.Score), Drawn: num(c.Draw),
 		Rails: list[railJSON]{}, Requirements: []requirementJSON{}, Ratings: []ratingJSON{},
 	}
 	for i := range a.Unknowns {
