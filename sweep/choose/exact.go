@@ -529,27 +529,31 @@ func (s *seeker) nearest(starts []*place) *place {
 	return best
 }
 
-// pick chooses among several solutions: the one at which fewest requirements fail
-// somewhere, then the one nearest to the values stated or to unremarkable ones. What
-// deviates least is left to the grid: without need it leads to extremes.
+// pick chooses among several solutions: one that exceeds no rating, then one at which all
+// is met everywhere, then the one at which fewest keeps fail nominally, then the one
+// nearest to the values stated or to unremarkable ones. What deviates least is left to
+// the grid: without need it leads to extremes.
 func (s *seeker) pick(found []*place) *place {
-	var best *place
-	burnt, unmet := true, math.MaxInt
-	for _, p := range found {
+	rank := func(p *place) (burnt, missed bool) {
 		s.from(p)
-		s.t.judge(s.take(p.u), key{}, worstKey)
-		y := &s.t.tally
-		better := false
+		k := s.t.judge(s.take(p.u), key{}, worstKey)
+		return k.burnt, k.miss > 0
+	}
+	best := found[0]
+	burnt, missed := rank(best)
+	for _, p := range found[1:] {
+		b, m := rank(p)
+		better := p.away < best.away
 		switch {
-		case best == nil, burnt != y.burnt:
-			better = best == nil || burnt
-		case unmet != y.unmet:
-			better = y.unmet < unmet
-		default:
-			better = p.away < best.away
+		case b != burnt:
+			better = burnt
+		case m != missed:
+			better = missed
+		case p.unmet != best.unmet:
+			better = p.unmet < best.unmet
 		}
 		if better {
-			best, burnt, unmet = p, y.burnt, y.unmet
+			best, burnt, missed = p, b, m
 		}
 	}
 	return best
