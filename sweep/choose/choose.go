@@ -57,6 +57,9 @@ type Options struct {
 	Workers int
 	// Pair admits two resistors for a value where one will not do.
 	Pair bool
+	// Progress, where set, is told now and then how many combinations of all were tried,
+	// from the calling goroutine.
+	Progress func(done, all int)
 	// Most bounds the combinations tried. The grid is narrowed about the exact values
 	// where it is larger. 0 is 8 million for up to three unknowns, which holds three
 	// values of E96 over two decades each, and 300 000, some seconds, for more.

@@ -13,8 +13,9 @@ import (
 	"biaswright/solve"
 )
 
-// LeastOhms and MostOhms are the range in which resistances are looked for, in ohms: that of ordinary parts
-// (common practice); leastEver and mostEver are how far the search itself may stray.
+// LeastOhms and MostOhms are the range in which resistances are looked for, in ohms: that
+// of ordinary parts (common practice); leastEver and mostEver are how far the search itself
+// may stray.
 const (
 	LeastOhms, MostOhms = 0.1, 10e6
 	leastEver, mostEver = 0.01, 1e9

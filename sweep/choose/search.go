@@ -1,11 +1,10 @@
 package choose
 
 import (
+	"errors"
 	"math"
 	"slices"
 	"sort"
-	"sync"
-	"sync/atomic"
 
 	"biaswright/solve"
 )
@@ -63,23 +62,29 @@ func (a *Answer) search(o Options) error {
 	// The neighbours of the exact values first: what is best is mostly among them, and
 	// bounds all that follows.
 	all[0].neighbours()
-	var row atomic.Int64
-	var wait sync.WaitGroup
-	for _, s := range all {
+	for _, s := range all[1:] {
 		s.best.entries = slices.Clone(all[0].best.entries)
 	}
-	for _, s := range all {
-		wait.Go(func() {
-			for {
-				first := int(row.Add(1)) - 1
-				if first >= len(a.Unknowns[0].grid) {
-					return
-				}
-				s.row(first)
-			}
-		})
+	rows := len(a.Unknowns[0].grid)
+	todo, done := make(chan int, rows), make(chan int, rows)
+	for row := range rows {
+		todo <- row
 	}
-	wait.Wait()
+	close(todo)
+	for _, s := range all {
+		go func() {
+			for row := range todo {
+				s.row(row)
+				done <- row
+			}
+		}()
+	}
+	for row := range rows {
+		<-done
+		if o.Progress != nil {
+			o.Progress(a.Combinations/rows*(row+1), a.Combinations)
+		}
+	}
 	best := all[0].best
 	for _, s := range all[1:] {
 		for _, e := range s.best.entries {
@@ -97,16 +102,23 @@ func (a *Answer) search(o Options) error {
 	return a.list(&best)
 }
 
-// list fills in the choices.
+// list fills in the choices, without those that have no operating point.
 func (a *Answer) list(best *short) error {
 	a.Choices = nil
+	var none *solve.Failure
 	for _, e := range best.entries {
 		c, err := a.detail(e.ohms)
-		if err != nil {
+		switch {
+		case errors.As(err, &none):
+			continue
+		case err != nil:
 			return err
 		}
 		c.Pairs = e.pairs
 		a.Choices = append(a.Choices, c)
+	}
+	if len(a.Choices) == 0 {
+		return none
 	}
 	return nil
 }

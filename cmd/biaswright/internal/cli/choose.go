@@ -129,7 +129,15 @@ func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *t
 		return refuse(wrong)
 	}
 	a := &render.ChooseAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
-	a.Found, err = choose.Find(c, choose.Options{Reopen: q.reopen, List: q.list, Near: near, Workers: q.workers, Pair: q.pair})
+	progress := r.progress(0, "combinations")
+	a.Found, err = choose.Find(c, choose.Options{
+		Reopen: q.reopen, List: q.list, Near: near, Workers: q.workers, Pair: q.pair,
+		Progress: func(done, all int) {
+			progress.rows = all
+			progress.to(done)
+		},
+	})
+	progress.erase()
 	var mend *choose.Error
 	switch {
 	case errors.As(err, &mend):

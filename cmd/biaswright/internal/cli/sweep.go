@@ -122,7 +122,7 @@ func (r *runner) sweepFile(name string, q *sweepRequest) error {
 		return r.finishSweep(a, q, nil)
 	}
 	rows := r.rowPrinter(a, q)
-	progress := r.progress(plan.Points())
+	progress := r.progress(plan.Points(), "points")
 	var tally render.Tally
 	drawn := r.sweepDrawing(q, a, plan)
 	err := sweep.Run(context.Background(), *plan, func(row sweep.Row) error {
@@ -289,12 +289,13 @@ func shownQuantities(c *netlist.Circuit, asked []string) []string {
 type progress struct {
 	w          io.Writer // nil where there is nobody to tell
 	done, rows int
+	what       string
 	last       time.Time
 	told       bool
 }
 
-func (r *runner) progress(rows int) *progress {
-	p := &progress{rows: rows, last: time.Now()}
+func (r *runner) progress(rows int, what string) *progress {
+	p := &progress{rows: rows, what: what, last: time.Now()}
 	if f, ok := r.err.(*os.File); ok && term.IsTerminal(int(f.Fd())) {
 		p.w = f
 	}
@@ -303,13 +304,25 @@ func (r *runner) progress(rows int) *progress {
 
 func (p *progress) step() {
 	p.done++
+	const seldom = 64 // rows between looks at the clock
+	if p.done%seldom == 0 {
+		p.tell()
+	}
+}
+
+// to notes that so many are done.
+func (p *progress) to(done int) {
+	p.done = done
+	p.tell()
+}
+
+func (p *progress) tell() {
 	const interval = 200 * time.Millisecond // quick enough to be read as movement
-	const seldom = 64                       // rows between looks at the clock
-	if p.w == nil || p.done%seldom != 0 || time.Since(p.last) < interval {
+	if p.w == nil || time.Since(p.last) < interval {
 		return
 	}
 	p.last, p.told = time.Now(), true
-	fmt.Fprintf(p.w, "\r%d of %d points", p.done, p.rows)
+	fmt.Fprintf(p.w, "\r%d of %d %s", p.done, p.rows, p.what)
 }
 
 func (p *progress) erase() {
