@@ -170,8 +170,8 @@ func (s *seeker) slopes() (*mat.Dense, bool) {
 // are spread evenly over the usual sizes.
 func (s *seeker) scan() []*place {
 	const (
-		most  = 1200 // places, some milliseconds
-		dense = 65   // eight a decade: two solutions of one value lie further apart
+		most  = 600 // places, some milliseconds
+		dense = 65  // eight a decade: two solutions of one value lie further apart
 		three = 3
 	)
 	var out []*place
@@ -319,8 +319,8 @@ func (s *seeker) solutions(starts, seen []*place) []*place {
 		}
 	}
 	if len(s.unknowns) == 1 && len(s.t.c.Targets) == 1 {
-		for _, p := range s.bracketed(seen) {
-			add(p)
+		if found = s.bracketed(seen); len(found) > 0 {
+			return found
 		}
 	}
 	for _, from := range starts {

@@ -518,6 +518,68 @@ func TestAgainstExhaustiveSearchOnRandomSinks(t *testing.T) {
 	}
 }
 
+// At the choices that meet everything, no corner of the tolerances is worse than the ones
+// that the signs of the derivatives show: all corners of all tolerances are solved.
+func TestSignsShowTheWorstCorner(t *testing.T) {
+	const sinks = 60
+	judged := 0
+	for seed := range uint64(sinks) {
+		text := randomSink(rand.New(rand.NewPCG(seed, 3)))
+		c := read(t, "sink.bias", text)
+		a, err := choose.Find(c, choose.Options{List: 1})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if len(a.Choices) == 0 || !a.Choices[0].Met() {
+			continue
+		}
+		judged++
+		x := newExhaustive(t, c, a)
+		best := &a.Choices[0]
+		if score, met := x.everyCorner(best.Ohms); !met || score > best.Score*(1+1e-9) {
+			t.Errorf("%v: %.9g at every corner, %.9g found, met %v\n%s", best.Ohms, score, best.Score, met, text)
+		}
+	}
+	if judged < sinks/10 {
+		t.Errorf("only %d choices met everything", judged)
+	}
+}
+
+// everyCorner is the largest deviation of a target over all corners of ranges and
+// tolerances, and whether all is met there.
+func (x *exhaustive) everyCorner(ohms []float64) (score float64, met bool) {
+	var nominal *solve.Point
+	met = true
+	for i, at := range x.corners {
+		values := at.c.Values()
+		for k, id := range x.slots {
+			values[id] = ohms[k]
+		}
+		at.c.Propagate(values)
+		if i == 0 && x.c.Hold != nil {
+			nominal = cold(at.plain, values)
+		}
+		for k := range 1 << len(x.drawn) {
+			turned := slices.Clone(values)
+			for g, group := range x.drawn {
+				for _, id := range group {
+					low, high := ends(&at.c.Slots[id], turned[id])
+					if turned[id] = low; k>>g&1 == 1 {
+						turned[id] = high
+					}
+				}
+			}
+			for _, v := range solve.Judge(cold(at.moved, turned), nominal) {
+				met = met && v.Met
+				if v.Kind == "target" {
+					score = math.Max(score, choose.Deviation(&v))
+				}
+			}
+		}
+	}
+	return score, met
+}
+
 func randomSink(r *rand.Rand) string {
 	pick := func(of ...string) string { return of[r.IntN(len(of))] }
 	between := func(low, high float64) float64 { return low * math.Pow(high/low, r.Float64()) }
