@@ -47,7 +47,8 @@ func (d *Diode) Idealise(o *Ideal, size float64) {
 		d.Isat = size * drop.Amps
 		d.NVt *= drop.Factor
 		d.InvNVt = 1 / d.NVt
-		d.Shift, d.Floor = drop.Volts, math.Exp(-drop.Volts*d.InvNVt)
+		d.Shift = drop.Volts
+		d.Floor, _ = physics.ExpExpm1(-drop.Volts * d.InvNVt) // as At has it, so that 0 V is 0 A
 		d.Knee = physics.Knee(d.Isat)
 	}
 	if stand := &o.Breakdown; d.Zener && stand.Factor > 0 {
@@ -80,7 +81,8 @@ func (b *Bipolar) Idealise(o *Ideal, size float64) {
 	b.InvNVt /= drop.Factor
 	b.InvNrecVt /= drop.Factor
 	b.Shift = drop.Volts
-	b.Floor, b.FloorRec = math.Exp(-drop.Volts*b.InvNVt), math.Exp(-drop.Volts*b.InvNrecVt)
+	b.Floor, _ = physics.ExpExpm1(-drop.Volts * b.InvNVt)
+	b.FloorRec, _ = physics.ExpExpm1(-drop.Volts * b.InvNrecVt)
 }
 
 // Reach is the voltage in V at which the forward exponential carries amps, not

@@ -85,6 +85,8 @@ type Figure struct {
 	TolRel    float64  `json:"tol_rel"`
 	TolAbs    float64  `json:"tol_abs"`
 	Deviation *float64 `json:"full_model_deviation"`
+	// ClosedForm is the book's own idealised formula, evaluated to all digits.
+	ClosedForm *float64 `json:"closed_form"`
 }
 
 // A Probe is a terminal current, into the terminal (Direction "in") or out.

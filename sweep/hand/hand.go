@@ -58,6 +58,9 @@ type Answer struct {
 	Unsplit error
 	Rows    []Row
 	Rules   []Rule
+	// Suspects are the parameters whose change alone would explain most of what is
+	// measured, the best first; empty where all that is measured agrees.
+	Suspects []Suspect
 	// Verdicts are the targets at the full solution, in file order.
 	Verdicts []solve.Verdict
 }
@@ -84,6 +87,8 @@ type Row struct {
 	Ideal    float64 // the circuit with every assumption in force
 	Full     float64 // the full solution
 	Measured float64
+	// Agreement is the measured value's with the model; "" without one.
+	Agreement Agreement
 	// Shares are the players' of Full - Ideal; nil without a split.
 	Shares []float64
 }
@@ -136,6 +141,9 @@ func Check(c *netlist.Circuit, o Options) (*Answer, error) {
 	}
 	a.split()
 	a.Rules = a.rules()
+	if err := a.measured(); err != nil {
+		return nil, err
+	}
 	return a, nil
 }
 

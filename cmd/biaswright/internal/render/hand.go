@@ -49,6 +49,13 @@ func HandScreen(w io.Writer, a *HandAnswer, l Look) error {
 		fmt.Fprintln(p)
 		printRules(p, found, l)
 	}
+	if says := MeasuredTexts(found); len(says) > 0 {
+		fmt.Fprintln(p)
+		fmt.Fprintln(p, l.paint("Measured", bold))
+		for _, text := range says {
+			wrap(p, "  ", l.text(text))
+		}
+	}
 	return p.err
 }
 
@@ -453,4 +460,63 @@ func costText(a *hand.Answer, r *hand.Rule) string {
 		return costsNothing
 	}
 	return "costs here: " + strings.Join(costs, ", ")
+}
+
+// MeasuredTexts says which measured values the model does not give, and what would
+// explain them; nothing without measured values.
+func MeasuredTexts(a *hand.Answer) []string {
+	names := map[hand.Agreement][]string{}
+	for i := range a.Rows {
+		r := &a.Rows[i]
+		names[r.Agreement] = append(names[r.Agreement], r.Q.Text)
+	}
+	var says []string
+	for _, kind := range []struct {
+		agreement hand.Agreement
+		says      string
+	}{
+		{hand.Agrees, "as the model has it, within the 1 % of a hand meter"},
+		{hand.Reachable, "not what the nominal model has, but within the stated tolerances"},
+		{hand.Apart, "not what the model has, nor what the stated tolerances reach"},
+	} {
+		if of := names[kind.agreement]; len(of) > 0 {
+			says = append(says, strings.Join(of, ", ")+": "+kind.says)
+		}
+	}
+	if len(names[hand.Reachable])+len(names[hand.Apart]) > 0 {
+		says = append(says, suspectTexts(a)...)
+	}
+	return says
+}
+
+// suspectTexts names the parameter that explains most, and the next ones.
+func suspectTexts(a *hand.Answer) []string {
+	if len(a.Suspects) == 0 {
+		return []string{"no single value explains any of the differences"}
+	}
+	best := &a.Suspects[0]
+	says := []string{SuspectText(a, best) + fmt.Sprintf(" would explain %.3g %% of the differences", 100*best.Explained)}
+	const shown = 4
+	var next []string
+	for i := 1; i < len(a.Suspects) && i < shown; i++ {
+		s := &a.Suspects[i]
+		next = append(next, SuspectText(a, s)+fmt.Sprintf(" %.3g %%", 100*s.Explained))
+	}
+	if len(next) > 0 {
+		says = append(says, "next: "+strings.Join(next, "; "))
+	}
+	return says
+}
+
+// SuspectText says what a parameter would have to be, and whether it may.
+func SuspectText(a *hand.Answer, s *hand.Suspect) string {
+	slot := &a.Circuit.Slots[s.Slot]
+	unit := slot.Unit.Symbol()
+	where := "no bounds stated"
+	if bounded, inside := s.Stated(a.Circuit); inside {
+		where = "inside its " + rangeText(slot.Bounds, unit)
+	} else if bounded {
+		where = "outside its " + rangeText(slot.Bounds, unit)
+	}
+	return fmt.Sprintf("%s at %s instead of %s (%s)", s.Name, Measured(s.To, unit), stated(s.From, unit), where)
 }

@@ -22,6 +22,7 @@ type handJSON struct {
 	Checks   *[]handRowJSON `json:"quantities,omitempty"`
 	Unsplit  *string        `json:"unsplit,omitempty"`
 	Rules    *[]ruleJSON    `json:"rules,omitempty"`
+	Suspects *[]suspectJSON `json:"suspects,omitempty"`
 	Warnings diag.List      `json:"warnings"`
 }
 
@@ -56,6 +57,7 @@ type handRowJSON struct {
 	LeftOut    num             `json:"formula"`
 	Shares     []handShareJSON `json:"shares"`
 	Target     *handBandJSON   `json:"target"`
+	Agreement  *string         `json:"agreement"`
 }
 
 type handShareJSON struct {
@@ -83,6 +85,18 @@ type ruleJSON struct {
 	Says    string    `json:"says"`
 }
 
+type suspectJSON struct {
+	Name      string `json:"name"`
+	Unit      string `json:"unit"`
+	From      num    `json:"from"`
+	To        num    `json:"to"`
+	Explained num    `json:"explained"`
+	Low       num    `json:"low"`
+	High      num    `json:"high"`
+	Inside    *bool  `json:"inside"`
+	Says      string `json:"says"`
+}
+
 // HandJSON is the answer for scripts.
 func HandJSON(a *HandAnswer) any {
 	j := &handJSON{
@@ -107,6 +121,22 @@ func HandJSON(a *HandAnswer) any {
 	}
 	for i := range found.Rules {
 		*j.Rules = append(*j.Rules, rule(found, &found.Rules[i]))
+	}
+	j.Suspects = &[]suspectJSON{}
+	for i := range found.Suspects {
+		*j.Suspects = append(*j.Suspects, suspect(found, &found.Suspects[i]))
+	}
+	return j
+}
+
+func suspect(a *hand.Answer, s *hand.Suspect) suspectJSON {
+	slot := &a.Circuit.Slots[s.Slot]
+	j := suspectJSON{
+		Name: s.Name, Unit: slot.Unit.String(), From: num(s.From), To: num(s.To), Explained: num(s.Explained),
+		Low: num(math.NaN()), High: num(math.NaN()), Says: SuspectText(a, s),
+	}
+	if bounded, inside := s.Stated(a.Circuit); bounded {
+		j.Low, j.High, j.Inside = num(slot.Bounds.Low), num(slot.Bounds.High), &inside
 	}
 	return j
 }
@@ -139,6 +169,10 @@ func handRow(a *hand.Answer, r *hand.Row) handRowJSON {
 	}
 	for i, s := range r.Shares {
 		j.Shares = append(j.Shares, handShareJSON{a.Players[i].Text, num(s), num(s / math.Abs(r.Hand))})
+	}
+	if r.Agreement != "" {
+		says := string(r.Agreement)
+		j.Agreement = &says
 	}
 	if met, ok := a.InBand(r, r.Full); ok {
 		v := &a.Verdicts[r.Target]
