@@ -11,6 +11,9 @@ import (
 // point (Volts, Amps). As Factor goes to 0 the drop becomes fixed; at any Factor the
 // ratio of two junctions' currents at one voltage stays that of their sizes, so that a
 // mirror stays a circuit. The zero value leaves a junction as it is.
+//
+// A drop of hardly more than nothing is come to from above: 20 n V_T Factor are added to
+// one below 5 n V_T, so that no current of the size of Amps flows in reverse.
 type FixedDrop struct {
 	Volts float64 // V, not negative; of a breakdown its magnitude
 	Amps  float64 // A per unit of size, positive
@@ -31,6 +34,20 @@ type Ideal struct {
 	NoCollector bool
 }
 
+// The bounds of a drop of hardly more than nothing, in n V_T: e^-20 is 2e-9 of Amps.
+const (
+	slightDrop = 5
+	clearance  = 20
+)
+
+// volts is where the drop stands, for a junction of n V_T in V at its own ideality.
+func (f *FixedDrop) volts(nVt float64) float64 {
+	if f.Volts < slightDrop*nVt {
+		return f.Volts + clearance*nVt*f.Factor
+	}
+	return f.Volts
+}
+
 // aboveFloor is exp(x) - floor from f = exp(x) - 1 and df = exp(x), by the form that
 // keeps its digits; beyond the knee f and df are the tangent's.
 func aboveFloor(f, df, floor float64) float64 {
@@ -45,10 +62,10 @@ func (d *Diode) Idealise(o *Ideal, size float64) {
 	if drop := &o.Drop; drop.Factor > 0 {
 		d.Steep = true
 		d.Isat = size * drop.Amps
+		d.Shift = drop.volts(d.NVt)
 		d.NVt *= drop.Factor
 		d.InvNVt = 1 / d.NVt
-		d.Shift = drop.Volts
-		d.Floor, _ = physics.ExpExpm1(-drop.Volts * d.InvNVt) // as At has it, so that 0 V is 0 A
+		d.Floor, _ = physics.ExpExpm1(-d.Shift * d.InvNVt) // as At has it, so that 0 V is 0 A
 		d.Knee = physics.Knee(d.Isat)
 	}
 	if stand := &o.Breakdown; d.Zener && stand.Factor > 0 {
@@ -78,11 +95,11 @@ func (b *Bipolar) Idealise(o *Ideal, size float64) {
 	b.Steep = true
 	b.Isat = amps
 	b.Knee = physics.Knee(amps)
+	b.Shift = drop.volts(1 / b.InvNVt)
 	b.InvNVt /= drop.Factor
 	b.InvNrecVt /= drop.Factor
-	b.Shift = drop.Volts
-	b.Floor, _ = physics.ExpExpm1(-drop.Volts * b.InvNVt)
-	b.FloorRec, _ = physics.ExpExpm1(-drop.Volts * b.InvNrecVt)
+	b.Floor, _ = physics.ExpExpm1(-b.Shift * b.InvNVt)
+	b.FloorRec, _ = physics.ExpExpm1(-b.Shift * b.InvNrecVt)
 }
 
 // Reach is the voltage in V at which the forward exponential carries amps, not

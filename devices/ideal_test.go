@@ -71,7 +71,7 @@ func near(t rapid.TB, what string, got, want, small float64) {
 func TestFixedDrop(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		size := rapid.Float64Range(0.1, 10).Draw(t, "size")
-		volts := rapid.Float64Range(0.1, 4).Draw(t, "volts")
+		volts := rapid.Float64Range(0.2, 4).Draw(t, "volts")
 		amps := math.Pow(10, rapid.Float64Range(-9, 0).Draw(t, "decade"))
 		factor := math.Exp2(-rapid.Float64Range(1, 8).Draw(t, "halvings"))
 		k, p := idealParams(t, "diode", map[string]float64{"Isat": 1e-14})
@@ -101,7 +101,7 @@ func TestFixedDrop(t *testing.T) {
 func TestFixedDropOfATransistor(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		size := rapid.Float64Range(0.1, 10).Draw(t, "size")
-		volts := rapid.Float64Range(0.1, 1).Draw(t, "volts")
+		volts := rapid.Float64Range(0.2, 1).Draw(t, "volts")
 		amps := math.Pow(10, rapid.Float64Range(-6, 0).Draw(t, "decade"))
 		factor := math.Exp2(-rapid.Float64Range(1, 10).Draw(t, "halvings"))
 		k, p := idealParams(t, "npn", map[string]float64{"Isat": 1e-15, "betaF": 150, "betaR": 2, "VA": 70, "Irec": 1e-13})

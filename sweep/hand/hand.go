@@ -53,8 +53,8 @@ type Answer struct {
 	// stand as one.
 	Players []Player
 	Merged  bool
-	// Unsplit says why there is no idealised circuit to compare with, nil where there
-	// is one: a combination of assumptions leaves no operating point.
+	// Unsplit says why the difference is not shared out: a combination of assumptions
+	// leaves no operating point. It is nil where it is shared out.
 	Unsplit error
 	Rows    []Row
 	Rules   []Rule
@@ -257,19 +257,26 @@ func AssumedName(c *netlist.Circuit, item int) string {
 // difference out.
 func (a *Answer) split() {
 	k := len(a.Players)
-	values := make([][]float64, 1<<k) // by combination, by row
-	for set := range values {
+	all := 1<<k - 1
+	values := make([][]float64, all+1) // by combination, by row
+	// All of them first: what the formulas left out is told even if some others fail.
+	for i := range values {
+		set := all - i
 		v, err := a.under(set)
 		if err != nil {
-			a.Unsplit = fmt.Errorf("with %s assumed: %w", a.names(set), err)
-			return
+			a.Unsplit = fmt.Errorf("with %s assumed, %w", a.names(set), err)
+			break
 		}
 		values[set] = v
 	}
 	for i := range a.Rows {
 		r := &a.Rows[i]
-		r.Ideal = values[len(values)-1][i]
-		r.Shares = shapley(k, func(set int) float64 { return values[set][i] })
+		if values[all] != nil {
+			r.Ideal = values[all][i]
+		}
+		if a.Unsplit == nil {
+			r.Shares = shapley(k, func(set int) float64 { return values[set][i] })
+		}
 	}
 }
 
@@ -308,10 +315,7 @@ func (a *Answer) names(set int) string {
 		}
 		text += a.Players[i].Text
 	}
-	if text == "" {
-		return "nothing"
-	}
 	return text
 }
 
-var errNoLimit = errors.New("the quantities do not settle as the drops become fixed")
+var errNoLimit = errors.New("the currents do not settle as the drops become fixed: perhaps some stand against each other, or straight across a supply")

@@ -7,12 +7,14 @@ import (
 	"strings"
 	"testing"
 
+	"pgregory.net/rapid"
+
 	"biaswright/devices"
 	"biaswright/netlist"
 	"biaswright/sweep/hand"
 )
 
-func read(t testing.TB, name, text string) *netlist.Circuit {
+func read(t rapid.TB, name, text string) *netlist.Circuit {
 	t.Helper()
 	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), netlist.Files{})
 	if list.HasErrors() {
@@ -45,7 +47,7 @@ func demos(t *testing.T) []*netlist.Circuit {
 	return out
 }
 
-func check(t testing.TB, c *netlist.Circuit) *hand.Answer {
+func check(t rapid.TB, c *netlist.Circuit) *hand.Answer {
 	t.Helper()
 	a, err := hand.Check(c, hand.Options{})
 	if err != nil {

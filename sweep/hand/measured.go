@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"math"
 	"slices"
+	"strings"
 
 	"biaswright/netlist"
 	"biaswright/solve"
@@ -17,7 +18,7 @@ type Agreement string
 const (
 	// Agrees: within what a hand meter shows, 1 % (common practice).
 	Agrees Agreement = "agrees"
-	// Reachable: within the stated tolerances of the parts, to first order.
+	// Reachable: by itself within the stated tolerances of the parts, to first order.
 	Reachable Agreement = "within tolerances"
 	// Apart: the model, as stated, does not give it.
 	Apart Agreement = "apart"
@@ -46,17 +47,29 @@ func (s *Suspect) Stated(c *netlist.Circuit) (stated, inside bool) {
 	return b.Stated, b.Stated && s.To >= b.Low && s.To <= b.High
 }
 
-// away is how far the change goes outside what is stated: 0 inside bounds, 1 without
-// bounds, 2 outside.
-func (s *Suspect) away(c *netlist.Circuit) int {
-	switch stated, inside := s.Stated(c); {
-	case inside:
-		return 0
-	case stated:
-		return 2
-	default:
-		return 1
+// widths is the suspect's change in units of its tolerance: of the distance to the
+// bound on that side, 1 at the bound; where none is stated, of what is usual.
+func (s *Suspect) widths(c *netlist.Circuit) float64 {
+	width := math.Abs(usual(c, s.Slot) * s.From)
+	if b := &c.Slots[s.Slot].Bounds; b.Stated {
+		if width = b.High - s.From; s.To < s.From {
+			width = s.From - b.Low
+		}
 	}
+	return math.Abs(s.To-s.From) / width // +Inf at a bound that leaves no room
+}
+
+// usual is a relative tolerance where none is stated, common practice all: 1 % of a
+// bench supply, half of a transistor's gain or a saturation current, 5 % of the rest.
+func usual(c *netlist.Circuit, id netlist.SlotID) float64 {
+	if isRail(c, id) {
+		return 0.01
+	}
+	_, param, _ := strings.Cut(c.Slots[id].Name, ".")
+	if slices.Contains([]string{"Isat", "Irec", "betaF", "betaR", "VA"}, param) {
+		return 0.5
+	}
+	return 0.05
 }
 
 // alike is the difference of explained shares that no ranking rests on, and the share
@@ -117,7 +130,7 @@ func (a *Answer) agreement(r *Row, slope []float64) Agreement {
 	low, high := r.Full, r.Full
 	for _, id := range candidates(a.Circuit) {
 		s := &a.Circuit.Slots[id]
-		if !s.Bounds.Stated || a.isRail(id) {
+		if !s.Bounds.Stated || isRail(a.Circuit, id) {
 			continue // a rail's range is one of use, and the bench has one voltage
 		}
 		x, y := slope[id]*(s.Bounds.Low-s.Value), slope[id]*(s.Bounds.High-s.Value)
@@ -129,8 +142,8 @@ func (a *Answer) agreement(r *Row, slope []float64) Agreement {
 	return Apart
 }
 
-func (a *Answer) isRail(id netlist.SlotID) bool {
-	return slices.ContainsFunc(a.Circuit.Rails, func(r netlist.Rail) bool { return r.Volts == id })
+func isRail(c *netlist.Circuit, id netlist.SlotID) bool {
+	return slices.ContainsFunc(c.Rails, func(r netlist.Rail) bool { return r.Volts == id })
 }
 
 // parameters are those of parts that a wrong guess is likely in; the others are
@@ -178,8 +191,7 @@ func candidates(c *netlist.Circuit) []netlist.SlotID {
 }
 
 // suspects finds the parameters that explain most, the best first: those that explain
-// alike by whether the number needed lies inside stated bounds, then by the smaller
-// relative change.
+// alike by the smaller change in units of their tolerance.
 func (f *fit) suspects(slopes [][]float64) []Suspect {
 	c := f.a.Circuit
 	type guess struct {
@@ -222,13 +234,10 @@ func (f *fit) suspects(slopes [][]float64) []Suspect {
 		if group(&x) == 1 {
 			return cmp.Compare(y.Explained, x.Explained)
 		}
-		return cmp.Or(cmp.Compare(x.away(c), y.away(c)), cmp.Compare(change(x), change(y)))
+		return cmp.Compare(x.widths(c), y.widths(c))
 	})
 	return out
 }
-
-// change is the magnitude of a suspect's relative change.
-func change(s Suspect) float64 { return math.Abs(math.Log(s.To / s.From)) }
 
 // relative is a difference of the k-th measured value over that value.
 func (f *fit) relative(k int, difference float64) float64 {

@@ -227,8 +227,9 @@ func junctionOf(p *solve.Point, element int) (volts, amps float64) {
 // The way to a fixed drop: the junctions' points are moved to the assumed drops, then
 // the junctions made steeper by factors of the square root of two.
 const (
-	// reads bounds the readings: the last factor is a thousandth.
-	reads = 20
+	// reads bounds the readings: the last factor is a millionth. So far go only circuits
+	// whose current comes to nothing, such as one that lives on a difference of two V_BE.
+	reads = 40
 	// order is of the extrapolation; a higher one would sum up rounding.
 	order = 6
 	// enough is the order from which two extrapolations in a row are compared.
@@ -237,7 +238,7 @@ const (
 	// screen shows, above what rounding leaves.
 	settled = 1e-10
 	// worst is how far they may remain apart at the end.
-	worst = 1e-7
+	worst = 1e-5
 	// least is the smallest part of the way to the assumed drops taken at a time.
 	least = 1.0 / 64
 )
@@ -331,7 +332,7 @@ func (w *way) shift() error {
 			continue
 		}
 		if by /= 2; by < least {
-			return fmt.Errorf("the circuit has no operating point with the drops %.0f %% of the way", 100*next)
+			return fmt.Errorf("there is no operating point beyond %.0f %% of the way to the drops", 100*at)
 		}
 	}
 	return nil
@@ -348,7 +349,7 @@ func (a *Answer) limit(w *way) ([]float64, error) {
 		if !w.step(1, math.Exp2(-float64(read)/2)) {
 			break // junctions in reverse, perhaps, that hold a node by less than a double
 		}
-		now := [][]float64{a.read(w.s.StateAt(w.x))}
+		now := [][]float64{a.watch(w.s.StateAt(w.x))}
 		for j := 1; j <= order && j <= len(last); j++ {
 			now = append(now, extrapolate(now[j-1], last[j-1], j))
 		}
@@ -365,7 +366,30 @@ func (a *Answer) limit(w *way) ([]float64, error) {
 	if bestBy > worst {
 		return nil, errNoLimit
 	}
-	return best, nil
+	return best[:len(a.Rows)], nil
+}
+
+// watch reads every row's quantity, and behind them every junction's current: where
+// those do not settle, two fixed drops stand against each other or straight across a
+// supply, whatever the rows' quantities do.
+func (a *Answer) watch(e netlist.Env) []float64 {
+	values := a.read(e)
+	for i := range a.Circuit.Elements {
+		for _, symbol := range currents[a.Circuit.Elements[i].Kind] {
+			amps, ok := e.Quantity(netlist.Ref{Subject: netlist.OfElement, Index: i, Symbol: symbol})
+			if !ok {
+				amps = 0
+			}
+			values = append(values, amps)
+		}
+	}
+	return values
+}
+
+// currents are the symbols of the currents that are watched.
+var currents = map[netlist.ElementKind][]string{
+	netlist.JunctionPart:   {"I"},
+	netlist.TransistorPart: {"Ic", "Ib"},
 }
 
 // extrapolate takes a power of the factor out of two readings, of which the later's
@@ -378,14 +402,20 @@ func extrapolate(later, earlier []float64, power int) []float64 {
 	return out
 }
 
-// apart is the largest difference of two readings, relative to the larger of the
-// reading and the full solution.
+// apart is the largest difference of two readings: of a row's quantity relative to the
+// larger of it and the full solution's, of a current to the circuit's largest.
 func (a *Answer) apart(x, y []float64) float64 {
-	most := 0.0
+	most, largest := 0.0, a.Full.LargestCurrent()
 	for i := range x {
-		if d := math.Abs(x[i] - y[i]); d > 0 {
-			most = math.Max(most, d/math.Max(math.Abs(x[i]), math.Abs(a.Rows[i].Full)))
+		d := math.Abs(x[i] - y[i])
+		if d == 0 {
+			continue
 		}
+		scale := largest
+		if i < len(a.Rows) {
+			scale = math.Max(math.Abs(x[i]), math.Abs(a.Rows[i].Full))
+		}
+		most = math.Max(most, d/scale)
 	}
 	return most
 }

@@ -34,13 +34,13 @@ func HandScreen(w io.Writer, a *HandAnswer, l Look) error {
 	}
 	found := a.Hand
 	printHands(p, found, l)
-	if found.Unsplit != nil {
-		fmt.Fprintln(p)
-		wrap(p, "", l.text(UnsplitText(found)))
-	}
 	if rows := sharedOut(found); len(rows) > 0 {
 		fmt.Fprintln(p)
 		printShares(p, found, rows, l)
+	}
+	if found.Unsplit != nil {
+		fmt.Fprintln(p)
+		wrap(p, "", l.text(UnsplitText(found)))
 	}
 	if found.Merged && found.Unsplit == nil {
 		wrap(p, "  ", l.text(MergedText(found)))
@@ -188,14 +188,20 @@ func signedPercent(x float64) string {
 	}
 }
 
-// bare is a percentage without its sign of the unit, under a heading that says it.
-func bare(percentage string) string { return strings.TrimSuffix(percentage, " %") }
+// shareText writes a part of a row's difference in percent of the hand calculation's
+// figure, under a heading that says so; of a figure of 0, the amount itself.
+func shareText(r *hand.Row, amount float64) string {
+	if r.Hand == 0 {
+		return signedMeasured(amount, r.Unit)
+	}
+	return strings.TrimSuffix(signedPercent(amount/math.Abs(r.Hand)), " %")
+}
 
-// sharedOut are the hand lines' rows whose difference is shared out.
+// sharedOut are the hand lines' rows that have an idealised value.
 func sharedOut(a *hand.Answer) []*hand.Row {
 	var rows []*hand.Row
 	for i := range a.Rows {
-		if r := &a.Rows[i]; r.HandLine != netlist.None && r.Shares != nil {
+		if r := &a.Rows[i]; r.HandLine != netlist.None && !math.IsNaN(r.Ideal) {
 			rows = append(rows, r)
 		}
 	}
@@ -227,14 +233,20 @@ func printShareBlock(w io.Writer, a *hand.Answer, rows []*hand.Row, l Look) {
 	line := func(amount func(r *hand.Row) float64) {
 		var cells []cell
 		for _, r := range rows {
-			cells = append(cells, cell{bare(signedPercent(trimmed(r, amount(r)) / math.Abs(r.Hand))), noInk})
+			cells = append(cells, cell{l.text(shareText(r, trimmed(r, amount(r)))), noInk})
 		}
 		t.add(row{cells: cells})
 	}
 	line((*hand.Row).LeftOut)
 	for i := range a.Players {
-		says = append(says, PlayerText(a, &a.Players[i]))
-		line(func(r *hand.Row) float64 { return r.Shares[i] })
+		if a.Unsplit == nil {
+			says = append(says, PlayerText(a, &a.Players[i]))
+			line(func(r *hand.Row) float64 { return r.Shares[i] })
+		}
+	}
+	if a.Unsplit != nil {
+		says = append(says, "the assumptions together")
+		line(func(r *hand.Row) float64 { return r.Full - r.Ideal })
 	}
 	says = append(says, "in all")
 	line(func(r *hand.Row) float64 { return r.Full - r.Hand })
@@ -264,10 +276,10 @@ func leftOutText(rows []*hand.Row) string {
 	return "what the formula left out: " + strings.Join(says, ", ")
 }
 
-// trimmed is an amount of a row, 0 where it is what the extrapolation to fixed drops and
-// the solver's own rounding leave.
+// trimmed is an amount of a row, 0 where it is no more than the extrapolation to fixed
+// drops may leave.
 func trimmed(r *hand.Row, x float64) float64 {
-	const rounding = 1e-9
+	const rounding = 1e-5
 	if math.Abs(x) <= rounding*math.Max(math.Abs(r.Full), math.Abs(r.Hand)) {
 		return 0
 	}
@@ -438,7 +450,7 @@ func RuleText(a *hand.Answer, r *hand.Rule) string {
 		if r.Figure < 0 {
 			side = "below"
 		}
-		says = fmt.Sprintf("%s is %s %s the edge of saturation (rule: %s or more above); the collector junction", name, Measured(math.Abs(r.Figure), "V"), side, stated(r.Wanted, "V"))
+		says = fmt.Sprintf("%s is %s %s the edge of saturation (rule: %s or more above); saturation", name, Measured(math.Abs(r.Figure), "V"), side, stated(r.Wanted, "V"))
 	}
 	return says + " " + costText(a, r)
 }
@@ -476,7 +488,7 @@ func MeasuredTexts(a *hand.Answer) []string {
 		says      string
 	}{
 		{hand.Agrees, "as the model has it, within the 1 % of a hand meter"},
-		{hand.Reachable, "not what the nominal model has, but within the stated tolerances"},
+		{hand.Reachable, "not what the nominal model has, but each by itself within the stated tolerances"},
 		{hand.Apart, "not what the model has, nor what the stated tolerances reach"},
 	} {
 		if of := names[kind.agreement]; len(of) > 0 {
