@@ -7,6 +7,7 @@ import (
 	"slices"
 	"testing"
 
+	"biaswright/netlist"
 	"biaswright/solve/reftest"
 )
 
@@ -104,4 +105,59 @@ func sortedKeys(m map[string]string) []string {
 	}
 	slices.Sort(keys)
 	return keys
+}
+
+// Every network of the reference file can be idealised in the usual way, in any part, and
+// its differences shared out.
+func TestReferenceNetworksAreSharedOut(t *testing.T) {
+	cases, err := reftest.Cases(filepath.Join("..", "..", "testdata", "reference", "bias-networks.json"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	ran := 0
+	for i := range cases {
+		text, err := cases[i].Text()
+		if err != nil || len(cases[i].Elements) == 0 {
+			continue // the language has no ideal amplifier, and X56 is a formula
+		}
+		source := string(text.Source)
+		c := read(t, cases[i].ID+".bias", source)
+		assume, hands := "", ""
+		for _, p := range c.Parts {
+			if p.Kind.Shape == netlist.Junction {
+				assume += ", drop(" + p.Name + ") = 0.65 V"
+			}
+		}
+		for _, e := range c.Elements {
+			switch e.Kind {
+			case netlist.TransistorPart:
+				hands += "hand " + e.Name + ".Ic = 1 mA\n"
+			case netlist.JunctionPart:
+				hands += "hand " + e.Name + ".I = 1 mA\n"
+			}
+		}
+		if hands == "" {
+			continue
+		}
+		a := check(t, read(t, cases[i].ID+".bias", source+"assume Vbe = 0.65 V, betaF = infinite, VA = infinite"+assume+"\n"+hands))
+		if a.Unsplit != nil {
+			t.Errorf("%s: %v", cases[i].ID, a.Unsplit)
+			continue
+		}
+		for k := range a.Rows {
+			r := &a.Rows[k]
+			sum := r.Ideal
+			for _, s := range r.Shares {
+				sum += s
+			}
+			if !(math.Abs(sum-r.Full) <= 1e-9*math.Max(math.Abs(r.Full), math.Abs(r.Ideal))) {
+				t.Errorf("%s: %s: %g, shares lead to %g", cases[i].ID, r.Q.Text, r.Full, sum)
+			}
+		}
+		ran++
+	}
+	const few = 40 // of 54; some have no junction, two an amplifier
+	if ran < few {
+		t.Errorf("%d networks, expected %d", ran, few)
+	}
 }

@@ -302,6 +302,50 @@ hand Q2.Ic = 5 mA`)
 	}
 }
 
+// A divider's legs and an emitter resistor may be several in a row; a leg that ends on a
+// free node is none, and a diode by which a base is fed is no reference.
+func TestWhereRulesApply(t *testing.T) {
+	for _, c := range []struct {
+		name, text string
+		want       map[hand.RuleKind]float64 // figure; 0 where the rule does not apply
+	}{
+		{
+			"rows", `
+path VCC -> R1A 3k -> R1B 3.8k -> b -> R2 600 -> m -> LINK 0 -> n -> R2B 600 -> gnd
+path VCC -> Q1 gp base=b -> e -> RE 100 -> REB 120 -> gnd`,
+			map[hand.RuleKind]float64{hand.Stiffness: 150 * 220 / (1 / (1/6800.0 + 1/1200.0))},
+		},
+		{"no divider", `
+path VCC -> R1 100k -> b
+path VCC -> Q1 gp base=b -> e -> RE 220 -> gnd`, map[hand.RuleKind]float64{}},
+		{"no emitter resistor", `
+path VCC -> R1 68k -> b -> R2 4k -> gnd
+path VCC -> RC 1k -> c -> Q1 gp base=b -> gnd`, map[hand.RuleKind]float64{}},
+		{"a side branch", `
+path VCC -> R1 6.8k -> b -> R2 600 -> m -> R3 600 -> gnd
+path m -> R4 10k -> VCC
+path VCC -> Q1 gp base=b -> e -> RE 220 -> gnd`, map[hand.RuleKind]float64{}},
+		{"a diode feeds the base", `
+path VCC -> R1 100k -> D1 sig -> b
+path VCC -> RC 1k -> c -> Q1 gp base=b -> gnd`, map[hand.RuleKind]float64{}},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			a := check(t, read(t, "test.bias", `rail VCC = 12 V
+part gp npn Vbe = 0.65 V at 1 mA, betaF = 150
+part sig diode drop = 0.62 V at 1 mA`+c.text+"\nhand Q1.Ic = 1 mA"))
+			for _, kind := range []hand.RuleKind{hand.Stiffness, hand.Reference} {
+				got := 0.0
+				if i := slices.IndexFunc(a.Rules, func(r hand.Rule) bool { return r.Kind == kind }); i >= 0 {
+					got = a.Rules[i].Figure
+				}
+				if want := c.want[kind]; math.Abs(got-want) > 1e-9*want {
+					t.Errorf("%s: %g, want %g", kind, got, want)
+				}
+			}
+		})
+	}
+}
+
 // A bench on which one value differs from the file's: its readings name that value.
 func TestMeasuredNamesTheValue(t *testing.T) {
 	const text = `

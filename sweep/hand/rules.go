@@ -6,7 +6,6 @@ import (
 
 	"biaswright/devices"
 	"biaswright/netlist"
-	"biaswright/solve"
 	"biaswright/solve/mna"
 )
 
@@ -104,35 +103,76 @@ func isGiven(c *netlist.Circuit, n netlist.NodeID) bool {
 	return n == netlist.Gnd || c.Nodes[n].Rail != netlist.None
 }
 
-// legs are the resistors from a node to given ones, and what they make in parallel, in
-// ohm.
-func legs(c *netlist.Circuit, node netlist.NodeID) (ends []netlist.NodeID, parallel float64) {
+// legs are the resistors from a node to given ones, each perhaps several in a row, and
+// what they make in parallel, in ohm.
+func (a *Answer) legs(node netlist.NodeID) (ends []netlist.NodeID, parallel float64) {
+	c := a.Circuit
 	siemens := 0.0
 	for i := range c.Elements {
-		e := &c.Elements[i]
-		if e.Kind != netlist.Resistor {
+		if c.Elements[i].From != node && c.Elements[i].To != node {
 			continue
 		}
-		far := e.To
-		switch node {
-		case e.From:
-		case e.To:
-			far = e.From
-		default:
-			continue
-		}
-		if isGiven(c, far) {
-			ends = append(ends, far)
-			siemens += 1 / (float64(e.Row) * c.Value(e.Value))
+		if end, ohms, ok := a.follow(i, node); ok && ohms > 0 {
+			ends = append(ends, end)
+			siemens += 1 / ohms
 		}
 	}
 	return ends, 1 / siemens
 }
 
+// follow walks along resistors and links from a node, as long as nothing else is tied
+// between them, to a given node.
+func (a *Answer) follow(element int, from netlist.NodeID) (end netlist.NodeID, ohms float64, ok bool) {
+	c := a.Circuit
+	for range c.Elements { // no row is longer
+		e := &c.Elements[element]
+		switch e.Kind {
+		case netlist.Resistor:
+			ohms += float64(e.Row) * c.Value(e.Value)
+		case netlist.Link:
+		default:
+			return 0, 0, false
+		}
+		if end = e.To; from == e.To {
+			end = e.From
+		}
+		if isGiven(c, end) {
+			return end, ohms, true
+		}
+		next := a.tied(end)
+		if len(next) != 2 {
+			return 0, 0, false
+		}
+		if next[0] == element {
+			next[0] = next[1]
+		}
+		element, from = next[0], end
+	}
+	return 0, 0, false
+}
+
+// tied lists the elements at a node, one twice that has both ends or a base there too.
+func (a *Answer) tied(node netlist.NodeID) []int {
+	var out []int
+	for i := range a.Circuit.Elements {
+		e := &a.Circuit.Elements[i]
+		at := []netlist.NodeID{e.From, e.To}
+		if e.Kind == netlist.TransistorPart {
+			at = append(at, e.Base)
+		}
+		for _, n := range at {
+			if n == node {
+				out = append(out, i)
+			}
+		}
+	}
+	return out
+}
+
 // divider tells that a node hangs on a divider: resistors to two given nodes or more,
 // and no junction that holds it.
 func (a *Answer) divider(node netlist.NodeID) (parallel float64, ok bool) {
-	ends, parallel := legs(a.Circuit, node)
+	ends, parallel := a.legs(node)
 	slices.Sort(ends)
 	return parallel, len(slices.Compact(ends)) > 1 && len(a.holders(node)) == 0
 }
@@ -144,7 +184,7 @@ func (a *Answer) stiffness(q int) (Rule, bool) {
 	if a.Circuit.Parts[e.Part].Kind.PNP {
 		emitter = e.From
 	}
-	ends, re := legs(a.Circuit, emitter)
+	ends, re := a.legs(emitter)
 	if !ok || len(ends) == 0 {
 		return Rule{}, false
 	}
@@ -156,27 +196,51 @@ func (a *Answer) stiffness(q int) (Rule, bool) {
 	}, true
 }
 
-// holders are the conducting junctions that hold a node: diodes and zeners tied to
-// it, and transistors whose collector is tied to their base there.
+// holders are the junctions that hold a node as a reference for bases: diodes and
+// zeners tied to it, and transistors whose collector is tied to their base there, whose
+// current passes the node the same way as the bases'. One the other way round feeds them.
 func (a *Answer) holders(node netlist.NodeID) []int {
 	c, p := a.Circuit, a.Full
+	into := 0.0 // the elements, by the bases, in A
+	for _, i := range a.basesAt(node) {
+		into += a.inward(i, node)
+	}
 	var out []int
 	for i := range c.Elements {
 		e := &c.Elements[i]
 		if e.Part == netlist.None || e.From != node && e.To != node {
 			continue
 		}
-		_, amps := junctionOf(p, i)
 		collector := e.From
 		if c.Parts[e.Part].Kind.PNP {
 			collector = e.To
 		}
 		tied := e.Kind == netlist.JunctionPart || e.Base == node && collector == node
-		if tied && math.Abs(amps) > idle*p.LargestCurrent() {
+		amps := a.inward(i, node)
+		if e.Kind == netlist.TransistorPart && tied {
+			amps = math.Copysign(p.Elements[i].Ie, into)
+		}
+		if tied && amps*into > 0 && math.Abs(amps) > idle*p.LargestCurrent() {
 			out = append(out, i)
 		}
 	}
 	return out
+}
+
+// inward is the current that flows from a node into a junction, or into a transistor's
+// base, in A.
+func (a *Answer) inward(element int, node netlist.NodeID) float64 {
+	e, ep := &a.Circuit.Elements[element], &a.Full.Elements[element]
+	switch {
+	case e.Kind == netlist.TransistorPart && a.Circuit.Parts[e.Part].Kind.PNP:
+		return -ep.Ib
+	case e.Kind == netlist.TransistorPart:
+		return ep.Ib
+	case e.From == node:
+		return ep.I
+	default:
+		return -ep.I
+	}
 }
 
 func (a *Answer) references(node netlist.NodeID) []Rule {
@@ -234,11 +298,11 @@ func (a *Answer) costs(c *netlist.Circuit, ideals []devices.Ideal) []float64 {
 	if ideals != nil {
 		s.Idealise(ideals)
 	}
-	res, err := solve.SolveSystem(s, solve.Options{Near: a.near()})
+	p, err := a.nearest(s)
 	if err != nil {
 		return a.none()
 	}
-	out := a.read(res.Point)
+	out := a.read(p)
 	for i := range out {
 		out[i] = a.Rows[i].Full/out[i] - 1
 		if math.IsInf(out[i], 0) {

@@ -253,14 +253,14 @@ func (a *Answer) settle(ideal *idealisation) ([]float64, error) {
 		a.fillIn(ideal.fixed, s.StartCurrent())
 		s.Idealise(ideals(ideal.fixed, 0, 1))
 	}
-	res, err := solve.SolveSystem(s, solve.Options{Near: a.near()})
+	p, err := a.nearest(s)
 	if err != nil {
 		return nil, err
 	}
 	if ideal.fixed == nil {
-		return a.read(res.Point), nil
+		return a.read(p), nil
 	}
-	w := &way{s: s, x: append([]float64(nil), res.Point.Unknowns()...), fixed: ideal.fixed}
+	w := &way{s: s, x: append([]float64(nil), p.Unknowns()...), fixed: ideal.fixed}
 	if err := w.shift(); err != nil {
 		return nil, err
 	}
@@ -276,6 +276,21 @@ func (a *Answer) fillIn(fixed []fixing, amps float64) {
 			}
 		}
 	}
+}
+
+// nearest solves for the point nearest to the full solution, of those that could be
+// stable if there are any.
+func (a *Answer) nearest(s *mna.System) (*solve.Point, error) {
+	res, err := solve.SolveSystem(s, solve.Options{Near: a.near()})
+	if err != nil {
+		return nil, err
+	}
+	for _, p := range append([]*solve.Point{res.Point}, res.Others...) {
+		if p.Unstable == a.Full.Unstable {
+			return p, nil
+		}
+	}
+	return res.Point, nil
 }
 
 // near are the full solution's node voltages.

@@ -443,7 +443,7 @@ func RuleText(a *hand.Answer, r *hand.Rule) string {
 		for _, b := range r.Bases {
 			bases = append(bases, a.Circuit.Elements[b].Name)
 		}
-		says = fmt.Sprintf("%s's %s at %s is %s times the %s that it feeds to %s (rule: %s or more); the base current", name, Measured(r.Amps, "A"), a.Circuit.Nodes[r.Node].Name,
+		says = fmt.Sprintf("%s's %s at %s is %s times the base current there, %s of %s (rule: %s or more); the base current", name, Measured(r.Amps, "A"), a.Circuit.Nodes[r.Node].Name,
 			number(r.Figure), Measured(r.Base, "A"), strings.Join(bases, ", "), stated(r.Wanted, ""))
 	default:
 		side := "above"
