@@ -124,10 +124,8 @@ func with(c *netlist.Circuit, set []netlist.Setting) (*netlist.Circuit, error) {
 		return c, nil
 	}
 	out, diags := c.With(set...)
-	for _, d := range diags {
-		if out == nil {
-			return nil, errors.New(d.Message)
-		}
+	if out == nil {
+		return nil, errors.New(diags[0].Message)
 	}
 	return out, nil
 }

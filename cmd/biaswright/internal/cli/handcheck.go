@@ -11,11 +11,19 @@ import (
 	"biaswright/sweep/hand"
 )
 
+// handcheckMeaning says what is compared, for --help.
+const handcheckMeaning = "Each hand line stands beside the full solution and what is measured. The circuit is also\n" +
+	"solved with what the assume lines say: its distance from the formula is what the formula left\n" +
+	"out. From there to the full solution each assumption has its share: what replacing it by the\n" +
+	"real model changes, averaged over all orders of replacing them. Ends with 1 where a target is\n" +
+	"not met in full."
+
 func (r *runner) handcheckCommand() *cli.Command {
 	return &cli.Command{
-		Name:      "handcheck",
-		Usage:     "hold each file's hand calculation against the full solution, and say where they part",
-		UsageText: "biaswright handcheck [options] FILE...",
+		Name:        "handcheck",
+		Usage:       "hold each file's hand calculation against the full solution, and say where they part",
+		UsageText:   "biaswright handcheck [options] FILE...",
+		Description: handcheckMeaning,
 		Flags: []cli.Flag{
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the operating point nearest to these voltages; may be repeated"},

@@ -267,13 +267,13 @@ func leftOutText(rows []*hand.Row) string {
 	var says []string
 	for _, r := range rows {
 		if trimmed(r, r.LeftOut()) != 0 {
-			says = append(says, "the idealised circuit has "+r.Q.Text+" "+Measured(r.Ideal, r.Unit))
+			says = append(says, r.Q.Text+" "+Measured(trimmed(r, r.Ideal), r.Unit))
 		}
 	}
 	if len(says) == 0 {
 		return "what the formula left out of the idealised circuit: nothing"
 	}
-	return "what the formula left out: " + strings.Join(says, ", ")
+	return "what the formula left out: the idealised circuit has " + strings.Join(says, ", ")
 }
 
 // trimmed is an amount of a row, 0 where it is no more than the extrapolation to fixed
