@@ -197,6 +197,34 @@ hand RE.I = 0 A`))
 	}
 }
 
+// Of a latch's two states the check takes the one asked for, in full and idealised: with
+// 5 V through 11 kohm on 0.7 V, the other base's side stands at 5 V less 4.3 V/11.
+func TestNearChoosesThePoint(t *testing.T) {
+	c := read(t, "test.bias", `
+rail V = 5 V
+part gp npn Vbe = 0.65 V at 1 mA, betaF = 100
+path V -> R1 1k -> a -> Q1 gp base=x -> gnd
+path V -> R2 1k -> b -> Q2 gp base=y -> gnd
+path b -> R3 10k -> x
+path a -> R4 10k -> y
+assume Vbe = 0.7 V, betaF = infinite
+hand a.V = 0 V
+hand b.V = V - (V - 0.7 V) / 11`)
+	for high, low := range map[string]string{"a": "b", "b": "a"} {
+		at := netlist.NodeID(slices.IndexFunc(c.Nodes, func(n netlist.Node) bool { return n.Name == high }))
+		a, err := hand.Check(c, hand.Options{Near: map[netlist.NodeID]float64{at: 4}})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if got, want := row(t, a, high+".V").Ideal, 5-4.3/11; a.Unsplit != nil || math.Abs(got-want) > 1e-9 {
+			t.Errorf("%s high: %.12g idealised, want %.12g: %v", high, got, want, a.Unsplit)
+		}
+		if got := row(t, a, low+".V").Ideal; math.Abs(got) > 1e-9 {
+			t.Errorf("%s low: %g idealised", low, got)
+		}
+	}
+}
+
 // Fixed drops of 1 V in all across 1.2 V leave no operating point: that is said, and the
 // rest of the answer stands.
 func TestDropsAcrossASupply(t *testing.T) {

@@ -32,8 +32,7 @@ func findings(p *solve.Point, item int) []Finding {
 	}
 	var out []Finding
 	for i := range c.Elements {
-		e := &c.Elements[i]
-		if e.Part == netlist.None || as.Part != netlist.None && as.Part != e.Part {
+		if !covers(c, as, i) {
 			continue
 		}
 		volts, amps := junctionOf(p, i)
@@ -47,26 +46,25 @@ func findings(p *solve.Point, item int) []Finding {
 	return out
 }
 
-// figure is one element's figure for an assumption; false where the assumption is not
-// of it.
+// figure is one element's figure for an assumption that is of it; false where it
+// conducts the other way than the assumption means.
 func figure(p *solve.Point, as *netlist.Assumption, element int, volts, amps float64) (float64, bool) {
 	e, ep := &p.Circuit.Elements[element], &p.Elements[element]
-	transistor := e.Kind == netlist.TransistorPart
-	switch {
-	case as.Key == "Vbe" && transistor:
-		return volts, !(as.Part == netlist.None && hasOwn(p.Circuit, e.Part))
-	case as.Key == "drop":
+	switch as.Key {
+	case "Vbe":
+		return volts, true
+	case "drop":
 		return volts, amps > 0
-	case as.Key == "Vz":
+	case "Vz":
 		return -volts, amps < 0
-	case as.Key == "betaF" && transistor && math.IsInf(as.Value, 1):
-		return ep.Ib, true
-	case as.Key == "betaF" && transistor:
+	case "betaF":
+		if math.IsInf(as.Value, 1) {
+			return ep.Ib, true
+		}
 		return ep.Ic / ep.Ib, true
-	case as.Key == "betaR" && transistor:
+	case "betaR":
 		return p.CollectorShare(element), true
-	case as.Key == "VA" && transistor:
+	default: // VA
 		return (ep.Vce - ep.Vbe) / p.Slot(e.Params[p.Circuit.Parts[e.Part].Kind.Index("VA")]), true
 	}
-	return 0, false
 }

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 
 	"biaswright/devices"
@@ -61,56 +62,74 @@ func (a *Answer) read(e netlist.Env) []float64 {
 // idealise puts the assumptions in force that change numbers, and collects those that
 // fix drops.
 func (a *Answer) idealise(items []int) (*idealisation, error) {
-	c := a.Circuit
+	out := &idealisation{c: a.Circuit}
 	var set []netlist.Setting
-	out := &idealisation{}
-	fix := func(element int, mark func(*fixing)) {
-		if out.fixed == nil {
-			out.fixed = make([]fixing, len(c.Elements))
-		}
-		mark(&out.fixed[element])
-		if e := &c.Elements[element]; c.Parts[e.Part].Kind.Index("Rbulk") >= 0 {
-			set = append(set, netlist.Setting{Name: e.Name + ".Rbulk", Value: "0"})
-		}
-	}
 	for _, item := range items {
-		as := &c.Assumed[item]
-		for i := range c.Elements {
-			e := &c.Elements[i]
-			if e.Part == netlist.None || as.Part != netlist.None && as.Part != e.Part {
-				continue
-			}
-			if as.Part == netlist.None && as.Key == "Vbe" && hasOwn(c, e.Part) {
-				continue
-			}
-			transistor := e.Kind == netlist.TransistorPart
-			switch {
-			case as.Key == "Vbe" && transistor:
-				fix(i, func(f *fixing) { f.drop = &anchor{to: as.Value} })
-			case as.Key == "drop":
-				fix(i, func(f *fixing) { f.drop = &anchor{to: as.Value} })
-			case as.Key == "Vz":
-				fix(i, func(f *fixing) { f.breakdown = &anchor{to: as.Value} })
-			case as.Key == "betaF" && transistor:
-				set = append(set, noRecombination(e.Name)...)
-				set = append(set, netlist.Setting{Name: e.Name + ".betaF", Value: written(as.Value)})
-			case (as.Key == "betaR" || as.Key == "VA") && transistor:
-				set = append(set, netlist.Setting{Name: e.Name + "." + as.Key, Value: written(as.Value)})
-			}
-		}
-		if as.Key == "ambient" {
-			set = append(set, netlist.Setting{Name: "ambient", Value: written(as.Value)})
-		}
+		set = append(set, out.assume(&a.Circuit.Assumed[item])...)
 	}
-	var diags error
-	out.c, diags = with(c, set)
-	if diags != nil {
-		return nil, diags
+	var err error
+	if out.c, err = with(a.Circuit, set); err != nil {
+		return nil, err
 	}
 	if out.fixed != nil {
 		a.anchor(out.fixed)
 	}
 	return out, nil
+}
+
+// assume notes the drops that an assumption fixes, and gives the settings that it comes
+// to.
+func (o *idealisation) assume(as *netlist.Assumption) (set []netlist.Setting) {
+	if as.Key == "ambient" {
+		return []netlist.Setting{{Name: as.Key, Value: written(as.Value)}}
+	}
+	for i := range o.c.Elements {
+		if !covers(o.c, as, i) {
+			continue
+		}
+		name := o.c.Elements[i].Name
+		switch as.Key {
+		case "Vbe":
+			o.at(i).drop = &anchor{to: as.Value}
+			continue
+		case "drop":
+			o.at(i).drop = &anchor{to: as.Value}
+		case "Vz":
+			o.at(i).breakdown = &anchor{to: as.Value}
+		case "betaF":
+			set = append(set, noRecombination(name)...)
+			fallthrough
+		default: // betaR, VA
+			set = append(set, netlist.Setting{Name: name + "." + as.Key, Value: written(as.Value)})
+			continue
+		}
+		set = append(set, netlist.Setting{Name: name + ".Rbulk", Value: "0"})
+	}
+	return set
+}
+
+// at is an element's place among those whose drops are fixed.
+func (o *idealisation) at(element int) *fixing {
+	if o.fixed == nil {
+		o.fixed = make([]fixing, len(o.c.Elements))
+	}
+	return &o.fixed[element]
+}
+
+// covers tells whether an assumption is of an element. A Vbe of a part's own holds in
+// place of that for all transistors, whether it is in force or not.
+func covers(c *netlist.Circuit, as *netlist.Assumption, element int) bool {
+	e := &c.Elements[element]
+	switch {
+	case e.Part == netlist.None || as.Part != netlist.None && as.Part != e.Part:
+		return false
+	case as.Key == "drop" || as.Key == "Vz": // of one part always
+		return true
+	case e.Kind != netlist.TransistorPart:
+		return false
+	}
+	own := func(other netlist.Assumption) bool { return other.Key == as.Key && other.Part == e.Part }
+	return as.Part != netlist.None || !slices.ContainsFunc(c.Assumed, own)
 }
 
 // noRecombination are the settings that leave a base current of I_f/betaF alone.
@@ -136,17 +155,6 @@ func written(x float64) string {
 		return "infinite"
 	}
 	return strconv.FormatFloat(x, 'g', -1, 64)
-}
-
-// hasOwn tells that a part's Vbe is assumed on a line of its own, which then holds
-// in place of that for all transistors, whether it is in force or not.
-func hasOwn(c *netlist.Circuit, part int) bool {
-	for i := range c.Assumed {
-		if as := &c.Assumed[i]; as.Key == "Vbe" && as.Part == part {
-			return true
-		}
-	}
-	return false
 }
 
 // anchor finds the point of the full solution from which each drop is moved: every

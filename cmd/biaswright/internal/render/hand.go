@@ -224,10 +224,10 @@ func printShares(w io.Writer, a *hand.Answer, rows []*hand.Row, l Look) {
 func printShareBlock(w io.Writer, a *hand.Answer, rows []*hand.Row, l Look) {
 	t := table{numeric: make([]bool, len(rows)), most: make([]int, len(rows))}
 	head := row{head: true}
-	says := []string{"", leftOutText(rows)}
+	says := []string{leftOutText(rows)}
 	for i, r := range rows {
 		t.numeric[i] = true
-		head.cells = append(head.cells, cell{l.text(r.Q.Text), faint})
+		head.cells = append(head.cells, cell{l.text(r.Q.Text), noInk})
 	}
 	t.add(head)
 	line := func(amount func(r *hand.Row) float64) {
@@ -251,13 +251,16 @@ func printShareBlock(w io.Writer, a *hand.Answer, rows []*hand.Row, l Look) {
 	says = append(says, "in all")
 	line(func(r *hand.Row) float64 { return r.Full - r.Hand })
 	var out strings.Builder
-	t.print(&out, l)
+	uncoloured := l
+	uncoloured.Colour = false // its widths are measured
+	t.print(&out, uncoloured)
 	lines := strings.Split(strings.TrimRight(out.String(), "\n"), "\n")
 	widest := 0
 	for _, text := range lines {
 		widest = max(widest, width(text))
 	}
-	for i, text := range lines {
+	fmt.Fprintln(w, "  "+l.paint(lines[0], faint))
+	for i, text := range lines[1:] {
 		wrap(w, "  "+text+strings.Repeat(" ", widest-width(text)+gap), l.text(says[i]))
 	}
 }
