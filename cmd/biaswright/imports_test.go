@@ -47,8 +47,11 @@ var rules = map[string]row{
 	"solve/newton":  {code: "solve/sparse"},
 	"solve/follow":  {code: "solve/newton solve/sparse"},
 
+	"solve/interval": {},
+	"solve/every":    {code: "solve/interval"},
+
 	"solve/mna": {
-		code:  "netlist netlist/quantity devices devices/physics solve/sparse solve/newton solve/twofold",
+		code:  "netlist netlist/quantity devices devices/physics solve/sparse solve/newton solve/twofold solve/every solve/interval",
 		tests: "devices/shelf",
 	},
 	"solve": {

@@ -1,0 +1,275 @@
+package every
+
+import (
+	"math"
+	"sync"
+	"time"
+
+	"biaswright/solve/interval"
+)
+
+// Options steer a search.
+type Options struct {
+	// Budget ends the search; 0 is none. RootOnly never splits.
+	Budget   time.Duration
+	RootOnly bool
+	// Known are solutions, as doubles, that the search may begin with.
+	Known [][]float64
+	// Workers is how many boxes are looked at at a time; 0 is one. The answer is the
+	// same, unless the budget ends it.
+	Workers int
+	// Slack is the share by which each term's coefficient may be off, for the
+	// enclosures alone; 0 takes the doubles as they are.
+	Slack float64
+	// Check, where set, is given every box after each step that narrowed it, with what
+	// it was before, for tests.
+	Check func(step string, before, after []interval.I)
+}
+
+// A Result is what a search found.
+type Result struct {
+	// Points are all solutions found, each verified, in an order that does not depend
+	// on Workers.
+	Points []*Point
+	// Boxes counts those looked at; Open those that remain. With none open, Points is
+	// complete.
+	Boxes, Open int
+}
+
+// Search finds all solutions in the System's start box.
+func Search(s *System, o Options) *Result {
+	f := &finder{s: s, o: o, cols: s.columns(), res: &Result{}}
+	f.params = s.params(f.cols)
+	if o.Budget > 0 {
+		f.deadline = time.Now().Add(o.Budget)
+	}
+	for _, x := range o.Known {
+		if p := s.verify(x, f.params, o.Slack); p != nil {
+			f.keep(p)
+		}
+	}
+	f.run()
+	return f.res
+}
+
+type finder struct {
+	s        *System
+	o        Options
+	cols     columns
+	params   []param
+	res      *Result
+	deadline time.Time
+}
+
+// keep adds a point unless it is one that is there: then their boxes meet.
+func (f *finder) keep(p *Point) {
+	for _, q := range f.res.Points {
+		if meets(p.X, q.X) {
+			return
+		}
+	}
+	f.res.Points = append(f.res.Points, p)
+}
+
+func meets(a, b []interval.I) bool {
+	for i := range a {
+		if a[i].Meet(b[i]).Empty() {
+			return false
+		}
+	}
+	return true
+}
+
+// wave is how many boxes are looked at before what they found is put together: few, so
+// that a point that is found helps soon.
+const wave = 8
+
+// run works through the boxes, the last ones first, a few at a time.
+func (f *finder) run() {
+	open := []*box{f.s.start()}
+	for _, x := range open[0].x {
+		if x.Empty() {
+			return
+		}
+	}
+	for len(open) > 0 {
+		if !f.deadline.IsZero() && time.Now().After(f.deadline) {
+			f.res.Open += len(open)
+			return
+		}
+		n := min(wave, len(open))
+		taken := open[len(open)-n:]
+		open = open[:len(open)-n]
+		looks := f.together(taken)
+		f.res.Boxes += n
+		for _, l := range looks {
+			for _, p := range l.found {
+				f.keep(p)
+			}
+			open = append(open, l.parts...)
+			if l.stuck {
+				f.res.Open++
+			}
+		}
+	}
+}
+
+// A look is what came of one box.
+type look struct {
+	found []*Point
+	parts []*box // still to be looked at
+	stuck bool   // too small to be split, and not settled
+}
+
+// together looks at boxes side by side, all with the points known before.
+func (f *finder) together(boxes []*box) []look {
+	out := make([]look, len(boxes))
+	if f.o.Workers < 2 || len(boxes) == 1 {
+		for i, b := range boxes {
+			out[i] = f.look(b)
+		}
+		return out
+	}
+	var wait sync.WaitGroup
+	slots := make(chan struct{}, f.o.Workers)
+	for i, b := range boxes {
+		slots <- struct{}{}
+		wait.Add(1)
+		go func() {
+			defer wait.Done()
+			out[i] = f.look(b)
+			<-slots
+		}()
+	}
+	wait.Wait()
+	return out
+}
+
+// look settles a box, or splits it.
+func (f *finder) look(b *box) (out look) {
+	s := f.s
+	p := newPropagator(s)
+	var l *linearised
+	const rounds = 12
+	for range rounds {
+		before := append([]interval.I(nil), b.x...)
+		if !p.run(b) {
+			f.check("propagate", before, nil)
+			return out
+		}
+		f.check("propagate", before, b.x)
+		if f.settled(b, &out) {
+			return out
+		}
+		var ok bool
+		if l, ok = s.linearise(b, f.cols); !ok {
+			l = nil
+			break
+		}
+		before = append(before[:0], b.x...)
+		alive, moved := l.narrow(s, b)
+		if !alive {
+			f.check("chords", before, nil)
+			return out
+		}
+		f.check("chords", before, b.x)
+		if !moved {
+			break
+		}
+	}
+	if f.o.RootOnly {
+		out.stuck = true
+		return out
+	}
+	k, at := f.cut(b, l)
+	if k < 0 {
+		out.stuck = true
+		return out
+	}
+	low, high := b, b.clone()
+	low.u[k].Hi, high.u[k].Lo = at, at
+	out.parts = []*box{low, high}
+	return out
+}
+
+func (f *finder) check(step string, before, after []interval.I) {
+	if f.o.Check != nil {
+		f.o.Check(step, before, after)
+	}
+}
+
+// settled tells whether a box holds no solution beside the known ones. It looks for one if
+// none is known that would settle it.
+func (f *finder) settled(b *box, out *look) bool {
+	for i := range b.u { // slopes need ends
+		if math.IsInf(b.u[i].Hi, 0) {
+			return false
+		}
+	}
+	for _, p := range f.res.Points {
+		if f.s.alone(b.u, f.params, p) {
+			return true
+		}
+	}
+	for _, p := range out.found {
+		if f.s.alone(b.u, f.params, p) {
+			return true
+		}
+	}
+	if len(out.found) > 0 {
+		return false
+	}
+	x, ok := f.s.newton(b, f.params)
+	if !ok {
+		return false
+	}
+	p := f.s.verify(x, f.params, f.o.Slack)
+	if p == nil {
+		return false
+	}
+	for _, q := range f.res.Points {
+		if meets(p.X, q.X) {
+			return false
+		}
+	}
+	out.found = append(out.found, p)
+	return f.s.alone(b.u, f.params, p)
+}
+
+// cut chooses an exponential whose argument to split, and where: that whose remainder moves
+// the unknowns most, where it is largest; -1 where nothing is wide enough to be split.
+func (f *finder) cut(b *box, l *linearised) (k int, at float64) {
+	k, most := -1, 0.0
+	for i := range f.s.Exps {
+		w := b.u[i].Width()
+		// Below a thousandth of Phi an exponential is straight to a part in a
+		// million; nothing is gained there, but for the last resort.
+		least := 1e-6 * f.s.Exps[i].Phi
+		if !(w > least) {
+			continue
+		}
+		score := math.Min(w, 1e9) / f.s.Exps[i].Phi
+		if l != nil {
+			score = l.influence(i)
+		}
+		if score > most {
+			k, most = i, score
+		}
+	}
+	if k < 0 {
+		return -1, 0
+	}
+	u, e := b.u[k], &f.s.Exps[k]
+	at = e.flat(e.chordAt(u.Lo, u.Hi).Mid(), u)
+	const edge = 0.1 // of the width: no sliver is cut off
+	at = math.Min(math.Max(at, u.Lo+edge*u.Width()), u.Hi-edge*u.Width())
+	if math.IsNaN(at) || math.IsInf(at, 0) {
+		at = u.Mid()
+	}
+	for _, p := range f.res.Points { // not through a known point
+		if p.u[k].Has(at) {
+			at += 0.05 * u.Width()
+		}
+	}
+	return k, at
+}
