@@ -55,7 +55,7 @@ var rules = map[string]row{
 		tests: "devices/shelf",
 	},
 	"solve": {
-		code:  "netlist netlist/quantity devices solve/mna solve/newton solve/follow solve/sparse",
+		code:  "netlist netlist/quantity devices solve/mna solve/newton solve/follow solve/sparse solve/every solve/interval",
 		tests: "netlist/diag devices/shelf solve/reftest",
 	},
 	"solve/reftest": {tests: "netlist netlist/diag devices devices/physics devices/shelf solve"},
@@ -92,7 +92,7 @@ var rules = map[string]row{
 		tests: "devices devices/shelf netlist/diag",
 	},
 	"cmd/biaswright/internal/render": {
-		code:  "netlist netlist/diag netlist/quantity devices solve sweep sweep/limits sweep/choose sweep/hand sweep/compare",
+		code:  "netlist netlist/diag netlist/quantity devices solve solve/interval sweep sweep/limits sweep/choose sweep/hand sweep/compare",
 		tests: "netlist/syntax devices/shelf",
 	},
 }

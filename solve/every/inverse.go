@@ -217,36 +217,72 @@ func (t *centre) regular(params []param, radii []float64) bool {
 			h[i*k+j] = (math.Abs(v) + e) * radii[from]
 		}
 	}
+	return shrinks(h, k)
+}
+
+// shrinks tells whether the spectral radius of a matrix without negative entries, k by k,
+// is below 1: it is where some positive vector becomes smaller in every component. A few
+// powers find one where the radius is well below 1, or that there is none; else it is
+// (I - h)^-1 1, if that is positive.
+func shrinks(h []float64, k int) bool {
 	w, next := make([]float64, k), make([]float64, k)
 	for i := range w {
 		w[i] = 1
 	}
-	const rounds = 60
+	const rounds = 12
 	for range rounds {
-		smaller, larger, top := true, true, 0.0
-		for i := range next {
-			sum := 0.0
-			for j, v := range h[i*k : i*k+k] {
-				sum += v * w[j]
-			}
-			sum *= 1 + float64(k+4)*eps
-			next[i] = sum
-			smaller = smaller && sum < w[i]
-			larger = larger && sum >= w[i]
-			top = math.Max(top, sum)
-		}
+		smaller, larger, top := apply(h, w, next)
 		switch {
 		case smaller:
 			return true
 		case larger || math.IsNaN(top) || math.IsInf(top, 0):
 			return false
 		}
-		// The new vector, kept positive, drawn out to the size of 1; halves of both keep
-		// a matrix with a period from swinging.
-		const floor = 1e-3
+		// Drawn out to the size of 1, and kept positive. Halves of both keep a matrix
+		// with a period from swinging.
+		const floor = 1e-12
 		for i := range w {
-			w[i] = w[i]/2 + next[i]/(2*top) + floor*1e-9
+			w[i] = w[i]/2 + next[i]/(2*top) + floor
 		}
 	}
-	return false
+	m := make([]float64, k*k)
+	for i := range m {
+		m[i] = -h[i]
+	}
+	for i := range k {
+		m[i*k+i]++
+	}
+	if !invert(m, k) {
+		return false
+	}
+	for i := range k {
+		w[i] = 0
+		for _, v := range m[i*k : i*k+k] {
+			w[i] += v
+		}
+		if !(w[i] > 0) {
+			return false
+		}
+	}
+	smaller, _, _ := apply(h, w, next)
+	return smaller
+}
+
+// apply puts an upper bound of h w into next, and tells whether it is below w in every
+// component, in none, and how large it is.
+func apply(h, w, next []float64) (smaller, larger bool, top float64) {
+	k := len(w)
+	smaller, larger = true, true
+	for i := range next {
+		sum := 0.0
+		for j, v := range h[i*k : i*k+k] {
+			sum += v * w[j]
+		}
+		sum *= 1 + float64(k+4)*eps
+		next[i] = sum
+		smaller = smaller && sum < w[i]
+		larger = larger && sum >= w[i]
+		top = math.Max(top, sum)
+	}
+	return smaller, larger, top
 }

@@ -21,8 +21,9 @@ type Options struct {
 	// Slack is the share by which each term's coefficient may be off, for the
 	// enclosures alone; 0 takes the doubles as they are.
 	Slack float64
-	// Check, where set, is given every box after each step that narrowed it, with what
-	// it was before, for tests.
+	// Check, where set, is given every box before and after each step that narrows it,
+	// as Point's Coordinates has them; after is nil where the step found it empty. It is
+	// for tests.
 	Check func(step string, before, after []interval.I)
 }
 
@@ -49,6 +50,48 @@ func Search(s *System, o Options) *Result {
 		}
 	}
 	f.run()
+	return f.res
+}
+
+// Away looks for solutions beside those known, by Newton iterations that look away from
+// them, from the middle and from near each. It proves nothing of what it does not find.
+func Away(s *System, o Options) *Result {
+	f := &finder{s: s, o: o, cols: s.columns(), res: &Result{}}
+	f.params = s.params(f.cols)
+	b := s.start()
+	starts := [][]float64{b.middle()}
+	for _, x := range o.Known {
+		if p := s.verify(x, f.params, o.Slack); p != nil {
+			f.keep(p)
+			starts = append(starts, x)
+		}
+	}
+	for i := 0; i < len(starts); i++ {
+		for range 2 * s.N { // each success may hide another
+			var away [][]float64
+			for _, p := range f.res.Points {
+				away = append(away, (&box{x: p.X}).middle())
+			}
+			from := append([]float64(nil), starts[i]...)
+			const aside = 1e-3 // V: on a solution the factor has no slope
+			for k := range from {
+				from[k] += aside
+			}
+			x, ok := s.newton(b, from, f.params, away)
+			if !ok {
+				break
+			}
+			p := s.verify(x, f.params, o.Slack)
+			before := len(f.res.Points)
+			if p != nil {
+				f.keep(p)
+			}
+			if len(f.res.Points) == before {
+				break
+			}
+			starts = append(starts, x)
+		}
+	}
 	return f.res
 }
 
@@ -152,12 +195,12 @@ func (f *finder) look(b *box) (out look) {
 	var l *linearised
 	const rounds = 12
 	for range rounds {
-		before := append([]interval.I(nil), b.x...)
+		before := f.coordinates(b)
 		if !p.run(b) {
 			f.check("propagate", before, nil)
 			return out
 		}
-		f.check("propagate", before, b.x)
+		f.check("propagate", before, b)
 		if f.settled(b, &out) {
 			return out
 		}
@@ -166,13 +209,13 @@ func (f *finder) look(b *box) (out look) {
 			l = nil
 			break
 		}
-		before = append(before[:0], b.x...)
+		before = f.coordinates(b)
 		alive, moved := l.narrow(s, b)
 		if !alive {
 			f.check("chords", before, nil)
 			return out
 		}
-		f.check("chords", before, b.x)
+		f.check("chords", before, b)
 		if !moved {
 			break
 		}
@@ -192,15 +235,26 @@ func (f *finder) look(b *box) (out look) {
 	return out
 }
 
-func (f *finder) check(step string, before, after []interval.I) {
+// coordinates are a copy of a box, for a check.
+func (f *finder) coordinates(b *box) []interval.I {
+	if f.o.Check == nil || b == nil {
+		return nil
+	}
+	return append(append([]interval.I(nil), b.x...), b.u...)
+}
+
+func (f *finder) check(step string, before []interval.I, after *box) {
 	if f.o.Check != nil {
-		f.o.Check(step, before, after)
+		f.o.Check(step, before, f.coordinates(after))
 	}
 }
 
 // settled tells whether a box holds no solution beside the known ones. It looks for one if
 // none is known that would settle it.
 func (f *finder) settled(b *box, out *look) bool {
+	if f.s.Monotone && len(f.res.Points) > 0 {
+		return true
+	}
 	for i := range b.u { // slopes need ends
 		if math.IsInf(b.u[i].Hi, 0) {
 			return false
@@ -219,7 +273,7 @@ func (f *finder) settled(b *box, out *look) bool {
 	if len(out.found) > 0 {
 		return false
 	}
-	x, ok := f.s.newton(b, f.params)
+	x, ok := f.s.newton(b, b.middle(), f.params, nil)
 	if !ok {
 		return false
 	}

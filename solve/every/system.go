@@ -25,6 +25,11 @@ type System struct {
 	Prods []Product
 	Rows  []Row // N of them
 	Start []interval.I
+	// Monotone tells that the system is known to have at most one solution: its caller
+	// says so of networks whose parts all have two terminals and a current that rises
+	// with the voltage (R. J. Duffin, Nonlinear networks IIa, Bulletin of the American
+	// Mathematical Society 53, 1947).
+	Monotone bool
 }
 
 // An Exponential is y = exp((u - Offset0)/Phi) - exp(-Offset0/Phi), with u = x[A] - x[B] +
@@ -77,7 +82,8 @@ func (e *Exponential) argument(y interval.I) interval.I {
 
 // slope is dy/du, as an interval.
 func (e *Exponential) slope(u interval.I) interval.I {
-	return u.Sub(interval.Of(e.Offset0)).Over(e.Phi).Exp().Over(e.Phi)
+	s := u.Sub(interval.Of(e.Offset0)).Over(e.Phi).Exp().Over(e.Phi)
+	return interval.I{Lo: math.Max(0, s.Lo), Hi: s.Hi}
 }
 
 // chord is (y(b) - y(a))/(b - a), for any a in the first and b in the second interval: the

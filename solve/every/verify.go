@@ -28,13 +28,21 @@ func (s *System) values(x []float64) (u, y, dy []float64) {
 	return u, y, dy
 }
 
-// newton looks for a solution from the middle of a box, in doubles, and stays in the box;
-// false where it finds none.
-func (s *System) newton(b *box, params []param) ([]float64, bool) {
-	x := make([]float64, s.N)
+// middle is the middle of a box.
+func (b *box) middle() []float64 {
+	x := make([]float64, len(b.x))
 	for i := range x {
 		x[i] = b.x[i].Mid()
 	}
+	return x
+}
+
+// newton looks for a solution from x, in doubles, and stays in the box; false where it
+// finds none. It looks away from solutions that it is given (deflation: K. M. Brown and
+// W. B. Gearhart, Numerische Mathematik 16, 1971): there the balances, multiplied by the
+// inverse squares of the distances, are no longer small.
+func (s *System) newton(b *box, x []float64, params []param, away [][]float64) ([]float64, bool) {
+	x = append([]float64(nil), x...)
 	f := make([]float64, s.N)
 	const steps = 40
 	last := math.Inf(1)
@@ -64,6 +72,11 @@ func (s *System) newton(b *box, params []param) ([]float64, bool) {
 				step[i] -= c.c[i*s.N+j] * f[j]
 			}
 		}
+		if f := deflated(x, step, away); f != 1 {
+			for i := range step {
+				step[i] *= f
+			}
+		}
 		size := s.advance(b, x, u, step)
 		const converged = 1e-13 // V; a verification has its own say
 		if size < converged || size < 1e-11 && size >= last {
@@ -72,6 +85,27 @@ func (s *System) newton(b *box, params []param) ([]float64, bool) {
 		last = size
 	}
 	return nil, false
+}
+
+// deflated is the factor by which the factors Σ ln(1 + 1/|x - a|²) that look away from
+// solutions a change a Newton step: 1/(1 - slope along the step), by the Sherman-Morrison
+// formula.
+func deflated(x, step []float64, away [][]float64) float64 {
+	slope := 0.0
+	for _, a := range away {
+		square, along := 0.0, 0.0
+		for i := range x {
+			square += (x[i] - a[i]) * (x[i] - a[i])
+			along += (x[i] - a[i]) * step[i]
+		}
+		if square == 0 {
+			return 1
+		}
+		slope -= 2 * along / (square * (1 + square)) // d/dx ln(1 + 1/r²) = -2 r/(r² (1 + r²))
+	}
+	const most = 10 // no step grows by more
+	f := 1 / (1 - slope)
+	return math.Max(-most, math.Min(most, f))
 }
 
 // advance takes a step as far as exponentials bear it and the box reaches, and returns how
@@ -182,6 +216,11 @@ func (s *System) alone(u []interval.I, params []param, known *Point) bool {
 type Point struct {
 	X    []interval.I
 	u, y []interval.I
+}
+
+// Coordinates are the unknowns and then the exponentials' arguments, as intervals.
+func (p *Point) Coordinates() []interval.I {
+	return append(append([]interval.I(nil), p.X...), p.u...)
 }
 
 // verify proves that one solution, and only one, lies near x (W. Krawczyk, Computing 4,
@@ -321,4 +360,10 @@ func (s *System) loosen(f, x []interval.I, slack float64) {
 		w := interval.Up(slack * size)
 		f[i] = interval.I{Lo: interval.Down(f[i].Lo - w), Hi: interval.Up(f[i].Hi + w)}
 	}
+}
+
+// Verify proves that the system has a solution near x, and only one in a small box about
+// it, with each coefficient off by as much as a share slack; nil where it does not.
+func Verify(s *System, x []float64, slack float64) *Point {
+	return s.verify(x, s.params(s.columns()), slack)
 }

@@ -28,7 +28,7 @@ type Scope struct {
 // Neutral is the system as balances that name no circuit, with all numbers in force and
 // no ramp, for the search for all points.
 func (s *System) Neutral() (*every.System, Scope, error) {
-	n := &neutral{s: s, out: &every.System{N: s.n, Rows: make([]every.Row, s.n)}, lin: make([]map[int]float64, s.n)}
+	n := &neutral{s: s, out: &every.System{N: s.n, Rows: make([]every.Row, s.n), Monotone: len(s.bipolars) == 0}, lin: make([]map[int]float64, s.n)}
 	for i := range n.lin {
 		n.lin[i] = map[int]float64{}
 	}

@@ -1,20 +1,42 @@
 package reftest
 
 import (
+	"fmt"
 	"math"
+	"math/rand/v2"
+	"strings"
 	"testing"
 	"time"
 
+	"biaswright/netlist"
+	"biaswright/solve"
 	"biaswright/solve/every"
+	"biaswright/solve/interval"
 	"biaswright/solve/mna"
 )
 
-// TestEveryPoint searches the circuits all of whose points are listed: it must find each
-// one within 1e-8 V, none besides, and leave no box open.
+// patience ends a search that would hang a test; none comes near it.
+const patience = time.Minute
+
+func allPoints(t testing.TB, c *netlist.Circuit, o solve.EveryOptions) *solve.EveryResult {
+	t.Helper()
+	o.Budget = patience
+	r, err := solve.Every(c, o)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return r
+}
+
+// TestEveryPoint searches the circuits all of whose points are listed: it finds each one to
+// 1e-8 V with its determinant's sign, none besides, and proves that.
 func TestEveryPoint(t *testing.T) {
 	circuits, err := Points(pointsFile)
 	if err != nil {
 		t.Fatal(err)
+	}
+	if len(circuits) != 16 {
+		t.Errorf("%d circuits, expected 16", len(circuits))
 	}
 	for i := range circuits {
 		k := &circuits[i]
@@ -24,36 +46,283 @@ func TestEveryPoint(t *testing.T) {
 				t.Fatal(err)
 			}
 			c := read(t, k.ID+".bias", text.Source)
-			s, err := mna.New(c)
-			if err != nil {
-				t.Fatal(err)
+			r := allPoints(t, c, solve.EveryOptions{Workers: 2})
+			if !r.Search.Proven || r.Search.Open != 0 || r.Search.Signs != 1 {
+				t.Errorf("%+v", r.Search)
 			}
-			sys, _, err := s.Neutral()
-			if err != nil {
-				t.Fatal(err)
-			}
-			start := time.Now()
-			r := every.Search(sys, every.Options{Budget: 20 * time.Second})
-			t.Logf("%d unknowns, %d exponentials, %d products: %d points of %d, %d boxes, %d open, %v", sys.N, len(sys.Exps), len(sys.Prods), len(r.Points), len(k.Points), r.Boxes, r.Open, time.Since(start))
-			if len(r.Points) != len(k.Points) || r.Open != 0 {
-				t.Errorf("%d points, %d listed, %d open", len(r.Points), len(k.Points), r.Open)
+			all := r.All()
+			if len(all) != len(k.Points) {
+				t.Errorf("%d points, %d are listed", len(all), len(k.Points))
 			}
 			for j, known := range k.Points {
-				nearest := math.Inf(1)
-				for _, p := range r.Points {
-					x := make([]float64, sys.N)
-					for i := range x {
-						x[i] = p.X[i].Mid()
+				best, nearest := -1, math.Inf(1)
+				for i, p := range all {
+					if d := distance(t, p, text, known); d < nearest {
+						best, nearest = i, d
 					}
-					v := s.StateAt(x).V
-					far := 0.0
-					for name, volts := range known.Volts {
-						far = max(far, math.Abs(v[node(t, c, text.Node[name])]-volts))
-					}
-					nearest = min(nearest, far)
 				}
-				if nearest > 1e-8 {
+				if !(nearest < 1e-8) { // V
 					t.Errorf("point %d: the nearest found is %g V away", j, nearest)
+				} else if got := all[best].Evidence.Determinant; got != known.Sign {
+					t.Errorf("point %d has sign %d, listed as %d", j, got, known.Sign)
+				}
+			}
+			one := allPoints(t, c, solve.EveryOptions{Workers: 1})
+			if len(one.Others) != len(r.Others) || one.Search.Boxes != r.Search.Boxes {
+				t.Errorf("one worker finds %d points in %d boxes, two %d in %d", len(one.All()), one.Search.Boxes, len(all), r.Search.Boxes)
+			}
+			t.Logf("%d points in %d boxes; the supplies lead to %d", len(all), r.Search.Boxes, r.Reached)
+		})
+	}
+}
+
+// TestContainment holds every step of a search against the listed points: what held one
+// before still does.
+func TestContainment(t *testing.T) {
+	circuits, err := Points(pointsFile)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for i := range circuits {
+		k := &circuits[i]
+		text, err := k.Text()
+		if err != nil {
+			t.Fatal(err)
+		}
+		c := read(t, k.ID+".bias", text.Source)
+		s, err := mna.New(c)
+		if err != nil {
+			t.Fatal(err)
+		}
+		sys, _, err := s.Neutral()
+		if err != nil {
+			t.Fatal(err)
+		}
+		var known [][]interval.I
+		for _, p := range allPoints(t, c, solve.EveryOptions{}).All() {
+			v := every.Verify(sys, p.Unknowns(), 0)
+			if v == nil {
+				t.Fatalf("%s: a point cannot be verified", k.ID)
+			}
+			known = append(known, v.Coordinates())
+		}
+		checks := 0
+		every.Search(sys, every.Options{Check: func(step string, before, after []interval.I) {
+			checks++
+			for _, x := range known {
+				held := true
+				for i := range x {
+					held = held && before[i].Lo <= x[i].Lo && x[i].Hi <= before[i].Hi
+				}
+				if !held {
+					continue
+				}
+				if after == nil {
+					t.Errorf("%s: %s emptied a box that holds a point", k.ID, step)
+					continue
+				}
+				for i := range x { // the point lies somewhere in its own small box: the two meet
+					if after[i].Meet(x[i]).Empty() {
+						t.Errorf("%s: %s lost a point", k.ID, step)
+					}
+				}
+			}
+		}})
+		if checks == 0 {
+			t.Errorf("%s: no step was checked", k.ID)
+		}
+	}
+}
+
+// feedback draws a network of transistors with feedback everywhere: each terminal hangs on
+// a few shared nodes, which resistors tie to each other and to the supply.
+func feedback(number uint64, transistors int) string {
+	d := &draw{Rand: rand.New(rand.NewPCG(number, 0x6665656462))} // any fixed second word
+	var b strings.Builder
+	b.WriteString("rail V = 5 V\npart n npn Isat = 1e-15 A, betaF = 80, betaR = 2\npart p pnp Isat = 1e-15 A, betaF = 50, betaR = 1\n")
+	nodes := transistors + 2
+	for i := range nodes {
+		fmt.Fprintf(&b, "path V -> RA%d %g -> x%d -> RB%d %g -> gnd\n", i, d.decade(1e3, 1e6), i, i, d.decade(1e3, 1e6))
+	}
+	for i := range transistors {
+		a := d.IntN(nodes)
+		base := (a + 1 + d.IntN(nodes-1)) % nodes
+		if d.IntN(2) == 0 {
+			fmt.Fprintf(&b, "path x%d -> Q%d n base=x%d -> e%d -> RE%d %g -> gnd\n", a, i, base, i, i, d.decade(10, 3e3))
+		} else {
+			fmt.Fprintf(&b, "path V -> RE%d %g -> e%d -> Q%d p base=x%d -> x%d\n", i, d.decade(10, 3e3), i, i, base, a)
+		}
+	}
+	return b.String()
+}
+
+// TestSureAndQuick searches random networks with feedback both ways. The sure one proves
+// its list; the quick one finds no point that is not on it.
+func TestSureAndQuick(t *testing.T) {
+	const networks = 300
+	several, fewer, boxes := 0, 0, 0
+	for i := range networks {
+		text := feedback(uint64(i), 3+i%8)
+		c := read(t, fmt.Sprintf("feedback-%d.bias", i), []byte(text))
+		sure := allPoints(t, c, solve.EveryOptions{Workers: 2})
+		if !sure.Search.Proven || sure.Search.Signs != 1 {
+			t.Errorf("network %d: %+v\n%s", i, sure.Search, text)
+			continue
+		}
+		boxes += sure.Search.Boxes
+		if len(sure.Others) > 0 {
+			several++
+		}
+		quick := allPoints(t, c, solve.EveryOptions{Quick: true})
+		for _, p := range quick.All() {
+			nearest := math.Inf(1)
+			for _, q := range sure.All() {
+				far := 0.0
+				for n := range p.NodeV {
+					far = math.Max(far, math.Abs(p.NodeV[n]-q.NodeV[n]))
+				}
+				nearest = math.Min(nearest, far)
+			}
+			if nearest > 1e-8 { // V
+				t.Errorf("network %d: the quick way has a point %g V from any that is proven", i, nearest)
+			}
+		}
+		if len(quick.Others) < len(sure.Others) {
+			fewer++
+		}
+	}
+	t.Logf("%d networks in %d boxes, %d with several points; the quick way misses some in %d", networks, boxes, several, fewer)
+}
+
+// TestBanksAreUnique proves mirror banks and trees of mirrors unique by the first box
+// alone.
+func TestBanksAreUnique(t *testing.T) {
+	for _, n := range []int{4, 10, 30, 60} {
+		c := read(t, "bank.bias", []byte(bank(n)))
+		s, err := mna.New(c)
+		if err != nil {
+			t.Fatal(err)
+		}
+		sys, _, err := s.Neutral()
+		if err != nil {
+			t.Fatal(err)
+		}
+		r := every.Search(sys, every.Options{RootOnly: true, Known: [][]float64{point(t, c).Unknowns()}})
+		if len(r.Points) != 1 || r.Open != 0 || r.Boxes != 1 {
+			t.Errorf("%d transistors: %d points, %d boxes, %d open", n, len(r.Points), r.Boxes, r.Open)
+		}
+	}
+}
+
+// bank is an npn mirror of one reference and n - 1 outputs, with emitter resistors and
+// loads; every fourth output turns over into a pnp mirror.
+func bank(n int) string {
+	var b strings.Builder
+	b.WriteString("rail V = 9 V\npart n npn Isat = 1e-15 A, betaF = 200, VA = 80 V\npart p pnp Isat = 1e-15 A, betaF = 100, VA = 60 V\n")
+	b.WriteString("path V -> RREF 8.2k -> line -> Q0 n base=line -> e0 -> RE0 220 -> gnd\n")
+	for i := 1; i < n; i++ {
+		if i%4 == 0 && i+2 < n {
+			fmt.Fprintf(&b, "path V -> RP%d 220 -> ep%d -> P%d p base=c%d -> c%d -> Q%d n base=line -> e%d -> RE%d 220 -> gnd\n", i, i, i, i, i, i, i, i)
+			fmt.Fprintf(&b, "path V -> RS%d 220 -> es%d -> S%d p base=c%d -> o%d -> RL%d 1k -> gnd\n", i, i, i, i, i, i)
+			continue
+		}
+		fmt.Fprintf(&b, "path V -> RL%d 1k -> c%d -> Q%d n base=line -> e%d -> RE%d 220 -> gnd\n", i, i, i, i, i)
+	}
+	return b.String()
+}
+
+// TestEnclosures holds intervals that surely contain the solution against the listed values
+// of other solvers: each meets the value, one unit in its last place more or less.
+func TestEnclosures(t *testing.T) {
+	circuits, err := Points(pointsFile)
+	if err != nil {
+		t.Fatal(err)
+	}
+	met := 0
+	for i := range circuits {
+		k := &circuits[i]
+		text, err := k.Text()
+		if err != nil {
+			t.Fatal(err)
+		}
+		c := read(t, k.ID+".bias", text.Source)
+		for _, p := range allPoints(t, c, solve.EveryOptions{}).All() {
+			e, err := solve.Enclose(p)
+			if err != nil {
+				t.Errorf("%s: %v", k.ID, err)
+				continue
+			}
+			for n, v := range p.NodeV {
+				if !(v >= e.NodeV[n].Lo-1e-12 && v <= e.NodeV[n].Hi+1e-12) {
+					t.Errorf("%s: node %d at %g V, enclosed %v", k.ID, n, v, e.NodeV[n])
+				}
+			}
+			for _, known := range k.Points {
+				if distance(t, p, text, known) > 1e-8 {
+					continue
+				}
+				for name, v := range known.Volts {
+					// 17 digits are listed, and the circuit's own numbers are read back
+					// from text: a few units in the last place of the largest voltage.
+					const last = 1e-15
+					box := e.NodeV[node(t, c, text.Node[name])]
+					slack := last * math.Max(1, math.Abs(v))
+					if box.Hi < v-slack || box.Lo > v+slack {
+						t.Errorf("%s: %s listed as %.17g, enclosed %v", k.ID, name, v, box)
+					}
+					met++
+				}
+			}
+		}
+	}
+	if met < 200 {
+		t.Errorf("%d values compared, expected 200 at least", met)
+	}
+}
+
+// BenchmarkEvery prints the time of each listed circuit's proof.
+func BenchmarkEvery(b *testing.B) {
+	circuits, err := Points(pointsFile)
+	if err != nil {
+		b.Fatal(err)
+	}
+	for i := range circuits {
+		text, err := circuits[i].Text()
+		if err != nil {
+			b.Fatal(err)
+		}
+		c := read(b, circuits[i].ID+".bias", text.Source)
+		b.Run(circuits[i].ID, func(b *testing.B) {
+			boxes := 0
+			for b.Loop() {
+				boxes = allPoints(b, c, solve.EveryOptions{}).Search.Boxes
+			}
+			b.ReportMetric(float64(boxes), "boxes")
+		})
+	}
+}
+
+// BenchmarkBanks prints the time of the first box against the number of transistors.
+func BenchmarkBanks(b *testing.B) {
+	for _, n := range []int{4, 16, 64, 130} {
+		c := read(b, "bank.bias", []byte(bank(n)))
+		s, err := mna.New(c)
+		if err != nil {
+			b.Fatal(err)
+		}
+		sys, _, err := s.Neutral()
+		if err != nil {
+			b.Fatal(err)
+		}
+		res, err := solve.Solve(c, solve.Options{})
+		if err != nil {
+			b.Fatal(err)
+		}
+		b.Run(fmt.Sprint(n), func(b *testing.B) {
+			for b.Loop() {
+				r := every.Search(sys, every.Options{RootOnly: true, Known: [][]float64{res.Point.Unknowns()}})
+				if r.Open != 0 {
+					b.Fatal("not unique by the first box")
 				}
 			}
 		})

@@ -19,7 +19,7 @@ const (
 )
 
 // read resolves a text of this package's own making.
-func read(t *testing.T, name string, text []byte) *netlist.Circuit {
+func read(t testing.TB, name string, text []byte) *netlist.Circuit {
 	t.Helper()
 	c, list := netlist.Read(name, text, devices.Catalogue(), library{})
 	if c == nil {
@@ -32,7 +32,7 @@ func read(t *testing.T, name string, text []byte) *netlist.Circuit {
 }
 
 // point solves a circuit.
-func point(t *testing.T, c *netlist.Circuit) *solve.Point {
+func point(t testing.TB, c *netlist.Circuit) *solve.Point {
 	t.Helper()
 	r, err := solve.Solve(c, solve.Options{})
 	if err != nil {

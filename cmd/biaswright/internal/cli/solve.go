@@ -3,6 +3,7 @@ package cli
 import (
 	"errors"
 	"fmt"
+	"runtime"
 	"strings"
 
 	"github.com/urfave/cli/v2"
@@ -24,6 +25,11 @@ func (r *runner) solveCommand() *cli.Command {
 			&cli.StringSliceFlag{Name: "at", Usage: "`NAME=low|high,...`: take the stated ends of rails and of ambient, and judge hold against nominal"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: start there, and take the nearest of several operating points; may be repeated"},
 			chartFlag("where the volts go, path by path,"),
+			&cli.BoolFlag{Name: "every", Usage: "find every operating point, and prove that there are no others", DisableDefaultText: true},
+			&cli.DurationFlag{Name: "budget", Usage: "`TIME` after which the search for every point ends, such as 30s", Value: searchBudget},
+			&cli.BoolFlag{Name: "quick", Usage: "with --every: follow branches instead of searching everywhere; proves nothing", DisableDefaultText: true},
+			&cli.BoolFlag{Name: "enclose", Usage: "print intervals that surely contain the exact solution", DisableDefaultText: true},
+			&cli.IntFlag{Name: "workers", Usage: "with --every: `N` boxes at a time; the answer is the same", Value: runtime.NumCPU()},
 			sketchFlag(),
 			&cli.BoolFlag{Name: "trace", Usage: "tell the solver's steps on standard error", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
@@ -40,6 +46,7 @@ type request struct {
 	trace   func(string)
 	chart   chartFile
 	sketch  bool
+	search  searchRequest
 }
 
 func (r *runner) solve(c *cli.Context) error {
@@ -52,6 +59,9 @@ func (r *runner) solve(c *cli.Context) error {
 		return err
 	}
 	q.sketch = c.Bool("sketch")
+	if q.search, err = searchOptions(c); err != nil {
+		return err
+	}
 	if q.chart, err = chartOption(c); err != nil {
 		return err
 	}
@@ -184,7 +194,7 @@ func (r *runner) answer(name string, q *request) (*render.Answer, *trouble) {
 		return nil, &trouble{file: shown, found: wrong}
 	}
 	a := &render.Answer{File: shown, Circuit: actual, Set: q.set, At: q.at, Inner: q.trace != nil, Warnings: warnings}
-	r.fill(a, nominal, solve.Options{Near: near, Trace: q.trace})
+	r.fill(a, nominal, solve.Options{Near: near, Trace: q.trace}, q.search)
 	if a.Failure != nil {
 		return a, nil
 	}
@@ -244,8 +254,8 @@ func stillOpen(c *netlist.Circuit) diag.List {
 }
 
 // fill solves and judges.
-func (r *runner) fill(a *render.Answer, nominal *netlist.Circuit, o solve.Options) {
-	if f := points(a, nominal, o); f != nil {
+func (r *runner) fill(a *render.Answer, nominal *netlist.Circuit, o solve.Options, search searchRequest) {
+	if f := points(a, nominal, o, search); f != nil {
 		r.raise(exitNoPoint)
 		a.Result, a.Failure = nil, f
 		return
@@ -267,9 +277,8 @@ func (r *runner) fill(a *render.Answer, nominal *netlist.Circuit, o solve.Option
 
 // points finds the point asked for and, where ends are taken, the nominal one
 // that a hold is judged against.
-func points(a *render.Answer, nominal *netlist.Circuit, o solve.Options) *solve.Failure {
-	var err error
-	if a.Result, err = solve.Solve(a.Circuit, o); err != nil {
+func points(a *render.Answer, nominal *netlist.Circuit, o solve.Options, search searchRequest) *solve.Failure {
+	if err := search.solve(a, o); err != nil {
 		return failure(err)
 	}
 	traceInner(a.Result.Point, o.Trace)

@@ -86,6 +86,8 @@ type solveJSON struct {
 	Failure      *failureJSON  `json:"failure,omitempty"`
 	Others       []pointJSON   `json:"others,omitempty"`
 	Nominal      *pointJSON    `json:"nominal,omitempty"`
+	Search       *searchJSON   `json:"search,omitempty"`
+	Enclosure    *encloseJSON  `json:"enclosure,omitempty"`
 	Requirements []verdictJSON `json:"requirements"`
 	Cautions     []cautionJSON `json:"cautions"`
 	Warnings     diag.List     `json:"warnings"`
@@ -219,7 +221,23 @@ func JSON(a *Answer) any {
 	}
 	j.Points = append(j.Points, point(a.Result.Point, a.Inner))
 	for _, o := range a.Result.Others {
-		j.Others = append(j.Others, point(o, a.Inner))
+		if a.Every != nil {
+			j.Points = append(j.Points, point(o, a.Inner))
+		} else {
+			j.Others = append(j.Others, point(o, a.Inner))
+		}
+	}
+	switch {
+	case a.Every != nil:
+		j.Search = search(&a.Every.Search)
+		if a.Every.Reached >= 0 {
+			j.Search.Reached = &a.Every.Reached
+		}
+	case a.Proof != nil:
+		j.Search = search(a.Proof)
+	}
+	if a.Enclosure != nil {
+		j.Enclosure = enclosure(a)
 	}
 	if a.Nominal != nil {
 		p := point(a.Nominal, a.Inner)

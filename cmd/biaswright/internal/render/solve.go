@@ -18,6 +18,14 @@ type Answer struct {
 
 	Result  *solve.Result // nil where there is a Failure
 	Failure *solve.Failure
+	// Every is set where all points were asked for; Result is then its. Proof is why the
+	// point is the only one, nil where that is not known.
+	Every *solve.EveryResult
+	Proof *solve.Search
+	// Enclosure is of Result's Point; nil where it was not asked for, or with a reason
+	// in NoEnclosure.
+	Enclosure   *solve.Enclosure
+	NoEnclosure string
 	// Nominal is the point that a hold is judged against; nil without --at.
 	Nominal  *solve.Point
 	Verdicts []solve.Verdict
@@ -43,19 +51,36 @@ func Screen(out io.Writer, a *Answer, l Look) error {
 		wrap(w, "", "This point cannot be stable: the circuit would leave it by itself.")
 		io.WriteString(w, "\n")
 	}
+	if a.Every != nil {
+		printSearch(w, a.Every, l)
+	}
 	printSketch(w, a.Sketch, l)
-	s := newStair(l, p, exceeded(a.Cautions))
-	for i := range a.Circuit.Paths {
-		s.path(&a.Circuit.Paths[i])
+	if a.Every != nil && len(a.Result.Others) > 0 {
+		for i, q := range a.Every.All() {
+			fmt.Fprintln(w, l.paint(l.text(pointHead(a.Every, i)), bold))
+			fmt.Fprintln(w)
+			printPoint(w, q, a.Cautions, l)
+		}
+	} else {
+		printPoint(w, p, a.Cautions, l)
+	}
+	printEnclosure(w, a, l)
+	printVerdicts(w, a, l)
+	printCautions(w, a.Cautions, l)
+	printEvidence(w, a, l)
+	return w.err
+}
+
+// printPoint prints a point's staircases.
+func printPoint(w io.Writer, p *solve.Point, cautions []solve.Caution, l Look) {
+	s := newStair(l, p, exceeded(cautions))
+	for i := range p.Circuit.Paths {
+		s.path(&p.Circuit.Paths[i])
 	}
 	s.placed()
 	s.rails()
 	s.t.print(w, l)
 	printLoad(w, p, l)
-	printVerdicts(w, a, l)
-	printCautions(w, a.Cautions, l)
-	printEvidence(w, a.Result, l)
-	return w.err
 }
 
 // printSketch puts a picture in characters.
@@ -129,7 +154,8 @@ func printLoad(w io.Writer, p *solve.Point, l Look) {
 
 // printEvidence says in one line why the point is believed, and which others
 // there are.
-func printEvidence(w io.Writer, r *solve.Result, l Look) {
+func printEvidence(w io.Writer, a *Answer, l Look) {
+	r := a.Result
 	e := &r.Point.Evidence
 	where := strings.TrimPrefix(e.Where, "current balance ")
 	if where != "" {
@@ -150,7 +176,13 @@ func printEvidence(w io.Writer, r *solve.Result, l Look) {
 		}
 		said = append(said, count(e.Fallbacks, "step")+how)
 	}
+	if a.Proof != nil {
+		said = append(said, "proven to be the only one with "+scopeText(a.Proof))
+	}
 	wrap(w, "", l.text(strings.Join(said, "; ")+"."))
+	if a.Every != nil {
+		return
+	}
 	for _, o := range r.Others {
 		wrap(w, "", l.text(otherText(r.Point, o)))
 	}
@@ -165,6 +197,8 @@ func wayText(way string) string {
 		return way
 	case "near":
 		return "from the voltages asked for"
+	case "search":
+		return "by the search for all points"
 	case "settling":
 		return "by settling"
 	default:
