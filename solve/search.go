@@ -255,23 +255,29 @@ func (r *EveryResult) reach(s *mna.System) {
 	}
 }
 
-// rootWork bounds, as unknowns, the circuits whose uniqueness Certify tries to prove: the
-// matrices of one box grow with the square, and their inverses with the cube.
-const rootWork = 64
+// A certificate may cost a few milliseconds: certifyWork bounds the unknowns and Early
+// products of the circuits that Certify looks at, since inverses grow with the cube, and
+// certifyBoxes how many boxes of the search it does.
+const certifyWork, certifyBoxes = 32, 8
 
-// Certify tries to prove at small cost that a point is the only one, by the search's first
-// box alone. The Search is nil where it does not.
-func Certify(p *Point) *Search {
+// Certify tries to prove, at small cost, that the point of a result is the only one. The
+// Search is nil where it does not; other points that it meets then are added to Others.
+// A linear circuit needs no proof, and has none.
+func (r *Result) Certify() *Search {
+	p := r.Point
 	s, err := mna.New(p.Circuit)
-	if err != nil || s.Size() > rootWork {
+	if err != nil || s.Size() > certifyWork {
 		return nil
 	}
 	sys, scope, err := s.Neutral()
-	if err != nil {
+	if err != nil || len(sys.Exps) == 0 || sys.N+len(sys.Prods) > certifyWork {
 		return nil
 	}
-	found := every.Search(sys, every.Options{RootOnly: true, Known: [][]float64{p.x}})
-	if found.Open > 0 || len(found.Points) != 1 || !near(found.Points[0].X, p.x) {
+	found := every.Search(sys, every.Options{MostBoxes: certifyBoxes, Known: unknowns(append([]*Point{p}, r.Others...))})
+	all := EveryResult{}
+	all.gather(s, append([]*Point{p}, r.Others...), found)
+	r.Others = all.Others
+	if found.Open > 0 || len(r.Others) > 0 {
 		return nil
 	}
 	return &Search{Proven: true, Scope: scope, Boxes: found.Boxes, Signs: p.Evidence.Determinant, Leaks: leaks(p.Circuit)}

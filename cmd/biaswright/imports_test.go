@@ -58,7 +58,7 @@ var rules = map[string]row{
 		code:  "netlist netlist/quantity devices solve/mna solve/newton solve/follow solve/sparse solve/every solve/interval",
 		tests: "netlist/diag devices/shelf solve/reftest",
 	},
-	"solve/reftest": {tests: "netlist netlist/diag devices devices/physics devices/shelf solve"},
+	"solve/reftest": {tests: "netlist netlist/diag devices devices/physics devices/shelf solve solve/mna solve/every solve/interval"},
 
 	"sweep": {
 		code:  "netlist netlist/diag netlist/quantity solve solve/mna solve/newton",

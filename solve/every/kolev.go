@@ -113,7 +113,7 @@ func (l *linearised) narrow(s *System, b *box) (alive, moved bool) {
 		base[i] = sum.Neg()
 	}
 	drift := interval.Up(l.c.defect * far)
-	const enough = 0.9
+	const enough = 0.98
 	meet := func(old *interval.I, with interval.I) bool {
 		m := old.Meet(with)
 		if m.Empty() {

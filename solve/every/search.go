@@ -10,9 +10,10 @@ import (
 
 // Options steer a search.
 type Options struct {
-	// Budget ends the search; 0 is none. RootOnly never splits.
-	Budget   time.Duration
-	RootOnly bool
+	// Budget ends the search, and so does MostBoxes; 0 is none. RootOnly never splits.
+	Budget    time.Duration
+	MostBoxes int
+	RootOnly  bool
 	// Known are solutions, as doubles, that the search may begin with.
 	Known [][]float64
 	// Workers is how many boxes are looked at at a time; 0 is one. The answer is the
@@ -136,7 +137,8 @@ func (f *finder) run() {
 		}
 	}
 	for len(open) > 0 {
-		if !f.deadline.IsZero() && time.Now().After(f.deadline) {
+		spent := f.o.MostBoxes > 0 && f.res.Boxes >= f.o.MostBoxes
+		if spent || !f.deadline.IsZero() && time.Now().After(f.deadline) {
 			f.res.Open += len(open)
 			return
 		}
@@ -193,15 +195,16 @@ func (f *finder) look(b *box) (out look) {
 	s := f.s
 	p := newPropagator(s)
 	var l *linearised
-	const rounds = 12
-	for range rounds {
+	const rounds = 40
+	for round := range rounds {
 		before := f.coordinates(b)
 		if !p.run(b) {
 			f.check("propagate", before, nil)
 			return out
 		}
 		f.check("propagate", before, b)
-		if f.settled(b, &out) {
+		// The test is dear: it is made at rounds 0, 1, 2, 4, 8 and so on, and at last.
+		if round&(round-1) == 0 && f.settled(b, &out, round == 0) {
 			return out
 		}
 		var ok bool
@@ -219,6 +222,9 @@ func (f *finder) look(b *box) (out look) {
 		if !moved {
 			break
 		}
+	}
+	if !p.run(b) || f.settled(b, &out, true) {
+		return out
 	}
 	if f.o.RootOnly {
 		out.stuck = true
@@ -249,9 +255,9 @@ func (f *finder) check(step string, before []interval.I, after *box) {
 	}
 }
 
-// settled tells whether a box holds no solution beside the known ones. It looks for one if
-// none is known that would settle it.
-func (f *finder) settled(b *box, out *look) bool {
+// settled tells whether a box holds no solution beside the known ones. Where it is to look,
+// and none that is known lies in the box, it looks for one that would settle it.
+func (f *finder) settled(b *box, out *look, looking bool) bool {
 	if f.s.Monotone && len(f.res.Points) > 0 {
 		return true
 	}
@@ -261,16 +267,16 @@ func (f *finder) settled(b *box, out *look) bool {
 		}
 	}
 	for _, p := range f.res.Points {
-		if f.s.alone(b.u, f.params, p) {
+		if f.s.alone(b.u, f.cols, p) {
 			return true
 		}
 	}
 	for _, p := range out.found {
-		if f.s.alone(b.u, f.params, p) {
+		if f.s.alone(b.u, f.cols, p) {
 			return true
 		}
 	}
-	if len(out.found) > 0 {
+	if len(out.found) > 0 || !looking || f.holds(b) {
 		return false
 	}
 	x, ok := f.s.newton(b, b.middle(), f.params, nil)
@@ -287,7 +293,17 @@ func (f *finder) settled(b *box, out *look) bool {
 		}
 	}
 	out.found = append(out.found, p)
-	return f.s.alone(b.u, f.params, p)
+	return f.s.alone(b.u, f.cols, p)
+}
+
+// holds tells whether a known point lies in a box.
+func (f *finder) holds(b *box) bool {
+	for _, p := range f.res.Points {
+		if b.has(f.s, p.X) {
+			return true
+		}
+	}
+	return false
 }
 
 // cut chooses an exponential whose argument to split, and where: that whose remainder moves

@@ -162,26 +162,16 @@ func (s *System) pointSlopes(u, y, dy []float64) []float64 {
 	return out
 }
 
-// slopes are the params' slopes between a known point (its arguments and values as tight
-// intervals) and every point of a box; without a point, the derivatives on the box.
-func (s *System) slopes(u []interval.I, known *Point) []interval.I {
+// slopes are the params' derivatives on a box.
+func (s *System) slopes(u []interval.I) []interval.I {
 	out := make([]interval.I, 0, len(s.Exps)+2*len(s.Prods))
 	for k := range s.Exps {
-		if known == nil {
-			out = append(out, s.Exps[k].slope(u[k]))
-			continue
-		}
-		out = append(out, s.Exps[k].chord(known.u[k], u[k]))
+		out = append(out, s.Exps[k].slope(u[k]))
 	}
 	for t := range s.Prods {
 		p := &s.Prods[t]
 		q := interval.Of(1).Sub(u[p.R].Scale(p.Slope))
-		var transport interval.I // of the known point, or of the box for derivatives
-		if known != nil {
-			transport = known.y[p.F].Sub(known.y[p.R])
-		} else {
-			transport = s.Exps[p.F].of(u[p.F]).Sub(s.Exps[p.R].of(u[p.R]))
-		}
+		transport := s.Exps[p.F].of(u[p.F]).Sub(s.Exps[p.R].of(u[p.R]))
 		out = append(out, out[p.F].Mul(q), out[p.R].Mul(q).Add(transport.Scale(p.Slope)).Neg())
 	}
 	return out
@@ -200,15 +190,45 @@ func middles(slopes []interval.I) (mid, rad []float64, ok bool) {
 	return mid, rad, true
 }
 
+// shared gives params, and their slopes between a known point and every point of a box, in
+// which a product's second factor, q, stands at its middle
+// with the exponentials that it multiplies: one uncertain slope for all that an
+// exponential does. What q adds beside its middle is small and stands apart.
+func (s *System) shared(u []interval.I, c columns, known *Point) ([]param, []interval.I) {
+	size := len(s.Exps) + 2*len(s.Prods)
+	params, slopes := make([]param, 0, size), make([]interval.I, 0, size)
+	for k := range s.Exps {
+		params = append(params, param{c.exp[k], s.Exps[k].A, s.Exps[k].B})
+		slopes = append(slopes, s.Exps[k].chord(known.u[k], u[k]))
+	}
+	for t := range s.Prods {
+		p := &s.Prods[t]
+		q := interval.Of(1).Sub(u[p.R].Scale(p.Slope))
+		middle := q.Mid()
+		rest := q.Sub(interval.Of(middle))
+		f, r := &params[p.F], &params[p.R]
+		f.col, r.col = append([]Term(nil), f.col...), append([]Term(nil), r.col...)
+		for _, b := range c.prod[t] {
+			f.col = append(f.col, Term{b.At, b.Coef * middle})
+			r.col = append(r.col, Term{b.At, -b.Coef * middle})
+		}
+		transport := known.y[p.F].Sub(known.y[p.R]).Scale(p.Slope)
+		params = append(params, param{c.prod[t], f.a, f.b}, param{c.prod[t], r.a, r.b})
+		slopes = append(slopes, slopes[p.F].Mul(rest), slopes[p.R].Mul(rest).Add(transport).Neg())
+	}
+	return params, slopes
+}
+
 // alone tells whether no second solution lies in a box, besides the known one wherever that
-// is; without a known one, whether at most one lies there.
-func (s *System) alone(u []interval.I, params []param, known *Point) bool {
-	mid, rad, ok := middles(s.slopes(u, known))
+// is.
+func (s *System) alone(u []interval.I, c columns, known *Point) bool {
+	params, slopes := s.shared(u, c, known)
+	mid, rad, ok := middles(slopes)
 	if !ok {
 		return false
 	}
-	c, ok := s.newCentre(params, mid)
-	return ok && c.regular(params, rad)
+	at, ok := s.newCentre(params, mid)
+	return ok && at.regular(params, rad)
 }
 
 // A Point is a solution: each unknown lies in X, and no other solution has all of them
@@ -280,7 +300,7 @@ func (s *System) image(x, radius, shift []float64, c *centre, params []param) ([
 	for k := range s.Exps {
 		u[k] = difference(around, s.Exps[k].A, s.Exps[k].B, s.Exps[k].Offset)
 	}
-	slopes := s.slopes(u, nil)
+	slopes := s.slopes(u)
 	_, y, dy := s.values(x)
 	at, _, _ := s.values(x)
 	mid := s.pointSlopes(at, y, dy)

@@ -197,8 +197,11 @@ func TestSureAndQuick(t *testing.T) {
 // TestBanksAreUnique proves mirror banks and trees of mirrors unique by the first box
 // alone.
 func TestBanksAreUnique(t *testing.T) {
-	for _, n := range []int{4, 10, 30, 60} {
-		c := read(t, "bank.bias", []byte(bank(n)))
+	for _, size := range []struct {
+		n     int
+		early bool
+	}{{4, true}, {10, true}, {30, true}, {4, false}, {60, false}, {90, false}} {
+		c := read(t, "bank.bias", []byte(bank(size.n, size.early)))
 		s, err := mna.New(c)
 		if err != nil {
 			t.Fatal(err)
@@ -209,16 +212,21 @@ func TestBanksAreUnique(t *testing.T) {
 		}
 		r := every.Search(sys, every.Options{RootOnly: true, Known: [][]float64{point(t, c).Unknowns()}})
 		if len(r.Points) != 1 || r.Open != 0 || r.Boxes != 1 {
-			t.Errorf("%d transistors: %d points, %d boxes, %d open", n, len(r.Points), r.Boxes, r.Open)
+			t.Errorf("%+v: %d points, %d boxes, %d open", size, len(r.Points), r.Boxes, r.Open)
 		}
 	}
 }
 
 // bank is an npn mirror of one reference and n - 1 outputs, with emitter resistors and
-// loads; every fourth output turns over into a pnp mirror.
-func bank(n int) string {
+// loads; every fourth output turns over into a pnp mirror, so that there are about half
+// as many transistors again.
+func bank(n int, early bool) string {
 	var b strings.Builder
-	b.WriteString("rail V = 9 V\npart n npn Isat = 1e-15 A, betaF = 200, VA = 80 V\npart p pnp Isat = 1e-15 A, betaF = 100, VA = 60 V\n")
+	va := "infinite"
+	if early {
+		va = "80 V"
+	}
+	fmt.Fprintf(&b, "rail V = 9 V\npart n npn Isat = 1e-15 A, betaF = 200, VA = %s\npart p pnp Isat = 1e-15 A, betaF = 100, VA = %[1]s\n", va)
 	b.WriteString("path V -> RREF 8.2k -> line -> Q0 n base=line -> e0 -> RE0 220 -> gnd\n")
 	for i := 1; i < n; i++ {
 		if i%4 == 0 && i+2 < n {
@@ -302,10 +310,12 @@ func BenchmarkEvery(b *testing.B) {
 	}
 }
 
-// BenchmarkBanks prints the time of the first box against the number of transistors.
+// BenchmarkBanks prints the time of the first box against the number of transistors, without
+// an Early effect.
 func BenchmarkBanks(b *testing.B) {
-	for _, n := range []int{4, 16, 64, 130} {
-		c := read(b, "bank.bias", []byte(bank(n)))
+	for _, n := range []int{4, 16, 64, 90} {
+		text := bank(n, false)
+		c := read(b, "bank.bias", []byte(text))
 		s, err := mna.New(c)
 		if err != nil {
 			b.Fatal(err)
@@ -318,7 +328,13 @@ func BenchmarkBanks(b *testing.B) {
 		if err != nil {
 			b.Fatal(err)
 		}
-		b.Run(fmt.Sprint(n), func(b *testing.B) {
+		transistors := 0
+		for i := range c.Elements {
+			if c.Elements[i].Kind == netlist.TransistorPart {
+				transistors++
+			}
+		}
+		b.Run(fmt.Sprint(transistors), func(b *testing.B) {
 			for b.Loop() {
 				r := every.Search(sys, every.Options{RootOnly: true, Known: [][]float64{res.Point.Unknowns()}})
 				if r.Open != 0 {

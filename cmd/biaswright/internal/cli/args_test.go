@@ -66,7 +66,8 @@ func TestValuedOptions(t *testing.T) {
 	got := valued(r.app(), "")
 	if d := cmp.Diff(map[string]bool{
 		"set": true, "at": true,
-		"chart": true, "near": true, "within": true, "workers": true,
+		"budget": true,
+		"chart":  true, "near": true, "within": true, "workers": true,
 		"over": true, "points": true, "log": true, "show": true,
 		"reopen": true, "list": true, "write": true,
 	}, got); d != "" {

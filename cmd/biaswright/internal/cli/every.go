@@ -50,9 +50,7 @@ func (q *searchRequest) solve(a *render.Answer, o solve.Options) error {
 		if a.Result, err = solve.Solve(a.Circuit, o); err != nil {
 			return err
 		}
-		if len(a.Result.Others) == 0 {
-			a.Proof = solve.Certify(a.Result.Point)
-		}
+		a.Proof = a.Result.Certify()
 	}
 	if q.enclose {
 		if a.Enclosure, err = solve.Enclose(a.Result.Point); err != nil {

@@ -176,10 +176,10 @@ func printEvidence(w io.Writer, a *Answer, l Look) {
 		}
 		said = append(said, count(e.Fallbacks, "step")+how)
 	}
-	if a.Proof != nil {
-		said = append(said, "proven to be the only one with "+scopeText(a.Proof))
-	}
 	wrap(w, "", l.text(strings.Join(said, "; ")+"."))
+	if a.Proof != nil {
+		wrap(w, "", l.text("Proven to be the only operating point with "+scopeText(a.Proof)+"."))
+	}
 	if a.Every != nil {
 		return
 	}
