@@ -154,8 +154,15 @@ func (s *System) longest() float64 {
 type spread struct {
 	move []float64 // by column and unknown: C col
 	big  []float64 // by column: the largest magnitude of move
-	size []float64 // by column and unknown: Σ |C| |col|, for rounding
+	// size is, by column and unknown, Σ |C| |col|, larger for columns of more than
+	// terms entries, so that move is within terms eps size of what is exact.
+	size []float64
 }
+
+// terms is how many roundings each part of a move is reckoned to go through: what its
+// users state. A shared exponential of a bank may have a hundred entries; its size grows
+// with their number.
+const terms = 8
 
 func (t *centre) times(cols [][]Term) *spread {
 	n := t.n
@@ -169,8 +176,11 @@ func (t *centre) times(cols [][]Term) *spread {
 				size[i] += math.Abs(v)
 			}
 		}
+		const more = 2 // of the coefficient, and of the size itself
+		share := math.Max(1, float64(len(col)+more)/terms)
 		for i := range move {
-			s.big[k] = math.Max(s.big[k], math.Abs(move[i])+size[i]*8*eps)
+			size[i] *= share
+			s.big[k] = math.Max(s.big[k], math.Abs(move[i])+size[i]*terms*eps)
 		}
 	}
 	return s
