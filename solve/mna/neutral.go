@@ -254,9 +254,23 @@ func (n *neutral) scope() Scope {
 		spans += high[row] - low[row]
 	}
 	if !sc.Proved {
-		const window = 100 // V beyond the supplies; more than any bias network's source makes
-		spans += window
+		// What the sources could drive through all resistances in a row, so that the
+		// point of a source into a resistor lies within; and some for junctions.
+		const window = 100 // V; more than the drops of any bias network's junctions
+		spans += window + s.driven()
 	}
 	sc.Low, sc.High = sc.Low-spans, sc.High+spans
 	return sc
+}
+
+// driven is the sum of the sources' currents times that of the resistances, in V.
+func (s *System) driven() float64 {
+	amps, ohms := 0.0, 0.0
+	for i := range s.sources {
+		amps += math.Abs(s.sources[i].amps)
+	}
+	for i := range s.resistors {
+		ohms += 1 / s.resistors[i].g
+	}
+	return amps * ohms
 }

@@ -1,0 +1,31 @@
+package solve_test
+
+import (
+	"testing"
+	"time"
+
+	"biaswright/solve"
+)
+
+// A source into a resistor stands at I R = 200 V (arithmetic), less what R3 takes: the scope of a
+// proof must reach that far, or the proof is not about the point.
+func TestScopeHoldsWhatSourcesDrive(t *testing.T) {
+	c := read(t, `rail VCC = 12 V
+part q npn Isat = 10 fA, betaF = 100, betaR = 1
+path gnd -> I1 1 mA -> n -> R1 200k -> gnd
+path VCC -> R2 1k -> c -> Q1 q base=b -> gnd
+path n -> R3 1M -> b
+`)
+	r, err := solve.Every(c, solve.EveryOptions{Budget: 5 * time.Second})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, v := range r.Point.NodeV {
+		if s := r.Search.Scope; v < s.Low || v > s.High {
+			t.Errorf("a node at %.4g V, the scope says %.4g V to %.4g V", v, s.Low, s.High)
+		}
+	}
+	if !r.Search.Proven {
+		t.Errorf("not proven, %d boxes open", r.Search.Open)
+	}
+}
