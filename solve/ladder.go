@@ -41,6 +41,7 @@ var rungs = []rung{
 	{"gain ramp", (*ladder).gainArc},
 	{"supply arc", (*ladder).supplyArc},
 	{"settling", (*ladder).settling},
+	{"box search", (*ladder).boxes},
 }
 
 // climb goes up until a point could be stable and meets all that is asked.

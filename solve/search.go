@@ -255,6 +255,41 @@ func (r *EveryResult) reach(s *mna.System) {
 	}
 }
 
+// boxWork bounds the circuits that the last rung searches, by unknowns and products, and
+// mostBoxes how many boxes it looks at: a second or so.
+const boxWork, mostBoxes = 128, 400
+
+// boxes narrows boxes until a point is found, where no other way has found any.
+func (l *ladder) boxes() (int, string) {
+	if len(l.found) > 0 {
+		return 0, "a point is known"
+	}
+	sys, _, err := l.s.Neutral()
+	if err != nil {
+		return 0, err.Error()
+	}
+	if sys.N+len(sys.Prods) > boxWork {
+		return 0, "the circuit is too large for it"
+	}
+	found := every.Search(sys, every.Options{MostBoxes: mostBoxes})
+	if len(found.Points) == 0 {
+		if found.Open == 0 {
+			return 0, "no operating point lies in what it searched"
+		}
+		return 0, "it found none"
+	}
+	steps, ended := 0, ""
+	for _, p := range found.Points {
+		x := make([]float64, sys.N)
+		for i := range x {
+			x[i] = p.X[i].Mid()
+		}
+		l.s.From(x)
+		steps, ended = l.land(x, steps, newton.Options{})
+	}
+	return steps, ended
+}
+
 // A certificate may cost a few milliseconds: certifyWork bounds the unknowns and Early
 // products of the circuits that Certify looks at, since inverses grow with the cube, and
 // certifyBoxes how many boxes of the search it does.

@@ -70,6 +70,10 @@ func (a *axis) even(most int) {
 	s := step(a.high-a.low, most)
 	const slack = 1e-9 // of a step, so that the ends get theirs
 	first, last := math.Ceil(a.low/s-slack), math.Floor(a.high/s+slack)
+	for first > last { // none falls inside: the next smaller step
+		s = step(s/2.5, 1) // from 5 to 2, from 2 to 1, from 1 to 0.5
+		first, last = math.Ceil(a.low/s-slack), math.Floor(a.high/s+slack)
+	}
 	decimals := max(0, a.ten-int(math.Floor(math.Log10(s)+slack)))
 	for k := first; k <= last; k++ {
 		v := k * s
