@@ -29,3 +29,20 @@ path n -> R3 1M -> b
 		t.Errorf("not proven, %d boxes open", r.Search.Open)
 	}
 }
+
+// A saturated transistor that carries more than the scope's 10 A (12 V over 0.5 ohm: about
+// 24 A) is no point that a proof within the scope may call the only one.
+func TestNoProofOfAPointBeyondItsScope(t *testing.T) {
+	c := read(t, `rail VCC = 12 V
+part q npn Isat = 10 pA, betaF = 50, betaR = 1
+path VCC -> R2 0.5 -> c -> Q1 q base=b -> gnd
+path VCC -> R3 1 -> b
+`)
+	r, err := solve.Solve(c, solve.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if s := r.Certify(); s != nil {
+		t.Errorf("called the only one with currents up to %v A", s.Scope.Amps)
+	}
+}

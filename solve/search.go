@@ -312,7 +312,8 @@ func (r *Result) Certify() *Search {
 	all := EveryResult{}
 	all.gather(s, append([]*Point{p}, r.Others...), found)
 	r.Others = all.Others
-	if found.Open > 0 || len(r.Others) > 0 {
+	beyond := all.enclosed[0] == nil // the point is not verified within the scope
+	if found.Open > 0 || len(r.Others) > 0 || beyond {
 		return nil
 	}
 	return &Search{Proven: true, Scope: scope, Boxes: found.Boxes, Signs: p.Evidence.Determinant, Leaks: leaks(p.Circuit)}

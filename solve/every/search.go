@@ -105,8 +105,12 @@ type finder struct {
 	deadline time.Time
 }
 
-// keep adds a point unless it is one that is there: then their boxes meet.
+// keep adds a point unless it is one that is there: then their boxes meet. One that surely
+// lies outside the start box is none of the scope's, and the result must not claim it.
 func (f *finder) keep(p *Point) {
+	if f.s.start().beyond(p) {
+		return
+	}
 	for _, q := range f.res.Points {
 		if meets(p.X, q.X) {
 			return
@@ -114,6 +118,9 @@ func (f *finder) keep(p *Point) {
 	}
 	f.res.Points = append(f.res.Points, p)
 }
+
+// beyond tells that a point surely lies outside a box.
+func (b *box) beyond(p *Point) bool { return !meets(b.x, p.X) || !meets(b.u, p.u) }
 
 func meets(a, b []interval.I) bool {
 	for i := range a {
