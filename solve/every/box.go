@@ -63,6 +63,9 @@ func newPropagator(s *System) *propagator {
 // narrow replaces an interval by what it shares with another.
 func (p *propagator) narrow(a *interval.I, with interval.I) {
 	m := a.Meet(with)
+	if math.IsNaN(m.Lo) || math.IsNaN(m.Hi) { // no claim at all
+		return
+	}
 	if m.Empty() {
 		p.empty = true
 		return
@@ -127,6 +130,9 @@ func (p *propagator) argument(k int) {
 // reach narrows an exponential by what its y may be.
 func (p *propagator) reach(k int, y interval.I) {
 	m := p.y[k].Meet(y)
+	if math.IsNaN(m.Lo) || math.IsNaN(m.Hi) {
+		return
+	}
 	if m.Empty() {
 		p.empty = true
 		return
@@ -150,6 +156,9 @@ func (p *propagator) product(t int) {
 func (p *propagator) factors(t int, w interval.I) {
 	q := &p.s.Prods[t]
 	m := p.products[t].Meet(w)
+	if math.IsNaN(m.Lo) || math.IsNaN(m.Hi) {
+		return
+	}
 	if m.Empty() {
 		p.empty = true
 		return

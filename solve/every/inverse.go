@@ -81,6 +81,7 @@ type centre struct {
 	c      []float64 // C
 	absM   []float64 // Σ of the magnitudes of what adds up to each entry of M
 	defect float64   // a bound of the largest row sum of |I - C M|, M exact
+	size   float64   // the largest row sum of |C| absM
 }
 
 // newCentre builds and inverts; false where M is singular or the inverse worth nothing.
@@ -135,6 +136,11 @@ func (s *System) newCentre(params []param, slopes []float64) (*centre, bool) {
 			sum += math.Abs(line[j]) + (s.longest()+float64(n)+4)*eps*size[j]
 		}
 		t.defect = math.Max(t.defect, sum*(1+float64(4*n)*eps))
+		all := 0.0
+		for _, v := range size {
+			all += v
+		}
+		t.size = math.Max(t.size, all)
 	}
 	const most = 0.1 // beyond it the corrections below are no small ones
 	return t, t.defect < most && !math.IsNaN(t.defect)

@@ -116,6 +116,9 @@ func (l *linearised) narrow(s *System, b *box) (alive, moved bool) {
 	const enough = 0.98
 	meet := func(old *interval.I, with interval.I) bool {
 		m := old.Meet(with)
+		if math.IsNaN(m.Lo) || math.IsNaN(m.Hi) { // no claim at all
+			return true
+		}
 		if m.Empty() {
 			return false
 		}

@@ -105,18 +105,34 @@ type finder struct {
 	deadline time.Time
 }
 
-// keep adds a point unless it is one that is there: then their boxes meet. One that surely
+// keep adds a point unless it is one that is there: then it lies where that one is proven
+// to be alone. One that surely
 // lies outside the start box is none of the scope's, and the result must not claim it.
 func (f *finder) keep(p *Point) {
 	if f.s.start().beyond(p) {
 		return
 	}
 	for _, q := range f.res.Points {
-		if meets(p.X, q.X) {
+		switch {
+		case !meets(p.X, q.X):
+		case within(p.X, q.only) || within(q.X, p.only):
+			return
+		default: // too near to be told apart in doubles
+			f.res.Open++
 			return
 		}
 	}
 	f.res.Points = append(f.res.Points, p)
+}
+
+// within tells whether a lies in b.
+func within(a, b []interval.I) bool {
+	for i := range a {
+		if a[i].Lo < b[i].Lo || a[i].Hi > b[i].Hi {
+			return false
+		}
+	}
+	return true
 }
 
 // beyond tells that a point surely lies outside a box.

@@ -235,6 +235,7 @@ func (s *System) alone(u []interval.I, c columns, known *Point) bool {
 // there.
 type Point struct {
 	X    []interval.I
+	only []interval.I // a box about X in which there is no other solution
 	u, y []interval.I
 }
 
@@ -271,7 +272,7 @@ func (s *System) verify(x []float64, params []param, slack float64) *Point {
 	}
 	const tries = 30
 	for range tries {
-		image, ok := s.image(x, radius, shift, c, params)
+		image, ok := s.image(x, radius, shift, c, params, slack)
 		if !ok {
 			return nil
 		}
@@ -289,8 +290,9 @@ func (s *System) verify(x []float64, params []param, slack float64) *Point {
 	return nil
 }
 
-// image bounds how far from x the image of the box x ± radius reaches.
-func (s *System) image(x, radius, shift []float64, c *centre, params []param) ([]float64, bool) {
+// image bounds how far from x the image of the box x ± radius reaches, with every
+// coefficient off by as much as a share slack.
+func (s *System) image(x, radius, shift []float64, c *centre, params []param, slack float64) ([]float64, bool) {
 	n := s.N
 	around := make([]interval.I, n)
 	for i := range around {
@@ -308,7 +310,7 @@ func (s *System) image(x, radius, shift []float64, c *centre, params []param) ([
 	rad := make([]float64, len(params))
 	for k := range params {
 		cols[k] = params[k].col
-		rad[k] = interval.Up(math.Max(slopes[k].Hi-mid[k], mid[k]-slopes[k].Lo))
+		rad[k] = interval.Up(math.Max(slopes[k].Hi-mid[k], mid[k]-slopes[k].Lo)) + 2*slack*slopes[k].Mag()
 		if math.IsNaN(rad[k]) || math.IsInf(rad[k], 0) {
 			return nil, false
 		}
@@ -320,7 +322,7 @@ func (s *System) image(x, radius, shift []float64, c *centre, params []param) ([
 	}
 	out := make([]float64, n)
 	for i := range n {
-		sum := shift[i] + c.defect*widest
+		sum := shift[i] + (c.defect+2*slack*c.size)*widest
 		for k := range params {
 			d := 0.0 // how far the difference may be from its middle
 			if a := params[k].a; a >= 0 {
@@ -341,10 +343,12 @@ func (s *System) image(x, radius, shift []float64, c *centre, params []param) ([
 // pointAt is the enclosure x ± image, in which the solution lies, its uniqueness proved in
 // x ± radius.
 func (s *System) pointAt(x, image, radius []float64) *Point {
-	p := &Point{X: make([]interval.I, s.N), u: make([]interval.I, len(s.Exps)), y: make([]interval.I, len(s.Exps))}
+	p := &Point{X: make([]interval.I, s.N), only: make([]interval.I, s.N), u: make([]interval.I, len(s.Exps)), y: make([]interval.I, len(s.Exps))}
 	for i := range p.X {
 		r := math.Min(image[i], radius[i])
 		p.X[i] = interval.I{Lo: interval.Down(x[i] - r), Hi: interval.Up(x[i] + r)}
+		// Rounded inward: the proof is of x ± radius.
+		p.only[i] = interval.I{Lo: interval.Up(x[i] - radius[i]), Hi: interval.Down(x[i] + radius[i])}
 	}
 	for k := range s.Exps {
 		e := &s.Exps[k]
