@@ -264,6 +264,11 @@ func (l *ladder) boxes() (int, string) {
 	if len(l.found) > 0 {
 		return 0, "a point is known"
 	}
+	return l.search()
+}
+
+// search narrows boxes until the points are found.
+func (l *ladder) search() (int, string) {
 	sys, _, err := l.s.Neutral()
 	if err != nil {
 		return 0, err.Error()

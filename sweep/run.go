@@ -40,6 +40,9 @@ type Plan struct {
 	Workers int
 	// Nominal, where set, is the nominal point that hold is judged against.
 	Nominal *solve.Point
+	// Near, where set, are node voltages in V that the first point of the innermost
+	// axis is to be near; the others follow it, as long as its branch goes on.
+	Near map[netlist.NodeID]float64
 }
 
 // Points is how many rows the plan has.
@@ -273,10 +276,15 @@ func (r *runner) refresh(x []float64) {
 	r.state.Refresh(x)
 }
 
-// anew solves a point by the whole ladder.
+// anew solves a point by the whole ladder; the first of an axis near the voltages that the
+// plan begins with.
 func (r *runner) anew(inner *Axis, v float64) {
 	r.past.clear()
-	res, err := solve.SolveSystem(r.s, solve.Options{})
+	o := solve.Options{}
+	if v == inner.Values[0] {
+		o.Near = r.plan.Near
+	}
+	res, err := solve.SolveSystem(r.s, o)
 	if err != nil {
 		r.fail(inner, v)
 		return

@@ -34,6 +34,7 @@ func (r *runner) sweepCommand() *cli.Command {
 			&cli.StringSliceFlag{Name: "log", Usage: "`AXIS`: step this range by equal ratios; may be repeated"},
 			&cli.StringSliceFlag{Name: "show", Usage: "`WHAT`: quantities or expressions, separated by commas; may be repeated"},
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: begin at the operating point nearest to these voltages, and follow it; may be repeated"},
 			chartFlag("the rows as curves over the innermost axis"),
 			&cli.IntFlag{Name: "workers", Usage: "`N` outer steps at a time; the rows are the same", Value: runtime.NumCPU()},
 			&cli.BoolFlag{Name: "csv", Usage: "print comma-separated values", DisableDefaultText: true},
@@ -210,6 +211,9 @@ func (r *runner) plan(name string, q *sweepRequest) (*render.SweepAnswer, *sweep
 		a.Circuit = c
 	}
 	p.Circuit = c
+	if p.Near, wrong = nearPoint(c, q.near); wrong.HasErrors() {
+		return refuse(wrong)
+	}
 	if wrong := r.axes(p, q); wrong != nil {
 		return refuse(diag.List{*wrong})
 	}
