@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"time"
 
 	"biaswright/netlist"
 	"biaswright/solve"
@@ -40,6 +41,9 @@ type Topology struct {
 	// Parts counts what is to be soldered: each member of a row, no links, no
 	// ideal elements.
 	Parts int
+	// Points is how many operating points the circuit is proven to have; 0 where that is
+	// not known.
+	Points int
 }
 
 // A Span is the least and the largest value that the quantity takes, in its unit. NaN
@@ -85,8 +89,14 @@ func (t *Topology) judge(workers int) error {
 	for i := range c.Elements {
 		t.Parts += parts(&c.Elements[i])
 	}
+	if all, err := solve.Every(c, solve.EveryOptions{Budget: patience, Workers: workers}); err == nil && all.Search.Proven {
+		t.Points = len(all.All())
+	}
 	return t.spans()
 }
+
+// patience bounds the search for all points; ordinary networks take milliseconds.
+const patience = 2 * time.Second
 
 func (t *Topology) power(p *solve.Point) {
 	watts := 0.0

@@ -82,6 +82,12 @@ func Table(ts []*Topology) []Row {
 	number("current", "", quantity.Ampere, func(t *Topology) float64 { return t.SupplyCurrent }, less)
 	number("efficiency", "", quantity.One, func(t *Topology) float64 { return t.Efficiency }, func(v float64) float64 { return -v })
 	number("hottest", "", quantity.Watt, func(t *Topology) float64 { return t.HottestWatts }, less)
+	number("points", "", quantity.One, func(t *Topology) float64 {
+		if t.Points == 0 {
+			return math.NaN()
+		}
+		return float64(t.Points)
+	}, less)
 	number("parts", "", quantity.One, func(t *Topology) float64 { return float64(t.Parts) }, less)
 	return rows
 }

@@ -46,7 +46,7 @@ func (a *CompareAnswer) Name(i int) string { return a.names()[i] }
 var rowLabels = map[string]string{
 	"error": "off target", "supply": "over supply", "ambient": "over ambient", "beta": "over beta",
 	"resistors": "over tolerance", "load": "load holds over", "output": "output resistance", "tempco": "drift",
-	"current": "supply current", "efficiency": "into the load", "hottest": "hottest part", "parts": "parts",
+	"current": "supply current", "efficiency": "into the load", "hottest": "hottest part", "points": "operating points", "parts": "parts",
 }
 
 // label names a row with its unit.
@@ -61,7 +61,7 @@ func (a *CompareAnswer) label(r *compare.Row, sc scale) string {
 		what = "with " + r.Axis
 	}
 	switch {
-	case r.Key == "parts":
+	case r.Key == "parts" || r.Key == "points":
 		return what
 	case r.Key == "line":
 		return what + " [%/V]"
@@ -86,7 +86,7 @@ func (a *CompareAnswer) quantity() string {
 func shownIn(r *compare.Row) (func(float64) float64, scale) {
 	const percent, ppm = 100, 1e6
 	switch {
-	case r.Key == "parts":
+	case r.Key == "parts" || r.Key == "points":
 		return func(v float64) float64 { return v }, noScale
 	case r.Key == "tempco":
 		return func(v float64) float64 { return v * ppm }, noScale
@@ -105,6 +105,8 @@ func (a *CompareAnswer) cellText(r *compare.Row, i int, in func(float64) float64
 	case math.IsNaN(low):
 	case r.Key == "parts":
 		text = fmt.Sprint(t.Parts)
+	case r.Key == "points":
+		text = fmt.Sprint(t.Points)
 	case r.Key == "hottest":
 		text = t.Hottest + " " + brief(in(low))
 	case r.Key == "output":
@@ -253,7 +255,7 @@ var bestAt = map[string]string{
 	"beta": "least touched by beta", "resistors": "least touched by tolerances", "load": "widest at the load",
 	"dropout": "down to the lowest supply", "line": "best line regulation", "output": "highest output resistance",
 	"tempco": "least drift", "current": "least supply current", "efficiency": "most efficient",
-	"hottest": "coolest", "parts": "fewest parts",
+	"hottest": "coolest", "points": "fewest operating points", "parts": "fewest parts",
 }
 
 // Says is a sentence on topology i: what it is best at, and what gives way first.

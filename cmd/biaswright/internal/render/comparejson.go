@@ -114,6 +114,8 @@ func missing(key string) string {
 	switch key {
 	case "supply", "ambient", "beta", "resistors":
 		return "the file states no range"
+	case "points":
+		return "not proven in the time given"
 	case "dropout":
 		return "it holds as far as was searched"
 	}
