@@ -1,0 +1,49 @@
+package choose_test
+
+import (
+	"os"
+	"path/filepath"
+	"testing"
+
+	"biaswright/devices"
+	"biaswright/devices/shelf"
+	"biaswright/netlist"
+	"biaswright/sweep/choose"
+)
+
+// withShelf is the shelf, and the files beside a text.
+type withShelf struct{ netlist.Files }
+
+func (withShelf) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
+
+// TestDemosHaveChosenValues opens again the resistor that sets each demo's current: what
+// ships is what a designer would choose from E24.
+func TestDemosHaveChosenValues(t *testing.T) {
+	for name, resistor := range map[string]string{
+		"mast-resistor": "RS", "mast-divider": "RE", "mast-lamp": "RE", "mast-zener": "RE", "mast-limiter": "RE",
+		"pressure-source": "RE", "bootstrap": "RE", "bootstrap-start": "RE",
+	} {
+		t.Run(name, func(t *testing.T) {
+			file := filepath.Join("..", "..", "testdata", "circuits", name+".bias")
+			text, err := os.ReadFile(file)
+			if err != nil {
+				t.Fatal(err)
+			}
+			c, list := netlist.Read(file, text, devices.Catalogue(), withShelf{})
+			if list.HasErrors() {
+				t.Fatal(list)
+			}
+			id, ok := c.Lookup(resistor)
+			if !ok {
+				t.Fatalf("there is no %s", resistor)
+			}
+			a, err := choose.Find(c, choose.Options{Reopen: []choose.Reopening{{Name: resistor, Series: "E24"}}, List: 1})
+			if err != nil {
+				t.Fatal(err)
+			}
+			if len(a.Choices) == 0 || a.Choices[0].Ohms[0] != c.Value(id) {
+				t.Errorf("%s ships as %g ohm; the choice is %+v", resistor, c.Value(id), a.Choices)
+			}
+		})
+	}
+}
