@@ -52,13 +52,17 @@ type EveryResult struct {
 	// supplies, at TurnsAt of them.
 	Reached int
 	TurnsAt float64
-	// Boxes holds for each point, in the same order, the box in which it surely lies;
+	// enclosed holds for each point, in the same order, the box in which it surely lies;
 	// nil where it was not verified.
 	enclosed [][]interval.I
 }
 
 // All are the points, the chosen one first.
 func (r *EveryResult) All() []*Point { return append([]*Point{r.Point}, r.Others...) }
+
+// Verified tells whether point i, in All's order, is proven to exist within the search's
+// scope; others stand as the solver left them.
+func (r *EveryResult) Verified(i int) bool { return r.enclosed[i] != nil }
 
 // ErrNotSearched is wrapped where a circuit is of a kind that cannot be searched for all
 // its operating points.

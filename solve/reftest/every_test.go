@@ -344,3 +344,74 @@ func BenchmarkBanks(b *testing.B) {
 		})
 	}
 }
+
+// TestEnclosuresOfNetworks holds enclosures against the operating points that were solved
+// elsewhere to 60 digits: each meets the listed value, one unit in its last place (of
+// fifteen digits) more or less.
+func TestEnclosuresOfNetworks(t *testing.T) {
+	cases, err := Cases(networksFile)
+	if err != nil {
+		t.Fatal(err)
+	}
+	met := 0
+	for i := range cases {
+		c := &cases[i]
+		if c.Analysis != "operating_point" || c.Has("ideal_opamp") {
+			continue
+		}
+		at := caseAt(t, c)
+		p := at.point("")
+		e, err := solve.Enclose(p)
+		if err != nil {
+			t.Errorf("%s: %v", c.ID, err)
+			continue
+		}
+		for _, f := range append(c.Expected, c.Currents...) {
+			var box interval.I
+			switch {
+			case f.At != nil:
+				continue
+			case f.Node != "":
+				box = e.NodeV[node(t, p.Circuit, at.text.Node[f.Node])]
+			case f.Probe != nil:
+				var ok bool
+				if box, ok = at.enclosed(e, f.Probe); !ok {
+					continue // an ideal voltage's current
+				}
+			default:
+				continue
+			}
+			const last = 1e-14 // of a number of fifteen digits
+			slack := last * math.Abs(f.Value)
+			if box.Hi < f.Value-slack || box.Lo > f.Value+slack {
+				t.Errorf("%s: %s is listed as %.17g, enclosed %v", c.ID, f.Name, f.Value, box)
+			}
+			met++
+		}
+	}
+	if met < 150 {
+		t.Errorf("%d values compared, expected 150 at least", met)
+	}
+	t.Logf("%d values met", met)
+}
+
+// enclosed is the enclosure of a terminal's current.
+func (s *solved) enclosed(e *solve.Enclosure, probe *Probe) (interval.I, bool) {
+	expr, sign := s.terminal(probe)
+	if probe.Direction == "out" {
+		sign = -sign
+	}
+	name, symbol, _ := strings.Cut(expr, ".")
+	for i := range s.plain.Rails {
+		if s.plain.Rails[i].Name == name {
+			return e.Rail[i].Scale(sign), true
+		}
+	}
+	for i := range s.plain.Elements {
+		if s.plain.Elements[i].Name == name {
+			box, ok := e.Current(i, symbol)
+			return box.Scale(sign), ok
+		}
+	}
+	return interval.I{}, false
+}

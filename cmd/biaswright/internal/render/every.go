@@ -49,6 +49,11 @@ func searchText(r *solve.EveryResult) []string {
 	default:
 		out = append(out, fmt.Sprintf("%s found by following branches; nothing is proven.", number))
 	}
+	for i := range all {
+		if s.Proven && !r.Verified(i) {
+			out = append(out, fmt.Sprintf("Point %d lies outside of what was searched, or too near its edge for a proof.", i+1))
+		}
+	}
 	if len(all) > 1 {
 		out = append(out, partedText(all))
 	}
