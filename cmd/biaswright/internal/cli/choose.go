@@ -110,29 +110,17 @@ func (r *runner) chooseFile(name string, q *chooseRequest) error {
 
 // chosen answers for a file and notes the exit code it earns.
 func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *trouble) {
-	shown := shownName(name)
-	text, err := r.read(name)
-	if err != nil {
-		r.raise(exitFile)
-		return nil, &trouble{file: shown, err: err}
+	in, unread := r.open(name, &q.request, open)
+	if unread != nil {
+		return nil, unread
 	}
-	r.texts[shown] = text
-	refuse := func(found diag.List) (*render.ChooseAnswer, *trouble) {
-		r.raise(exitUsage)
-		return nil, &trouble{file: shown, found: found}
-	}
-	c, warnings, wrong := r.circuit(shown, text, &q.request)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	near, wrong := nearPoint(c, q.near)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	a := &render.ChooseAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
+	c := in.actual
+	refuse := func(found diag.List) (*render.ChooseAnswer, *trouble) { return nil, r.refuse(in.name, found) }
+	a := &render.ChooseAnswer{File: in.name, Circuit: c, Set: q.set, Warnings: in.warnings}
 	progress := r.progress(0, "combinations")
+	var err error
 	a.Found, err = choose.Find(c, choose.Options{
-		Reopen: q.reopen, List: q.list, Near: near, Workers: q.workers, Pair: q.pair,
+		Reopen: q.reopen, List: q.list, Near: in.near, Workers: q.workers, Pair: q.pair,
 		Progress: func(done, all int) {
 			progress.rows = all
 			progress.to(done)
@@ -154,8 +142,8 @@ func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *t
 	if q.write == "" || !a.Found.Reached {
 		return a, nil
 	}
-	if err := r.writeChoice(a, text, q); err != nil {
-		return nil, &trouble{file: shown, found: *err}
+	if err := r.writeChoice(a, r.texts[in.name], q); err != nil {
+		return nil, &trouble{file: in.name, found: *err}
 	}
 	return a, nil
 }

@@ -90,29 +90,26 @@ func (r *runner) compareFiles(files []string, q *request, anyway bool) (*render.
 	a := &render.CompareAnswer{Set: q.set}
 	var troubles []*trouble
 	for _, name := range files {
-		shown := shownName(name)
-		text, err := r.read(name)
-		if err != nil {
-			r.raise(exitFile)
-			troubles = append(troubles, &trouble{file: shown, err: err})
+		in, trouble := r.open(name, q, closed)
+		if trouble != nil {
+			troubles = append(troubles, trouble)
 			continue
 		}
-		r.texts[shown] = text
-		c, _, warnings, wrong := r.circuits(shown, text, q)
-		if !wrong.HasErrors() && len(c.Targets) == 0 {
+		shown, c := in.name, in.actual
+		var wrong diag.List
+		if len(c.Targets) == 0 {
 			wrong = diag.List{{Code: "no-target", Span: diag.Span{File: shown}, Message: compare.ErrNoTarget.Error(), Hint: "add: target LAMP.I = 15 mA within 10%"}}
 		}
 		if !wrong.HasErrors() && len(a.Topologies) > 0 && !anyway {
 			wrong = differing(a.Files[0], a.Topologies[0].Circuit, shown, c)
 		}
 		if wrong.HasErrors() {
-			r.raise(exitUsage)
-			troubles = append(troubles, &trouble{file: shown, found: wrong})
+			troubles = append(troubles, r.refuse(shown, wrong))
 			continue
 		}
 		a.Files = append(a.Files, shown)
 		a.Topologies = append(a.Topologies, &compare.Topology{Circuit: c})
-		a.Warnings = append(a.Warnings, warnings...)
+		a.Warnings = append(a.Warnings, in.warnings...)
 	}
 	return a, troubles
 }

@@ -68,27 +68,15 @@ func (r *runner) handcheck(c *cli.Context) error {
 
 // handchecked answers for one file and notes the exit code it earns.
 func (r *runner) handchecked(name string, q *request) (*render.HandAnswer, *trouble) {
-	shown := shownName(name)
-	text, err := r.read(name)
-	if err != nil {
-		r.raise(exitFile)
-		return nil, &trouble{file: shown, err: err}
+	in, unread := r.open(name, q, closed)
+	if unread != nil {
+		return nil, unread
 	}
-	r.texts[shown] = text
-	refuse := func(found diag.List) (*render.HandAnswer, *trouble) {
-		r.raise(exitUsage)
-		return nil, &trouble{file: shown, found: found}
-	}
-	c, _, warnings, wrong := r.circuits(shown, text, q)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	near, wrong := nearPoint(c, q.near)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	a := &render.HandAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
-	a.Hand, err = hand.Check(c, hand.Options{Near: near})
+	c := in.actual
+	refuse := func(found diag.List) (*render.HandAnswer, *trouble) { return nil, r.refuse(in.name, found) }
+	a := &render.HandAnswer{File: in.name, Circuit: c, Set: q.set, Warnings: in.warnings}
+	var err error
+	a.Hand, err = hand.Check(c, hand.Options{Near: in.near})
 	var mend *hand.Error
 	switch {
 	case errors.As(err, &mend):

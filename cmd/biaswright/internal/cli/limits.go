@@ -108,36 +108,25 @@ func (r *runner) writeAll(all []any) error {
 
 // limitsOf answers for one file and notes the exit code it earns.
 func (r *runner) limitsOf(name string, q *limitsRequest) (*render.LimitsAnswer, *trouble) {
-	shown := shownName(name)
-	text, err := r.read(name)
-	if err != nil {
-		r.raise(exitFile)
-		return nil, &trouble{file: shown, err: err}
+	in, unread := r.open(name, &q.request, closed)
+	if unread != nil {
+		return nil, unread
 	}
-	r.texts[shown] = text
-	refuse := func(found diag.List) (*render.LimitsAnswer, *trouble) {
-		r.raise(exitUsage)
-		return nil, &trouble{file: shown, found: found}
-	}
-	c, _, warnings, wrong := r.circuits(shown, text, &q.request)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	near, wrong := nearPoint(c, q.near)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	o := limits.Options{Near: near, Workers: q.workers}
+	c := in.actual
+	refuse := func(found diag.List) (*render.LimitsAnswer, *trouble) { return nil, r.refuse(in.name, found) }
+	o := limits.Options{Near: in.near, Workers: q.workers}
+	var wrong diag.List
 	if o.Within, wrong = widthFor(c, q.within); wrong.HasErrors() {
 		return refuse(wrong)
 	}
-	a := &render.LimitsAnswer{File: shown, Circuit: c, Set: q.set, Within: o.Within, Warnings: warnings}
+	a := &render.LimitsAnswer{File: in.name, Circuit: c, Set: q.set, Within: o.Within, Warnings: in.warnings}
+	var err error
 	a.Limits, err = limits.Find(c, o)
 	switch {
 	case errors.Is(err, limits.ErrNoHold):
-		return refuse(diag.List{{Code: "no-hold", Span: diag.Span{File: shown}, Message: err.Error(), Hint: "add: hold LAMP.I within 5%"}})
+		return refuse(diag.List{{Code: "no-hold", Span: diag.Span{File: in.name}, Message: err.Error(), Hint: "add: hold LAMP.I within 5%"}})
 	case errors.Is(err, limits.ErrZeroHold):
-		found := diag.Diagnostic{Code: "zero-hold", Span: diag.Span{File: shown}, Message: err.Error(), Hint: "state an absolute width: within 10 mV"}
+		found := diag.Diagnostic{Code: "zero-hold", Span: diag.Span{File: in.name}, Message: err.Error(), Hint: "state an absolute width: within 10 mV"}
 		if c.Hold != nil {
 			found.Span = c.Hold.Span
 		}

@@ -176,30 +176,66 @@ func (r *runner) tell(t *trouble) {
 
 // answer solves one file and notes the exit code it earns.
 func (r *runner) answer(name string, q *request) (*render.Answer, *trouble) {
-	shown := shownName(name)
-	text, err := r.read(name)
-	if err != nil {
-		r.raise(exitFile)
-		return nil, &trouble{file: shown, err: err}
+	in, trouble := r.open(name, q, closed)
+	if trouble != nil {
+		return nil, trouble
 	}
-	r.texts[shown] = text
-	nominal, actual, warnings, wrong := r.circuits(shown, text, q)
-	if wrong.HasErrors() {
-		r.raise(exitUsage)
-		return nil, &trouble{file: shown, found: wrong}
-	}
-	near, wrong := nearPoint(actual, q.near)
-	if wrong.HasErrors() {
-		r.raise(exitUsage)
-		return nil, &trouble{file: shown, found: wrong}
-	}
-	a := &render.Answer{File: shown, Circuit: actual, Set: q.set, At: q.at, Inner: q.trace != nil, Warnings: warnings}
-	r.fill(a, nominal, solve.Options{Near: near, Trace: q.trace}, q.search)
+	a := &render.Answer{File: in.name, Circuit: in.actual, Set: q.set, At: q.at, Inner: q.trace != nil, Warnings: in.warnings}
+	r.fill(a, in.nominal, solve.Options{Near: in.near, Trace: q.trace}, q.search)
 	if a.Failure != nil {
 		return a, nil
 	}
 	r.illustrate(q, a)
 	return a, nil
+}
+
+// An input is a file as circuits: at its nominal point, and at the ends asked for, which is
+// the same without any.
+type input struct {
+	name            string // as answers and messages have it
+	nominal, actual *netlist.Circuit
+	near            map[netlist.NodeID]float64
+	warnings        diag.List
+}
+
+// Whether resistances may be open in what is read.
+type openness bool
+
+const (
+	closed openness = false
+	open   openness = true
+)
+
+// open reads a file, applies the settings and binds --near. It notes the exit code of what
+// is wrong.
+func (r *runner) open(name string, q *request, values openness) (*input, *trouble) {
+	in := &input{name: shownName(name)}
+	text, err := r.read(name)
+	if err != nil {
+		r.raise(exitFile)
+		return nil, &trouble{file: in.name, err: err}
+	}
+	r.texts[in.name] = text
+	var wrong diag.List
+	if values == open {
+		in.nominal, in.warnings, wrong = r.circuit(in.name, text, q)
+		in.actual = in.nominal
+	} else {
+		in.nominal, in.actual, in.warnings, wrong = r.circuits(in.name, text, q)
+	}
+	if wrong.HasErrors() {
+		return nil, r.refuse(in.name, wrong)
+	}
+	if in.near, wrong = nearPoint(in.actual, q.near); wrong.HasErrors() {
+		return nil, r.refuse(in.name, wrong)
+	}
+	return in, nil
+}
+
+// refuse is what is wrong with a file's text, its settings, or what is asked of it.
+func (r *runner) refuse(file string, found diag.List) *trouble {
+	r.raise(exitUsage)
+	return &trouble{file: file, found: found}
 }
 
 // circuits reads a text and applies the settings. The first circuit is at its

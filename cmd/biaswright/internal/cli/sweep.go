@@ -180,23 +180,16 @@ func (r *runner) finishSweep(a *render.SweepAnswer, q *sweepRequest, rows render
 
 // plan reads the file and the axes.
 func (r *runner) plan(name string, q *sweepRequest) (*render.SweepAnswer, *sweep.Plan, *trouble) {
-	shown := shownName(name)
+	in, unread := r.open(name, &q.request, closed)
+	if unread != nil {
+		return nil, nil, unread
+	}
+	c := in.actual
 	refuse := func(found diag.List) (*render.SweepAnswer, *sweep.Plan, *trouble) {
-		r.raise(exitUsage)
-		return nil, nil, &trouble{file: shown, found: found}
+		return nil, nil, r.refuse(in.name, found)
 	}
-	text, err := r.read(name)
-	if err != nil {
-		r.raise(exitFile)
-		return nil, nil, &trouble{file: shown, err: err}
-	}
-	r.texts[shown] = text
-	c, _, warnings, wrong := r.circuits(shown, text, &q.request)
-	if wrong.HasErrors() {
-		return refuse(wrong)
-	}
-	a := &render.SweepAnswer{File: shown, Circuit: c, Set: q.set, Warnings: warnings}
-	p := &sweep.Plan{Workers: q.workers}
+	a := &render.SweepAnswer{File: in.name, Circuit: c, Set: q.set, Warnings: in.warnings}
+	p := &sweep.Plan{Workers: q.workers, Near: in.near}
 	if res, err := solve.Solve(c, solve.Options{}); err == nil {
 		p.Nominal = res.Point // what a hold is judged against
 	} else if sweepsLoad(q.over) {
@@ -205,15 +198,12 @@ func (r *runner) plan(name string, q *sweepRequest) (*render.SweepAnswer, *sweep
 	}
 	if sweepsLoad(q.over) {
 		if len(c.Load) == 0 {
-			return refuse(diag.List{{Code: "no-load", Span: diag.Span{File: shown}, Message: "there is no load whose voltage could be swept", Hint: "add: load LAMP"}})
+			return refuse(diag.List{{Code: "no-load", Span: diag.Span{File: in.name}, Message: "there is no load whose voltage could be swept", Hint: "add: load LAMP"}})
 		}
 		c = c.HoldLoad(p.Nominal.LoadV)
 		a.Circuit = c
 	}
 	p.Circuit = c
-	if p.Near, wrong = nearPoint(c, q.near); wrong.HasErrors() {
-		return refuse(wrong)
-	}
 	if wrong := r.axes(p, q); wrong != nil {
 		return refuse(diag.List{*wrong})
 	}
