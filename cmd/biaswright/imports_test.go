@@ -74,7 +74,7 @@ var rules = map[string]row{
 	},
 	"sweep/hand": {
 		code:  "netlist netlist/diag devices solve solve/mna solve/newton",
-		tests: "solve/reftest",
+		tests: "solve/reftest devices/shelf",
 	},
 
 	"sweep/compare": {

@@ -159,7 +159,10 @@ func feedback(number uint64, transistors int) string {
 // TestSureAndQuick searches random networks with feedback both ways. The sure one proves
 // its list; the quick one finds no point that is not on it.
 func TestSureAndQuick(t *testing.T) {
-	const networks = 300
+	networks := 300
+	if raceDetector {
+		networks = 40 // it makes each ten times as long, and one goroutine is like another
+	}
 	several, fewer, boxes := 0, 0, 0
 	for i := range networks {
 		text := feedback(uint64(i), 3+i%8)
@@ -201,6 +204,9 @@ func TestBanksAreUnique(t *testing.T) {
 		n     int
 		early bool
 	}{{4, true}, {10, true}, {30, true}, {4, false}, {60, false}, {90, false}} {
+		if raceDetector && size.n > 10 {
+			continue // one goroutine, and ten times as long
+		}
 		c := read(t, "bank.bias", []byte(bank(size.n, size.early)))
 		s, err := mna.New(c)
 		if err != nil {

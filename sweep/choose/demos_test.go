@@ -17,12 +17,15 @@ type withShelf struct{ netlist.Files }
 func (withShelf) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
 
 // TestDemosHaveChosenValues opens again the resistor that sets each demo's current: what
-// ships is what a designer would choose from E24.
+// ships is what a designer would choose from its series.
 func TestDemosHaveChosenValues(t *testing.T) {
-	for name, resistor := range map[string]string{
-		"mast-resistor": "RS", "mast-divider": "RE", "mast-lamp": "RE", "mast-zener": "RE", "mast-limiter": "RE",
-		"pressure-source": "RE", "bootstrap": "RE", "bootstrap-start": "RE",
+	for name, reopened := range map[string]choose.Reopening{
+		"mast-resistor": {Name: "RS", Series: "E24"}, "mast-divider": {Name: "RE", Series: "E24"}, "mast-lamp": {Name: "RE", Series: "E24"},
+		"mast-zener": {Name: "RE", Series: "E24"}, "mast-limiter": {Name: "RE", Series: "E24"}, "pressure-source": {Name: "RE", Series: "E24"},
+		"bootstrap": {Name: "RE", Series: "E24"}, "bootstrap-start": {Name: "RE", Series: "E24"},
+		"sensor-bank": {Name: "RSET", Series: "E96"}, // three targets, of 1 % parts
 	} {
+		resistor := reopened.Name
 		t.Run(name, func(t *testing.T) {
 			file := filepath.Join("..", "..", "testdata", "circuits", name+".bias")
 			text, err := os.ReadFile(file)
@@ -37,7 +40,7 @@ func TestDemosHaveChosenValues(t *testing.T) {
 			if !ok {
 				t.Fatalf("there is no %s", resistor)
 			}
-			a, err := choose.Find(c, choose.Options{Reopen: []choose.Reopening{{Name: resistor, Series: "E24"}}, List: 1})
+			a, err := choose.Find(c, choose.Options{Reopen: []choose.Reopening{reopened}, List: 1})
 			if err != nil {
 				t.Fatal(err)
 			}

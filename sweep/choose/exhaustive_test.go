@@ -23,7 +23,7 @@ import (
 
 func read(t testing.TB, name, text string) *netlist.Circuit {
 	t.Helper()
-	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), netlist.Files{})
+	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), withShelf{})
 	if list.HasErrors() {
 		t.Fatalf("%s: %+v", name, list)
 	}
@@ -480,6 +480,8 @@ func TestAgainstExhaustiveSearch(t *testing.T) {
 		{circuit: "sensor-bank", reopen: "RSET=E12"},
 		{circuit: "sensor-bank", reopen: "RP1=E3 RP2=E3"},
 		{circuit: "sensor-bank", reopen: "RP1=E24 RP2=E24 RP3=E24", most: 27},
+		{circuit: "bootstrap", reopen: "RE=E12"},
+		{circuit: "bootstrap-start", reopen: "RE=E6 RS=E3"},
 		{circuit: "w1", more: "target LAMP.I = 12 mA within 5%\n", reopen: "RE=E24 R1=E6"},
 		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\ntarget RL8.V = 5 V within 0.5 V\nkeep QO8.Vec > 1 V\n", reopen: "RREF=E6 RL8=E3"},
 		{circuit: "w2", more: "target RL1.I = 1 mA within 5%\n", reopen: "RREF=E3 RN1=E3 RE1=E3"},

@@ -1,0 +1,5 @@
+//go:build race
+
+package reftest
+
+const raceDetector = true
