@@ -20,6 +20,7 @@ func (chartFile) oneFile(*cli.Context) error      { return nil }
 func (*runner) illustrate(*request, *render.Answer)                   {}
 func (*runner) illustrateLimits(*limitsRequest, *render.LimitsAnswer) {}
 
+func (*runner) illustrateHand(*request, *render.HandAnswer)           {}
 func (*runner) illustrateComparison(chartFile, *render.CompareAnswer) {}
 func (chartFile) wanted() bool                                        { return false }
 

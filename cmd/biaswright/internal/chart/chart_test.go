@@ -14,6 +14,7 @@ import (
 	"biaswright/netlist"
 	"biaswright/solve"
 	"biaswright/sweep"
+	"biaswright/sweep/hand"
 )
 
 // readable fails where two texts of a figure overlap, or one leaves it.
@@ -86,6 +87,15 @@ func TestDemosReadable(t *testing.T) {
 				t.Fatal(err)
 			}
 			readable(t, f)
+			checked, err := hand.Check(c, hand.Options{})
+			if err != nil {
+				t.Fatal(err)
+			}
+			steps, err := chart.Hand(&render.HandAnswer{File: "test.bias", Circuit: c, Hand: checked})
+			if err != nil {
+				t.Fatal(err)
+			}
+			readable(t, steps)
 		})
 	}
 }

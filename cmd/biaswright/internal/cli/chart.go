@@ -76,6 +76,13 @@ func (r *runner) illustrateLimits(q *limitsRequest, a *render.LimitsAnswer) {
 	}
 }
 
+func (r *runner) illustrateHand(q *request, a *render.HandAnswer) {
+	if q.chart.wanted() {
+		fig, err := chart.Hand(a)
+		r.drawIf(q.chart, fig, err)
+	}
+}
+
 func (r *runner) illustrateComparison(f chartFile, a *render.CompareAnswer) {
 	fig, err := chart.Compare(a)
 	r.drawIf(f, fig, err)

@@ -27,6 +27,7 @@ func (r *runner) handcheckCommand() *cli.Command {
 		Flags: []cli.Flag{
 			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the operating point nearest to these voltages; may be repeated"},
+			chartFlag("the steps from the hand calculation to the full solution"),
 			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
 		},
@@ -41,6 +42,12 @@ func (r *runner) handcheck(c *cli.Context) error {
 	r.plain = c.Bool("plain")
 	q, err := r.request(c)
 	if err != nil {
+		return err
+	}
+	if q.chart, err = chartOption(c); err != nil {
+		return err
+	}
+	if err := q.chart.oneFile(c); err != nil {
 		return err
 	}
 	var all []any
@@ -86,6 +93,7 @@ func (r *runner) handchecked(name string, q *request) (*render.HandAnswer, *trou
 		a.Failure = failure(err)
 		return a, nil
 	}
+	r.illustrateHand(q, a)
 	for i := range a.Hand.Verdicts {
 		if !a.Hand.Verdicts[i].Met {
 			r.raise(exitNotMet)
