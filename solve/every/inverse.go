@@ -86,9 +86,15 @@ type centre struct {
 
 // newCentre builds and inverts; false where M is singular or the inverse worth nothing.
 func (s *System) newCentre(params []param, slopes []float64) (*centre, bool) {
+	t, m, ok := s.inverse(params, slopes)
+	return t, ok && s.bound(t, m)
+}
+
+// inverse builds M and an approximate inverse, without a bound of what it is worth.
+func (s *System) inverse(params []param, slopes []float64) (t *centre, m []float64, ok bool) {
 	n := s.N
-	m := make([]float64, n*n)
-	t := &centre{n: n, absM: make([]float64, n*n)}
+	m = make([]float64, n*n)
+	t = &centre{n: n, absM: make([]float64, n*n)}
 	add := func(i, j int, v float64) {
 		if j >= 0 {
 			m[i*n+j] += v
@@ -109,9 +115,15 @@ func (s *System) newCentre(params []param, slopes []float64) (*centre, bool) {
 		}
 	}
 	t.c = append([]float64(nil), m...)
-	if !invert(t.c, n) {
-		return nil, false
-	}
+	return t, m, invert(t.c, n)
+}
+
+// bound fills in what the inverse is worth; false where that is nothing.
+func (s *System) bound(t *centre, m []float64) bool {
+	n := s.N
+	// Each entry of M is a sum of at most as many terms as its row has; with the n terms
+	// of the product that bounds the roundings.
+	roundings := (s.longest() + float64(n) + 4) * eps
 	line, size := make([]float64, n), make([]float64, n)
 	for i := range n {
 		clear(line)
@@ -130,10 +142,8 @@ func (s *System) newCentre(params []param, slopes []float64) (*centre, bool) {
 			}
 		}
 		sum := 0.0
-		// Each entry of M is a sum of at most as many terms as its row has; with the
-		// n terms of the product that bounds the roundings.
 		for j := range line {
-			sum += math.Abs(line[j]) + (s.longest()+float64(n)+4)*eps*size[j]
+			sum += math.Abs(line[j]) + roundings*size[j]
 		}
 		t.defect = math.Max(t.defect, sum*(1+float64(4*n)*eps))
 		all := 0.0
@@ -143,7 +153,7 @@ func (s *System) newCentre(params []param, slopes []float64) (*centre, bool) {
 		t.size = math.Max(t.size, all)
 	}
 	const most = 0.1 // beyond it the corrections below are no small ones
-	return t, t.defect < most && !math.IsNaN(t.defect)
+	return t.defect < most
 }
 
 // longest is how many terms the longest row has.

@@ -62,7 +62,7 @@ func (s *System) newton(b *box, x []float64, params []param, away [][]float64) (
 				f[i] += t.Coef * (y[p.F] - y[p.R]) * (1 - u[p.R]*p.Slope)
 			}
 		}
-		c, ok := s.newCentre(params, s.pointSlopes(u, y, dy))
+		c, _, ok := s.inverse(params, s.pointSlopes(u, y, dy))
 		if !ok {
 			return nil, false
 		}
