@@ -366,6 +366,10 @@ func basesText(a *hand.Answer, figures []hand.Finding) string {
 			largest = f
 		}
 	}
+	const leakage = 1e-9 // of the circuit's largest current: beta is infinite already
+	if math.Abs(sum) < leakage*a.Full.LargestCurrent() {
+		return "no base current is left to leave out"
+	}
 	e := &a.Circuit.Elements[largest.Element]
 	verb, from := "takes", "off "
 	if sense := a.Circuit.Parts[e.Part].Kind.PNP; sense {
