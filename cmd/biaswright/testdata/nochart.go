@@ -15,7 +15,6 @@ func sketchFlag() cli.Flag      { return &cli.BoolFlag{Name: "sketch"} }
 type chartFile struct{}
 
 func chartOption(*cli.Context) (chartFile, error) { return chartFile{}, nil }
-func (chartFile) oneFile(*cli.Context) error      { return nil }
 
 func (*runner) illustrate(*request, *render.Answer)                   {}
 func (*runner) illustrateLimits(*limitsRequest, *render.LimitsAnswer) {}

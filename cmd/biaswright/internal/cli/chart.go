@@ -47,14 +47,6 @@ func chartOption(c *cli.Context) (chartFile, error) {
 	return chartFile{}, &usageError{fmt.Sprintf("--chart %q: a chart ends in .svg or .png", name), "write --chart FILE.svg"}
 }
 
-// oneFile refuses a chart of several files.
-func (f chartFile) oneFile(c *cli.Context) error {
-	if f.wanted() && c.NArg() > 1 {
-		return usagef("--chart draws one file, and %d are named", c.NArg())
-	}
-	return nil
-}
-
 // illustrate draws what the options ask for of a point.
 func (r *runner) illustrate(q *request, a *render.Answer) {
 	if q.chart.wanted() {

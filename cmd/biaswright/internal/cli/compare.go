@@ -1,7 +1,6 @@
 package cli
 
 import (
-	"errors"
 	"fmt"
 	"runtime"
 	"sync"
@@ -38,9 +37,6 @@ func (r *runner) compare(c *cli.Context) error {
 	if err != nil {
 		return err
 	}
-	if q.chart, err = chartOption(c); err != nil {
-		return err
-	}
 	files, workers := c.Args().Slice(), c.Int("workers")
 	switch {
 	case len(files) < 2:
@@ -64,6 +60,7 @@ func (r *runner) compare(c *cli.Context) error {
 	case c.Bool("csv"):
 		err = render.CompareCSV(r.out, a)
 	default:
+		r.diagnose(a.Warnings)
 		err = render.CompareScreen(r.out, a, r.look())
 	}
 	if err != nil {
@@ -149,7 +146,7 @@ func (r *runner) judgeAll(a *render.CompareAnswer, workers int) {
 	}
 	wait.Wait()
 	for _, t := range a.Topologies {
-		if t.Failure != nil && !errors.Is(t.Failure, compare.ErrNoTarget) {
+		if t.Failure != nil {
 			r.raise(exitNoPoint)
 		}
 	}

@@ -2,7 +2,6 @@ package cli
 
 import (
 	"errors"
-	"fmt"
 
 	"github.com/urfave/cli/v2"
 
@@ -36,41 +35,14 @@ func (r *runner) handcheckCommand() *cli.Command {
 }
 
 func (r *runner) handcheck(c *cli.Context) error {
-	if c.NArg() == 0 {
-		return &usageError{"handcheck needs a file", `"-" is standard input`}
-	}
 	r.plain = c.Bool("plain")
 	q, err := r.request(c)
 	if err != nil {
 		return err
 	}
-	if q.chart, err = chartOption(c); err != nil {
-		return err
-	}
-	if err := q.chart.oneFile(c); err != nil {
-		return err
-	}
-	var all []any
-	for i, name := range c.Args().Slice() {
-		a, trouble := r.handchecked(name, q)
-		switch {
-		case c.Bool("json") && trouble != nil:
-			all = append(all, trouble.json())
-		case c.Bool("json"):
-			all = append(all, render.HandJSON(a))
-		case trouble != nil:
-			r.tell(trouble)
-		default:
-			r.diagnose(a.Warnings)
-			if i > 0 {
-				fmt.Fprintln(r.out)
-			}
-			if err := render.HandScreen(r.out, a, r.look()); err != nil {
-				return &writeError{err}
-			}
-		}
-	}
-	return r.writeAll(all)
+	return perFile(r, c, q.chart, func(name string) (*render.HandAnswer, *trouble) { return r.handchecked(name, q) }, form[*render.HandAnswer]{
+		json: render.HandJSON, screen: render.HandScreen, warnings: func(a *render.HandAnswer) diag.List { return a.Warnings },
+	})
 }
 
 // handchecked answers for one file and notes the exit code it earns.

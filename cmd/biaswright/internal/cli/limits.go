@@ -42,9 +42,6 @@ type limitsRequest struct {
 }
 
 func (r *runner) limits(c *cli.Context) error {
-	if c.NArg() == 0 {
-		return &usageError{"limits needs a file", `"-" is standard input`}
-	}
 	r.plain = c.Bool("plain")
 	base, err := r.request(c)
 	if err != nil {
@@ -54,13 +51,6 @@ func (r *runner) limits(c *cli.Context) error {
 	if q.workers < 1 {
 		return usagef("--workers %d: at least one must work", q.workers)
 	}
-	q.sketch = c.Bool("sketch")
-	if q.chart, err = chartOption(c); err != nil {
-		return err
-	}
-	if err := q.chart.oneFile(c); err != nil {
-		return err
-	}
 	if text := c.String("within"); text != "" {
 		reading, err := quantity.Parse(text)
 		if err != nil || !(reading.Value > 0) {
@@ -68,42 +58,9 @@ func (r *runner) limits(c *cli.Context) error {
 		}
 		q.within = &reading
 	}
-	var all []any
-	for i, name := range c.Args().Slice() {
-		a, trouble := r.limitsOf(name, q)
-		switch {
-		case c.Bool("json") && trouble != nil:
-			all = append(all, trouble.json())
-		case c.Bool("json"):
-			all = append(all, render.LimitsJSON(a))
-		case trouble != nil:
-			r.tell(trouble)
-		default:
-			r.diagnose(a.Warnings)
-			if i > 0 {
-				fmt.Fprintln(r.out)
-			}
-			if err := render.LimitsScreen(r.out, a, r.look()); err != nil {
-				return &writeError{err}
-			}
-		}
-	}
-	return r.writeAll(all)
-}
-
-// writeAll prints one JSON object, or several as an array, or nothing.
-func (r *runner) writeAll(all []any) error {
-	var v any = all
-	switch len(all) {
-	case 0:
-		return nil
-	case 1:
-		v = all[0]
-	}
-	if err := render.WriteJSON(r.out, v); err != nil {
-		return &writeError{err}
-	}
-	return nil
+	return perFile(r, c, q.chart, func(name string) (*render.LimitsAnswer, *trouble) { return r.limitsOf(name, q) }, form[*render.LimitsAnswer]{
+		json: render.LimitsJSON, screen: render.LimitsScreen, warnings: func(a *render.LimitsAnswer) diag.List { return a.Warnings },
+	})
 }
 
 // limitsOf answers for one file and notes the exit code it earns.

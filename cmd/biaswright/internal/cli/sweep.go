@@ -51,7 +51,6 @@ type sweepRequest struct {
 	over, log, show []string
 	points, workers int
 	csv, json       bool
-	chart           chartFile
 }
 
 func (r *runner) sweep(c *cli.Context) error {
@@ -63,9 +62,6 @@ func (r *runner) sweep(c *cli.Context) error {
 	q := &sweepRequest{
 		request: *base, over: c.StringSlice("over"), log: c.StringSlice("log"),
 		points: c.Int("points"), workers: c.Int("workers"), csv: c.Bool("csv"), json: c.Bool("json"),
-	}
-	if q.chart, err = chartOption(c); err != nil {
-		return err
 	}
 	for _, list := range c.StringSlice("show") {
 		q.show = append(q.show, items(list)...)
