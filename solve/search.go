@@ -158,11 +158,8 @@ func (r *EveryResult) gather(s *mna.System, known []*Point, found *every.Result)
 	used := make([]bool, len(found.Points))
 	for _, p := range known {
 		o := one{p: p}
-		for i, f := range found.Points {
-			if !used[i] && near(f.X, p.x) {
-				used[i], o.box = true, f.X
-				break
-			}
+		if i := nearest(found.Points, used, p.x); i >= 0 {
+			used[i], o.box = true, found.Points[i].X
 		}
 		all = append(all, o)
 	}
@@ -208,6 +205,24 @@ func (r *EveryResult) gather(s *mna.System, known []*Point, found *every.Result)
 		}
 		r.Search.Signs += o.p.Evidence.Determinant
 	}
+}
+
+// nearest is the unused point of a search that unknowns lie at; -1 where there is none.
+func nearest(points []*every.Point, used []bool, x []float64) int {
+	best, least := -1, math.Inf(1)
+	for i, p := range points {
+		if used[i] || !near(p.X, x) {
+			continue
+		}
+		far := 0.0
+		for k := range x {
+			far = math.Max(far, math.Abs(p.X[k].Mid()-x[k]))
+		}
+		if far < least {
+			best, least = i, far
+		}
+	}
+	return best
 }
 
 // near tells whether unknowns lie in a verified box, or beside it by what a solver leaves.

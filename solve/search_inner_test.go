@@ -8,7 +8,8 @@ import (
 	"biaswright/solve/mna"
 )
 
-// latch has three points, by its symmetry one of them with both sides alike.
+// latch has three points, one with both sides alike (testdata/reference/operating-points.json
+// lists them as latch2).
 const latch = `rail VCC = 5 V
 part n npn Isat = 1e-16 A, betaF = 100
 path VCC -> RC1 1k -> c1 -> T1 n base=b1 -> gnd

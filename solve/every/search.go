@@ -19,9 +19,6 @@ type Options struct {
 	// Workers is how many boxes are looked at at a time; 0 is one. The answer is the
 	// same, unless the budget ends it.
 	Workers int
-	// Slack is the share by which each term's coefficient may be off, for the
-	// enclosures alone; 0 takes the doubles as they are.
-	Slack float64
 	// Check, where set, is given every box before and after each step that narrows it,
 	// as Point's Coordinates has them; after is nil where the step found it empty. It is
 	// for tests.
@@ -46,7 +43,7 @@ func Search(s *System, o Options) *Result {
 		f.deadline = time.Now().Add(o.Budget)
 	}
 	for _, x := range o.Known {
-		if p := s.verify(x, f.params, o.Slack); p != nil {
+		if p := s.verify(x, f.params, 0); p != nil {
 			f.keep(p)
 		}
 	}
@@ -62,7 +59,7 @@ func Away(s *System, o Options) *Result {
 	b := s.start()
 	starts := [][]float64{b.middle()}
 	for _, x := range o.Known {
-		if p := s.verify(x, f.params, o.Slack); p != nil {
+		if p := s.verify(x, f.params, 0); p != nil {
 			f.keep(p)
 			starts = append(starts, x)
 		}
@@ -82,7 +79,7 @@ func Away(s *System, o Options) *Result {
 			if !ok {
 				break
 			}
-			p := s.verify(x, f.params, o.Slack)
+			p := s.verify(x, f.params, 0)
 			before := len(f.res.Points)
 			if p != nil {
 				f.keep(p)
@@ -106,8 +103,8 @@ type finder struct {
 }
 
 // keep adds a point unless it is one that is there: then it lies where that one is proven
-// to be alone. One that surely
-// lies outside the start box is none of the scope's, and the result must not claim it.
+// to be alone. One that surely lies outside the start box is none of the scope's, and the
+// result must not claim it.
 func (f *finder) keep(p *Point) {
 	if f.s.start().beyond(p) {
 		return
@@ -306,7 +303,7 @@ func (f *finder) settled(b *box, out *look, looking bool) bool {
 	if !ok {
 		return false
 	}
-	p := f.s.verify(x, f.params, f.o.Slack)
+	p := f.s.verify(x, f.params, 0)
 	if p == nil {
 		return false
 	}
@@ -335,8 +332,8 @@ func (f *finder) cut(b *box, l *linearised) (k int, at float64) {
 	k, most := -1, 0.0
 	for i := range f.s.Exps {
 		w := b.u[i].Width()
-		// Below a thousandth of Phi an exponential is straight to a part in a
-		// million; nothing is gained there, but for the last resort.
+		// An exponential is straight to a part in 10^12 over a millionth of Phi: there
+		// is nothing left to split.
 		least := 1e-6 * f.s.Exps[i].Phi
 		if !(w > least) {
 			continue

@@ -87,9 +87,9 @@ func (s *System) newton(b *box, x []float64, params []param, away [][]float64) (
 	return nil, false
 }
 
-// deflated is the factor by which the factors Σ ln(1 + 1/|x - a|²) that look away from
-// solutions a change a Newton step: 1/(1 - slope along the step), by the Sherman-Morrison
-// formula.
+// deflated is what looking away from solutions a makes of a Newton step: the balances are
+// multiplied by Π (1 + 1/|x - a|²), and by the Sherman-Morrison formula the step by 1/(1 -
+// the slope of that product's logarithm along the step).
 func deflated(x, step []float64, away [][]float64) float64 {
 	slope := 0.0
 	for _, a := range away {
@@ -191,9 +191,9 @@ func middles(slopes []interval.I) (mid, rad []float64, ok bool) {
 }
 
 // shared gives params, and their slopes between a known point and every point of a box, in
-// which a product's second factor, q, stands at its middle
-// with the exponentials that it multiplies: one uncertain slope for all that an
-// exponential does. What q adds beside its middle is small and stands apart.
+// which a product's second factor, q, stands at its middle with the exponentials that it
+// multiplies: one uncertain slope for all that an exponential does. What q adds beside its
+// middle is small and stands apart.
 func (s *System) shared(u []interval.I, c columns, known *Point) ([]param, []interval.I) {
 	size := len(s.Exps) + 2*len(s.Prods)
 	params, slopes := make([]param, 0, size), make([]interval.I, 0, size)
@@ -303,14 +303,12 @@ func (s *System) image(x, radius, shift []float64, c *centre, params []param, sl
 		u[k] = difference(around, s.Exps[k].A, s.Exps[k].B, s.Exps[k].Offset)
 	}
 	slopes := s.slopes(u)
-	_, y, dy := s.values(x)
-	at, _, _ := s.values(x)
-	mid := s.pointSlopes(at, y, dy)
+	mid := s.pointSlopes(s.values(x))
 	cols := make([][]Term, len(params))
 	rad := make([]float64, len(params))
 	for k := range params {
 		cols[k] = params[k].col
-		rad[k] = interval.Up(math.Max(slopes[k].Hi-mid[k], mid[k]-slopes[k].Lo)) + 2*slack*slopes[k].Mag()
+		rad[k] = interval.Up(math.Max(slopes[k].Hi-mid[k], mid[k]-slopes[k].Lo)) + 2*s.looseness(k, slack)*slopes[k].Mag()
 		if math.IsNaN(rad[k]) || math.IsInf(rad[k], 0) {
 			return nil, false
 		}
@@ -358,6 +356,26 @@ func (s *System) pointAt(x, image, radius []float64) *Point {
 	return p
 }
 
+// looseness is the share by which the slope of param k may be off where coefficients are by
+// slack: of an exponential also what its offsets, as doubles, are off by, over its Phi.
+func (s *System) looseness(k int, slack float64) float64 {
+	if slack == 0 {
+		return 0
+	}
+	if k < len(s.Exps) {
+		return slack + s.Exps[k].unsure()
+	}
+	p := &s.Prods[(k-len(s.Exps))/2] // two params each
+	return slack + s.Exps[p.F].unsure() + s.Exps[p.R].unsure()
+}
+
+// unsure is the share by which the exponential may be off since its offsets are sums of a
+// few decimals, each rounded.
+func (e *Exponential) unsure() float64 {
+	const roundings = 4
+	return roundings * eps * (math.Abs(e.Offset) + math.Abs(e.Offset0)) / e.Phi
+}
+
 // loosen widens a residual by a share of each of its terms, so that a verification holds
 // for coefficients that are off by as much.
 func (s *System) loosen(f, x []interval.I, slack float64) {
@@ -373,15 +391,17 @@ func (s *System) loosen(f, x []interval.I, slack float64) {
 		for _, t := range r.Lin {
 			size += x[t.At].Scale(t.Coef).Mag()
 		}
+		w := 0.0
+		// An exponential itself, y + 1, is off by a share, not y.
 		for _, t := range r.Exp {
-			size += y[t.At].Scale(t.Coef).Mag()
+			w += s.looseness(t.At, slack) * math.Abs(t.Coef) * (y[t.At].Mag() + 1)
 		}
 		for _, t := range r.Prod {
 			p := &s.Prods[t.At]
 			q := interval.Of(1).Sub(u[p.R].Scale(p.Slope))
-			size += y[p.F].Sub(y[p.R]).Mul(q).Scale(t.Coef).Mag()
+			w += s.looseness(len(s.Exps)+2*t.At, slack) * math.Abs(t.Coef) * (y[p.F].Mag() + y[p.R].Mag() + 2) * q.Mag()
 		}
-		w := interval.Up(slack * size)
+		w = interval.Up(w + slack*size)
 		f[i] = interval.I{Lo: interval.Down(f[i].Lo - w), Hi: interval.Up(f[i].Hi + w)}
 	}
 }

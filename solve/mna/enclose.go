@@ -26,7 +26,7 @@ const Slack = 1e-13
 func (s *System) Enclose(x []interval.I) *Enclosure {
 	e := &Enclosure{V: make([]interval.I, s.nodes), I: make([][3]interval.I, len(s.devices)), Rail: make([]interval.I, len(s.behind))}
 	for node, row := range s.row {
-		e.V[node] = interval.Of(s.full[node])
+		e.V[node] = sure(s.full[node])
 		if int(row) < s.n {
 			e.V[node] = e.V[node].Add(x[row])
 		}
@@ -43,6 +43,13 @@ func (s *System) Enclose(x []interval.I) *Enclosure {
 		}
 	}
 	return e
+}
+
+// sure holds a sum of a few decimals, each rounded to a double.
+func sure(volts float64) interval.I {
+	const roundings = 4 * 1.2e-16 // of 2^-53 each
+	w := interval.Up(roundings * math.Abs(volts))
+	return interval.I{Lo: interval.Down(volts - w), Hi: interval.Up(volts + w)}
 }
 
 // loose widens by the slack.
