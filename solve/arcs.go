@@ -44,26 +44,39 @@ func (l *ladder) gainArc() (int, string) {
 			return r.Steps, "without gains " + ended
 		}
 	}
-	return l.arc(l.s.Gains(), x, gainLow, gainHigh, r.Steps)
+	return l.arc(l.s.Gains(), x, 0, +1, gainLow, gainHigh, r.Steps)
 }
 
 // supplyArc follows the circuit from no supply, where every voltage is 0, to its
 // real supplies, through folds, and collects every passage.
 func (l *ladder) supplyArc() (int, string) {
-	return l.arc(l.s.Sources(), l.zero(), sourceLow, sourceHigh, 0)
+	return l.arc(l.s.Sources(), l.zero(), 0, +1, sourceLow, sourceHigh, 0)
+}
+
+// around follows the supplies from each known point, up and down, and collects what else
+// lies on its branch: a closed branch that nothing leads to from zero is walked round.
+func (l *ladder) around() (steps int, ended string) {
+	for i := 0; i < len(l.found); i++ { // what is found on the way is followed too
+		for _, direction := range []int{+1, -1} {
+			x := append([]float64(nil), l.found[i].x...)
+			steps, ended = l.arc(l.s.Sources(), x, 1, direction, sourceLow, sourceHigh, steps)
+		}
+	}
+	return steps, ended
 }
 
 // arcBudget is how many steps an arc may take.
 func (l *ladder) arcBudget() int {
-	if len(l.found) == 0 {
+	if len(l.found) == 0 || l.thorough {
 		return arcSteps
 	}
 	return min(arcSteps, max(arcLeast, arcWork/max(1, l.s.Size())))
 }
 
-func (l *ladder) arc(f *mna.Family, x []float64, low, high float64, before int) (steps int, ended string) {
-	w := follow.Follow(f, x, 0, follow.Options{
-		Mode: follow.ArcLength, Target: 1, Use: follow.EveryPassage,
+// arc follows a family from x at a factor, in a direction, and keeps every passage of 1.
+func (l *ladder) arc(f *mna.Family, x []float64, from float64, direction int, low, high float64, before int) (steps int, ended string) {
+	w := follow.Follow(f, x, from, follow.Options{
+		Mode: follow.ArcLength, Direction: direction, Target: 1, Use: follow.EveryPassage,
 		Low: low, High: high, MaxSteps: l.arcBudget(),
 	})
 	steps = before + w.Stats.Corrections

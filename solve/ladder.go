@@ -23,7 +23,9 @@ type ladder struct {
 	worstBy float64
 	// precise, once made, takes over from s for the rest of its rung.
 	precise *mna.Precise
-	broken  string // a transistor whose Early factor made a point meaningless
+	// thorough asks for every point that a way comes by, whatever is known.
+	thorough bool
+	broken   string // a transistor whose Early factor made a point meaningless
 }
 
 // A rung finds points from nothing: it calls admit for each, and says in words

@@ -112,11 +112,13 @@ func Every(c *netlist.Circuit, o EveryOptions) (*EveryResult, error) {
 	return r, nil
 }
 
-// all climbs every rung, whatever was found before.
+// all climbs every rung, whatever was found before, and then follows every branch.
 func (l *ladder) all() {
+	l.thorough = true
 	for _, r := range rungs {
 		l.try(r)
 	}
+	l.try(rung{"branches", (*ladder).around})
 }
 
 func unknowns(points []*Point) [][]float64 {

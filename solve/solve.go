@@ -29,7 +29,7 @@ type Result struct {
 
 // An Attempt is one rung of the ladder.
 type Attempt struct {
-	Way   string // "direct", "from rest", "shunt ramp", "source ramp", "gain ramp", "supply arc", "settling", "box search"
+	Way   string // "direct", "from rest", "shunt ramp", "source ramp", "gain ramp", "supply arc", "settling", "box search", "branches"
 	Steps int    // Newton steps
 	Ended string // how, in words
 	Found bool   // it gave a point, new or known

@@ -5,6 +5,7 @@ import (
 	"slices"
 
 	"biaswright/netlist"
+	"biaswright/netlist/quantity"
 )
 
 // A Difference is what two files do not state alike.
@@ -44,12 +45,18 @@ func targetOf(c *netlist.Circuit) string {
 		return ""
 	}
 	t := &c.Targets[0]
-	unit := t.Q.Unit.String()
+	within := written(t.Within, t.Q.Unit)
 	if t.Relative {
 		const percent = 100
-		return fmt.Sprintf("%s = %.6g %s within %.6g %%", t.Q.Text, t.Value, unit, percent*t.Within)
+		within = fmt.Sprintf("%.6g %%", percent*t.Within)
 	}
-	return fmt.Sprintf("%s = %.6g %s within %.6g %[3]s", t.Q.Text, t.Value, unit, t.Within)
+	return fmt.Sprintf("%s = %s within %s", t.Q.Text, written(t.Value, t.Q.Unit), within)
+}
+
+// written gives a number as the language has it.
+func written(value float64, unit quantity.Unit) string {
+	const digits = 6 // as many as anybody states
+	return quantity.FormatASCII(quantity.Quantity{Value: value, Unit: unit}, digits)
 }
 
 func railNames(c *netlist.Circuit) []string {
@@ -71,9 +78,9 @@ func railOf(c *netlist.Circuit, name string) string {
 
 func slotText(c *netlist.Circuit, id netlist.SlotID) string {
 	s := &c.Slots[id]
-	text := fmt.Sprintf("%.6g %s", s.Value, s.Unit)
+	text := written(s.Value, s.Unit)
 	if s.Bounds.Stated {
-		text += fmt.Sprintf(" (%.6g .. %.6g)", s.Bounds.Low, s.Bounds.High)
+		text += " (" + written(s.Bounds.Low, s.Unit) + " .. " + written(s.Bounds.High, s.Unit) + ")"
 	}
 	return text
 }

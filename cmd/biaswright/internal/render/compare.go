@@ -74,12 +74,17 @@ func (a *CompareAnswer) label(r *compare.Row, sc scale) string {
 }
 
 func (a *CompareAnswer) quantity() string {
+	name := ""
 	for _, t := range a.Topologies {
-		if t.Failure == nil {
-			return t.Target.Q.Text
+		switch {
+		case t.Failure != nil:
+		case name == "":
+			name = t.Target.Q.Text
+		case name != t.Target.Q.Text:
+			return "what is aimed at"
 		}
 	}
-	return "value"
+	return name
 }
 
 // shownIn gives a row's numbers the factor or the prefix that the screen has.
@@ -213,11 +218,16 @@ func (a *CompareAnswer) block(w io.Writer, l Look, rows []compare.Row, labels []
 
 // CompareTitle heads a comparison.
 func CompareTitle(a *CompareAnswer) string {
-	return fmt.Sprintf("%d topologies for one job", len(a.Topologies))
+	return fmt.Sprintf("%d topologies side by side", len(a.Topologies))
 }
 
 // CompareJob is what all topologies are to do.
 func CompareJob(a *CompareAnswer) string {
+	for _, t := range a.Topologies[1:] {
+		if len(compare.Differences(a.Topologies[0].Circuit, t.Circuit)) > 0 {
+			return "The files state different jobs; each is judged by its own."
+		}
+	}
 	for _, t := range a.Topologies {
 		if t.Target == nil {
 			continue
