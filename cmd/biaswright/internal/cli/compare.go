@@ -24,8 +24,8 @@ func (r *runner) compareCommand() *cli.Command {
 			chartFlag("all topologies over supply, load voltage and ambient"),
 			&cli.IntFlag{Name: "workers", Usage: "`N` files at a time; the answer is the same", Value: runtime.NumCPU()},
 			&cli.BoolFlag{Name: "csv", Usage: "print comma-separated values, a row a file", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+			jsonFlag(),
+			plainFlag(),
 		},
 		Action: r.compare,
 	}

@@ -24,11 +24,11 @@ func (r *runner) handcheckCommand() *cli.Command {
 		UsageText:   "biaswright handcheck [options] FILE...",
 		Description: handcheckMeaning,
 		Flags: []cli.Flag{
-			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			setFlag(),
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the operating point nearest to these voltages; may be repeated"},
 			chartFlag("the steps from the hand calculation to the full solution"),
-			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+			jsonFlag(),
+			plainFlag(),
 		},
 		Action: r.handcheck,
 	}

@@ -21,14 +21,14 @@ func (r *runner) limitsCommand() *cli.Command {
 		Usage:     "find where each file stops holding, and why",
 		UsageText: "biaswright limits [options] FILE...",
 		Flags: []cli.Flag{
-			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			setFlag(),
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
 			&cli.StringFlag{Name: "within", Usage: "`WIDTH`: how far the held quantity may move, such as 2% or 10mV, in place of the file's"},
 			chartFlag("the curves, their limits and the headroom"),
 			sketchFlag(),
 			&cli.IntFlag{Name: "workers", Usage: "`N` axes at a time; the answer is the same", Value: runtime.NumCPU()},
-			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+			jsonFlag(),
+			plainFlag(),
 		},
 		Action: r.limits,
 	}

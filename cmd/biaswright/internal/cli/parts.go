@@ -20,7 +20,7 @@ func (r *runner) partsCommand() *cli.Command {
 		Flags: []cli.Flag{
 			&cli.BoolFlag{Name: "json", Usage: "print the list as JSON", DisableDefaultText: true},
 			&cli.BoolFlag{Name: "source", Usage: "print the parts as the text that they are, with the source of each value", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+			plainFlag(),
 		},
 		Action: r.parts,
 	}

@@ -9,6 +9,20 @@ import (
 	"biaswright/netlist"
 )
 
+// Options that most commands have.
+
+func setFlag() cli.Flag {
+	return &cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"}
+}
+
+func jsonFlag() cli.Flag {
+	return &cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true}
+}
+
+func plainFlag() cli.Flag {
+	return &cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true}
+}
+
 // A request is what the options ask for that commands share.
 type request struct {
 	set, at []netlist.Setting

@@ -19,7 +19,7 @@ func (r *runner) solveCommand() *cli.Command {
 		Usage:     "find the operating point of each file",
 		UsageText: "biaswright solve [options] FILE...",
 		Flags: []cli.Flag{
-			&cli.StringSliceFlag{Name: "set", Usage: "`NAME=VALUE`: change a rail, a value, ambient or a part's parameter; may be repeated"},
+			setFlag(),
 			&cli.StringSliceFlag{Name: "at", Usage: "`NAME=low|high,...`: take the stated ends of rails and of ambient, and judge hold against nominal"},
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: start there, and take the nearest of several operating points; may be repeated"},
 			chartFlag("where the volts go, path by path,"),
@@ -30,8 +30,8 @@ func (r *runner) solveCommand() *cli.Command {
 			&cli.IntFlag{Name: "workers", Usage: "with --every: `N` boxes at a time; the answer is the same", Value: runtime.NumCPU()},
 			sketchFlag(),
 			&cli.BoolFlag{Name: "trace", Usage: "tell the solver's steps on standard error", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "json", Usage: "print the answer as JSON", DisableDefaultText: true},
-			&cli.BoolFlag{Name: "plain", Usage: "print ASCII only", DisableDefaultText: true},
+			jsonFlag(),
+			plainFlag(),
 		},
 		Action: r.solve,
 	}
