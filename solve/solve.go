@@ -9,6 +9,7 @@ package solve
 import (
 	"biaswright/netlist"
 	"biaswright/solve/mna"
+	"biaswright/solve/newton"
 )
 
 // Options steer a solve. The zero value is the ordinary one.
@@ -43,6 +44,44 @@ func Solve(c *netlist.Circuit, o Options) (*Result, error) {
 		return nil, err
 	}
 	return SolveSystem(s, o)
+}
+
+// Onward finds the operating point of c by Newton's iteration from a point of a circuit that
+// differs little from it, and as Solve does where that leads to none. It keeps to the
+// branch of from, whatever c asks for. The error is Solve's.
+func Onward(c *netlist.Circuit, from *Point) (*Point, error) {
+	s, err := mna.New(c)
+	if err != nil {
+		return nil, err
+	}
+	if p := onward(s, from); p != nil {
+		return p, nil
+	}
+	res, err := SolveSystem(s, Options{})
+	if err != nil {
+		return nil, err
+	}
+	return res.Point, nil
+}
+
+// onward is nil where the iteration does not end soon at a point that could be stable.
+func onward(s *mna.System, from *Point) *Point {
+	if s.Size() != len(from.x) {
+		return nil
+	}
+	x := append([]float64(nil), from.x...)
+	s.From(x)
+	var work newton.Work
+	const soon = 20 // steps; one that needs more has lost the branch
+	n := newton.Solve(s, x, &work, newton.Options{MaxSteps: soon})
+	if n.Outcome != newton.Converged {
+		return nil
+	}
+	p := newPoint(s, x, Evidence{Way: "followed", Steps: n.Steps, LastStep: n.LastStep, Determinant: s.DetSign(x), Attempts: 1})
+	if p.Unstable || p.state.EarlyBroken() != "" {
+		return nil
+	}
+	return p
 }
 
 // SolveSystem is Solve for a system that was set up already; its values in force

@@ -2,6 +2,7 @@ package limits
 
 import (
 	"context"
+	"errors"
 	"slices"
 
 	"biaswright/netlist"
@@ -18,19 +19,49 @@ type Curve struct {
 }
 
 // Curve solves the circuit that the answer is about at so many even steps of the range
-// of limit i, at its nominal value and at its limits.
+// of limit i, at its nominal value and at its limits: outward from the nominal point, so
+// that it shows the nominal point's own branch as far as that goes.
 func (a *Answer) Curve(i, points int) (Curve, error) {
-	c, l := a.Nominal.Circuit, &a.Limits[i]
-	name := l.Axis
+	l := &a.Limits[i]
+	xs, at := steps(l, points)
+	down := slices.Clone(xs[:at+1])
+	slices.Reverse(down)
+	var halves [2]Curve
+	var failed [2]error
+	inTurn(len(halves), len(halves), func(k int) {
+		values := xs[at:]
+		if k == 0 {
+			values = down
+		}
+		halves[k], failed[k] = a.outward(l.Axis, values)
+	})
+	if err := errors.Join(failed[:]...); err != nil {
+		return Curve{}, err
+	}
+	out := halves[0]
+	slices.Reverse(out.X)
+	slices.Reverse(out.Q)
+	slices.Reverse(out.Unstable)
+	const own = 1 // both halves have the nominal point
+	return Curve{
+		X: append(out.X, halves[1].X[own:]...),
+		Q: append(out.Q, halves[1].Q[own:]...), Unstable: append(out.Unstable, halves[1].Unstable[own:]...),
+	}, nil
+}
+
+// outward solves along an axis from its nominal value.
+func (a *Answer) outward(name string, values []float64) (Curve, error) {
+	c := a.Nominal.Circuit
 	if name == netlist.LoadName {
 		c = c.HoldLoad(a.Nominal.LoadV)
 	}
-	axis, err := sweep.NewAxis(c, name, steps(l, points))
+	axis, err := sweep.NewAxis(c, name, values)
 	if err != nil {
 		return Curve{}, err
 	}
+	plan := sweep.Plan{Circuit: c, Axes: []sweep.Axis{axis}, Show: []string{a.Hold.Q.Text}, Near: a.nominalVolts()}
 	var out Curve
-	err = sweep.Run(context.Background(), sweep.Plan{Circuit: c, Axes: []sweep.Axis{axis}, Show: []string{a.Hold.Q.Text}}, func(r sweep.Row) error {
+	err = sweep.Run(context.Background(), plan, func(r sweep.Row) error {
 		out.X = append(out.X, r.At[0])
 		out.Q = append(out.Q, r.Values[0])
 		out.Unstable = append(out.Unstable, r.Status == sweep.Unstable)
@@ -39,9 +70,19 @@ func (a *Answer) Curve(i, points int) (Curve, error) {
 	return out, err
 }
 
-// steps are even, with the nominal value and the limits among them.
-func steps(l *Limit, points int) []float64 {
-	xs := []float64{l.Nominal}
+// nominalVolts are the node voltages of the nominal point.
+func (a *Answer) nominalVolts() map[netlist.NodeID]float64 {
+	out := map[netlist.NodeID]float64{}
+	for node, v := range a.Nominal.NodeV {
+		out[netlist.NodeID(node)] = v
+	}
+	return out
+}
+
+// steps are even, with the nominal value and the limits among them; at is the nominal
+// value's place.
+func steps(l *Limit, points int) (xs []float64, at int) {
+	xs = []float64{l.Nominal}
 	for i := range points {
 		f := float64(i) / float64(points-1)
 		xs = append(xs, (1-f)*l.From+f*l.To)
@@ -52,7 +93,9 @@ func steps(l *Limit, points int) []float64 {
 		}
 	}
 	slices.Sort(xs)
-	return slices.Compact(xs)
+	xs = slices.Compact(xs)
+	at, _ = slices.BinarySearch(xs, l.Nominal)
+	return xs, at
 }
 
 // An Extreme is the circuit at one end of what it must work over.
@@ -78,8 +121,8 @@ func (a *Answer) Extremes() []Extreme {
 		if list.HasErrors() {
 			continue
 		}
-		if res, err := solve.Solve(at, solve.Options{}); err == nil {
-			out = append(out, Extreme{e.where, res.Point})
+		if p, err := solve.Onward(at, a.Nominal); err == nil {
+			out = append(out, Extreme{e.where, p})
 		}
 	}
 	return out

@@ -29,7 +29,8 @@ type Options struct {
 	// NoCounts leaves out how many emitters may stand in a row, which takes as long
 	// as all the rest.
 	NoCounts bool
-	// Workers is how many axes are followed at a time; 0 is one.
+	// Workers is how many axes are followed and conditions counted at a time; 0 is one.
+	// The answer is the same.
 	Workers int
 }
 
@@ -129,7 +130,7 @@ func Find(c *netlist.Circuit, o Options) (*Answer, error) {
 		return nil, err
 	}
 	if len(c.Load) > 0 {
-		a.loadAnswers(c, !o.NoCounts)
+		a.loadAnswers(c, !o.NoCounts, max(o.Workers, 1))
 	}
 	return a, nil
 }
@@ -151,19 +152,22 @@ func (a *Answer) search(c *netlist.Circuit, workers int) error {
 	}
 	a.Limits = make([]Limit, len(axes))
 	failed := make([]error, len(axes))
+	inTurn(len(axes), workers, func(i int) { a.Limits[i], failed[i] = a.limit(&axes[i]) })
+	return errors.Join(failed...)
+}
+
+// inTurn calls do for 0 to n - 1, at most so many at a time, and waits for all.
+func inTurn(n, workers int, do func(i int)) {
 	slots := make(chan struct{}, workers)
 	var wait sync.WaitGroup
-	for i := range axes {
+	for i := range n {
 		slots <- struct{}{}
-		wait.Add(1)
-		go func() {
-			defer wait.Done()
-			a.Limits[i], failed[i] = a.limit(&axes[i])
-			<-slots
-		}()
+		wait.Go(func() {
+			defer func() { <-slots }()
+			do(i)
+		})
 	}
 	wait.Wait()
-	return errors.Join(failed...)
 }
 
 // The ambient range searched where none wider is stated, in degC: the ordinary
@@ -201,11 +205,7 @@ func (a *Answer) axes(c *netlist.Circuit) ([]axis, error) {
 // that it has nominally.
 func (a *Answer) heldLoad(c *netlist.Circuit) (*netlist.Circuit, *solve.Point, error) {
 	held := c.HoldLoad(a.Nominal.LoadV)
-	near := map[netlist.NodeID]float64{}
-	for node, v := range a.Nominal.NodeV {
-		near[netlist.NodeID(node)] = v
-	}
-	res, err := solve.Solve(held, solve.Options{Near: near})
+	res, err := solve.Solve(held, solve.Options{Near: a.nominalVolts()})
 	if err != nil {
 		return nil, nil, fmt.Errorf("with the load held at its nominal voltage: %w", err)
 	}

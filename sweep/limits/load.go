@@ -3,6 +3,7 @@ package limits
 import (
 	"math"
 	"strconv"
+	"sync"
 
 	"biaswright/netlist"
 	"biaswright/solve"
@@ -39,7 +40,7 @@ type Count struct {
 }
 
 // loadAnswers reads the window off the limits, and counts where that is asked for.
-func (a *Answer) loadAnswers(c *netlist.Circuit, counts bool) {
+func (a *Answer) loadAnswers(c *netlist.Circuit, counts bool, workers int) {
 	l := &Load{Low: math.NaN(), High: math.NaN(), MaxOhms: math.NaN()}
 	a.Load = l
 	for i := range a.Limits {
@@ -53,7 +54,7 @@ func (a *Answer) loadAnswers(c *netlist.Circuit, counts bool) {
 	for _, i := range c.Load {
 		if c.Elements[i].Kind == netlist.JunctionPart {
 			l.Row = c.Elements[i].Name
-			a.count(c, l)
+			a.count(c, l, workers)
 			return
 		}
 	}
@@ -64,11 +65,11 @@ func (a *Answer) window(c *netlist.Circuit, l *Load, lim *Limit) {
 		if s.Reason != End {
 			return s.At, s.Point
 		}
-		p, err := solve.Solve(c.HoldLoad(s.SearchedTo), solve.Options{})
+		p, err := cold(c.HoldLoad(s.SearchedTo))
 		if err != nil {
 			return s.SearchedTo, nil
 		}
-		return s.SearchedTo, p.Point
+		return s.SearchedTo, p
 	}
 	var low, high *solve.Point
 	l.Low, low = at(lim.Low)
@@ -86,17 +87,51 @@ func (a *Answer) window(c *netlist.Circuit, l *Load, lim *Limit) {
 
 // count finds the largest number in a row under each condition, by solving each
 // circuit.
-func (a *Answer) count(c *netlist.Circuit, l *Load) {
+func (a *Answer) count(c *netlist.Circuit, l *Load, workers int) {
 	conditions := []struct {
 		where string
 		ends  []netlist.Setting
 	}{{"nominal", nil}, {"low rails", nearestZero(c)}, {"coldest", ambientEnd(c, "low")}, {"hottest", ambientEnd(c, "high")}}
+	lots := &lots{c: c, row: l.Row}
+	var counts []*counter
 	for _, cond := range conditions {
 		if cond.where != "nominal" && cond.ends == nil {
 			continue // no such range is stated
 		}
-		l.Counts = append(l.Counts, Count{cond.where, a.most(c, l.Row, cond.ends)})
+		counts = append(counts, &counter{a: a, lots: lots, ends: cond.ends, from: a.Nominal})
+		l.Counts = append(l.Counts, Count{Where: cond.where})
 	}
+	inTurn(len(counts), workers, func(i int) { l.Counts[i].Most = counts[i].most() })
+}
+
+// A counter counts under one condition.
+type counter struct {
+	a    *Answer
+	lots *lots
+	ends []netlist.Setting
+	from *solve.Point // the last that was solved
+}
+
+// lots are the circuit with so many in a row, made once for all conditions: the nodes
+// change, and that is dear.
+type lots struct {
+	sync.Mutex
+	c    *netlist.Circuit
+	row  string             // the element of the load
+	made []*netlist.Circuit // of 1, 2, ...; nil where such a circuit is refused
+}
+
+func (l *lots) of(k int) *netlist.Circuit {
+	l.Lock()
+	defer l.Unlock()
+	for len(l.made) < k {
+		c, list := l.c.With(netlist.Setting{Name: l.row + ".row", Value: strconv.Itoa(len(l.made) + 1)})
+		if list.HasErrors() {
+			c = nil
+		}
+		l.made = append(l.made, c)
+	}
+	return l.made[k-1]
 }
 
 // longestCount bounds the search; no supply of a bias network drives more.
@@ -104,11 +139,13 @@ const longestCount = 200
 
 // most counts up until three more in a row have failed: a band may be entered from
 // outside, but is not left and entered again by one more emitter.
-func (a *Answer) most(c *netlist.Circuit, name string, ends []netlist.Setting) int {
+func (n *counter) most() int {
 	const patience = 3
 	most, failed := 0, 0
 	for k := 1; k <= longestCount; k++ {
-		if a.holds(c, name, k, ends) {
+		// Each is solved from the one before; the first that fails is asked again from
+		// nothing, in case the branch was lost.
+		if n.holds(k, false) || failed == 0 && n.holds(k, true) {
 			most, failed = k, 0
 			continue
 		}
@@ -119,26 +156,40 @@ func (a *Answer) most(c *netlist.Circuit, name string, ends []netlist.Setting) i
 	return -1
 }
 
-func (a *Answer) holds(c *netlist.Circuit, name string, k int, ends []netlist.Setting) bool {
-	row, list := c.With(netlist.Setting{Name: name + ".row", Value: strconv.Itoa(k)})
+// holds tells whether so many hold what is held, solved from the point before or anew.
+func (n *counter) holds(k int, anew bool) bool {
+	c := n.lots.of(k)
+	if c != nil && n.ends != nil {
+		c, _ = c.At(n.ends...) // nil where it is refused
+	}
+	if c == nil {
+		return false
+	}
+	var p *solve.Point
+	var err error
+	if anew {
+		p, err = cold(c)
+	} else {
+		p, err = solve.Onward(c, n.from)
+	}
+	if err != nil || p.Unstable {
+		return false
+	}
+	n.from = p
+	q, list := c.ParseExpr(n.a.Hold.Q.Text)
 	if list.HasErrors() {
 		return false
 	}
-	if ends != nil {
-		if row, list = row.At(ends...); list.HasErrors() {
-			return false
-		}
+	v, ok := q.Eval(p)
+	return ok && v >= n.a.Hold.Low && v <= n.a.Hold.High
+}
+
+func cold(c *netlist.Circuit) (*solve.Point, error) {
+	res, err := solve.Solve(c, solve.Options{})
+	if err != nil {
+		return nil, err
 	}
-	res, err := solve.Solve(row, solve.Options{})
-	if err != nil || res.Point.Unstable {
-		return false
-	}
-	q, list := row.ParseExpr(a.Hold.Q.Text)
-	if list.HasErrors() {
-		return false
-	}
-	v, ok := q.Eval(res.Point)
-	return ok && v >= a.Hold.Low && v <= a.Hold.High
+	return res.Point, nil
 }
 
 // nearestZero puts every rail with a stated range at its end nearest 0.
