@@ -334,7 +334,7 @@ func (fr *frame) curve(i int) {
 				fr.shape(c.Look, pt)
 			}
 		default:
-			l := &figure.Line{Points: piece, Paint: paint, Width: 2, Dash: strokes[c.Look%len(strokes)]}
+			l := &figure.Line{Points: straightened(piece), Paint: paint, Width: 2, Dash: strokes[c.Look%len(strokes)]}
 			if doubtful {
 				l.Width, l.Dash = 1, []float64{1, 2}
 			}
@@ -368,6 +368,35 @@ func (fr *frame) curve(i int) {
 	if len(fr.p.Curves) > 1 && !fr.p.Steps {
 		fr.points(i)
 	}
+}
+
+// straightened leaves out the points of a line that no eye would miss: those that lie on
+// the line without them, to a twentieth of a point (the way of Ramer, 1972, and Douglas
+// and Peucker, 1973, from memory).
+func straightened(line []figure.Point) []figure.Point {
+	const unseen = 0.05 // points
+	if len(line) < 3 {
+		return line
+	}
+	first, last := line[0], line[len(line)-1]
+	dx, dy := last.X-first.X, last.Y-first.Y
+	along := math.Hypot(dx, dy)
+	far, at := 0.0, 0
+	for i, p := range line[1 : len(line)-1] {
+		// Off the chord, or from its start where it comes back to that.
+		off := math.Hypot(p.X-first.X, p.Y-first.Y)
+		if along > 0 {
+			off = math.Abs((p.X-first.X)*dy-(p.Y-first.Y)*dx) / along
+		}
+		if off > far {
+			far, at = off, i+1
+		}
+	}
+	if far <= unseen {
+		return []figure.Point{first, last}
+	}
+	out := straightened(line[:at+1])
+	return append(out[:len(out):len(out)], straightened(line[at:])[1:]...)
 }
 
 // cut is where the way from a point inside to one outside leaves the plot.

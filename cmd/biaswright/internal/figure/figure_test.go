@@ -26,7 +26,7 @@ func svg(t testing.TB, f *figure.Figure) string {
 	return b.String()
 }
 
-func raster(t testing.TB, f *figure.Figure) image.Image {
+func raster(t testing.TB, f *figure.Figure) *picture {
 	t.Helper()
 	var b bytes.Buffer
 	if err := figure.WritePNG(&b, f); err != nil {
@@ -36,7 +36,11 @@ func raster(t testing.TB, f *figure.Figure) image.Image {
 	if err != nil {
 		t.Fatal(err)
 	}
-	return img
+	scale := figure.Pixels(f)
+	if got, want := img.Bounds().Size(), image.Pt(int(math.Round(f.Width*scale)), int(math.Round(f.Height*scale))); got != want {
+		t.Fatalf("the picture is %v pixels, want %v", got, want)
+	}
+	return &picture{img, scale}
 }
 
 // elements decodes an SVG, strictly, into its elements and the texts they hold.
@@ -185,9 +189,15 @@ func TestContrast(t *testing.T) {
 	}
 }
 
+// A picture is a figure's pixels, so many a point.
+type picture struct {
+	image.Image
+	scale float64
+}
+
 // at is the colour of a place given in points.
-func at(img image.Image, x, y float64) color.RGBA {
-	r, g, b, a := img.At(int(x*figure.Scale), int(y*figure.Scale)).RGBA()
+func (p *picture) at(x, y float64) color.RGBA {
+	r, g, b, a := p.At(int(x*p.scale), int(y*p.scale)).RGBA()
 	return color.RGBA{uint8(r >> 8), uint8(g >> 8), uint8(b >> 8), uint8(a >> 8)}
 }
 
@@ -208,6 +218,10 @@ func TestWritersAgree(t *testing.T) {
 		f := &figure.Figure{Width: 300, Height: 200}
 		x := rapid.Float64Range(20, 100).Draw(rt, "x")
 		y := rapid.Float64Range(20, 60).Draw(rt, "y")
+		if rapid.IntRange(0, 9).Draw(rt, "large") == 0 { // a large one has fewer pixels a point
+			f.Width, f.Height = 1300, 900
+			x, y = 10*x, 10*y
+		}
 		size := rapid.Float64Range(9, 20).Draw(rt, "size")
 		f.Add(figure.Box(x, y, x+40, y+30, figure.Band, figure.Ink))
 		f.Add(&figure.Dot{At: figure.Point{X: x + 90, Y: y + 20}, Radius: 6, Fill: figure.Curve(2)})
@@ -215,7 +229,7 @@ func TestWritersAgree(t *testing.T) {
 		line.Width = 4
 		f.Add(line)
 		anchor := rapid.SampledFrom([]figure.Anchor{figure.Start, figure.Middle, figure.End}).Draw(rt, "anchor")
-		f.Add(&figure.Text{At: figure.Point{X: 150, Y: y + 130}, Text: "VCC 12.0 V Ω", Anchor: anchor, Size: size, Paint: figure.Alarm})
+		f.Add(&figure.Text{At: figure.Point{X: f.Width / 2, Y: y + 130}, Text: "VCC 12.0 V Ω", Anchor: anchor, Size: size, Paint: figure.Alarm})
 		img := raster(t, f)
 		all, held := elements(t, svg(t, f))
 		seen := 0
@@ -223,7 +237,7 @@ func TestWritersAgree(t *testing.T) {
 			switch e.Name.Local {
 			case "circle":
 				seen++
-				if got, want := at(img, number(t, e, "cx"), number(t, e, "cy")), parse(t, attr(e, "fill")); got != want {
+				if got, want := img.at(number(t, e, "cx"), number(t, e, "cy")), parse(t, attr(e, "fill")); got != want {
 					rt.Fatalf("dot: %v, want %v", got, want)
 				}
 			case "path":
@@ -240,7 +254,7 @@ func TestWritersAgree(t *testing.T) {
 	})
 }
 
-func samePath(t *testing.T, rt *rapid.T, img image.Image, e xml.StartElement) {
+func samePath(t *testing.T, rt *rapid.T, img *picture, e xml.StartElement) {
 	var xs, ys []float64
 	for _, p := range strings.FieldsFunc(strings.TrimSuffix(attr(e, "d"), "Z"), func(r rune) bool { return r == 'M' || r == 'L' }) {
 		x, y, _ := strings.Cut(p, " ")
@@ -253,7 +267,7 @@ func samePath(t *testing.T, rt *rapid.T, img image.Image, e xml.StartElement) {
 	}
 	if len(xs) == 2 { // a line: along its course
 		for _, share := range []float64{0.1, 0.5, 0.9} {
-			got := at(img, xs[0]+share*(xs[1]-xs[0]), ys[0]+share*(ys[1]-ys[0]))
+			got := img.at(xs[0]+share*(xs[1]-xs[0]), ys[0]+share*(ys[1]-ys[0]))
 			if want := parse(t, attr(e, "stroke")); got != want {
 				rt.Fatalf("line: %v, want %v", got, want)
 			}
@@ -266,16 +280,16 @@ func samePath(t *testing.T, rt *rapid.T, img image.Image, e xml.StartElement) {
 	want := parse(t, attr(e, "fill"))
 	const inside = 2 // points, clear of the edge
 	for _, corner := range [][2]float64{{xs[0] + inside, ys[0] + inside}, {xs[2] - inside, ys[2] - inside}} {
-		if got := at(img, corner[0], corner[1]); got != want {
+		if got := img.at(corner[0], corner[1]); got != want {
 			rt.Fatalf("area at %v: %v, want %v", corner, got, want)
 		}
 	}
-	if got := at(img, xs[0]-inside, ys[0]-inside); got == want {
+	if got := img.at(xs[0]-inside, ys[0]-inside); got == want {
 		rt.Fatalf("area goes on outside")
 	}
 }
 
-func sameText(t *testing.T, rt *rapid.T, img image.Image, e xml.StartElement, text string) {
+func sameText(t *testing.T, rt *rapid.T, img *picture, e xml.StartElement, text string) {
 	left, width := number(t, e, "x"), number(t, e, "textLength")
 	if want := figure.TextWidth(text, number(t, e, "font-size"), false); math.Abs(width-want) > 0.1 { // the size is told to two decimals
 		rt.Fatalf("text is told %g, want %g", width, want)
@@ -289,12 +303,12 @@ func sameText(t *testing.T, rt *rapid.T, img image.Image, e xml.StartElement, te
 	// The letters' own ink lies within their advances, and reaches both ends.
 	first, last := math.Inf(1), math.Inf(-1)
 	base := number(t, e, "y")
-	paper := color.RGBA{0xff, 0xff, 0xff, 0xff}
+	// Paper is white.
 	b := img.Bounds()
 	for px := b.Min.X; px < b.Max.X; px++ {
-		for py := int((base - 10) * figure.Scale); py < int(base*figure.Scale); py++ {
-			if at(img, float64(px)/figure.Scale, float64(py)/figure.Scale) != paper {
-				first, last = math.Min(first, float64(px)/figure.Scale), math.Max(last, float64(px)/figure.Scale)
+		for py := int((base - 10) * img.scale); py < int(base*img.scale); py++ {
+			if r, g, b, _ := img.At(px, py).RGBA(); r&g&b != 0xffff {
+				first, last = math.Min(first, float64(px)/img.scale), math.Max(last, float64(px)/img.scale)
 			}
 		}
 	}
@@ -324,7 +338,7 @@ func TestPaletteKeepsPaints(t *testing.T) {
 			continue
 		}
 		want := parse(t, attr(e, "fill"))
-		if got := at(img, float64(20*(boxes-2)+10), 10); got != want {
+		if got := img.at(float64(20*(boxes-2)+10), 10); got != want {
 			t.Errorf("paint %d: %v, want %v", boxes-2, got, want)
 		}
 	}
@@ -333,9 +347,12 @@ func TestPaletteKeepsPaints(t *testing.T) {
 	}
 }
 
-// TestSameFigureSameBytes writes twice.
+// TestSameFigureSameBytes writes twice, a figure of many strips.
 func TestSameFigureSameBytes(t *testing.T) {
-	f := &figure.Figure{Width: 50, Height: 50}
+	f := &figure.Figure{Width: 50, Height: 900}
+	for i := range 40 {
+		f.Add(&figure.Dot{At: figure.Point{X: 20, Y: 22 * float64(i)}, Radius: 9, Fill: figure.Curve(i)})
+	}
 	f.Add(&figure.Dot{At: figure.Point{X: 20, Y: 20}, Radius: 9, Fill: figure.Curve(0), Edge: figure.Ink},
 		&figure.Text{At: figure.Point{X: 5, Y: 45}, Text: "same", Size: 12, Paint: figure.Ink, Plate: true})
 	for name, write := range map[string]func(io.Writer, *figure.Figure) error{"svg": figure.WriteSVG, "png": figure.WritePNG} {
@@ -348,6 +365,41 @@ func TestSameFigureSameBytes(t *testing.T) {
 		}
 		if !bytes.Equal(a.Bytes(), b.Bytes()) {
 			t.Errorf("%s differs from itself", name)
+		}
+	}
+}
+
+// TestDashes follows dashed lines, along the pixels and across them, to and fro: paint in
+// the middle of each stroke and close to its ends, paper in the gaps, as an SVG viewer
+// draws them.
+func TestDashes(t *testing.T) {
+	const stroke, gap, length = 8.0, 6.0, 100.0
+	for _, way := range [][2]float64{{1, 0}, {-1, 0}, {0, 1}, {0, -1}, {0.6, 0.8}, {-0.8, 0.6}} {
+		f := &figure.Figure{Width: 300, Height: 300}
+		at := func(along float64) (x, y float64) { return 150 + along*way[0], 150 + along*way[1] }
+		x1, y1 := at(0)
+		x2, y2 := at(length)
+		l := figure.Segment(x1, y1, x2, y2, figure.Ink)
+		l.Width, l.Dash = 4, []float64{stroke, gap}
+		f.Add(l)
+		img := raster(t, f)
+		colour := func(along float64) color.RGBA { return img.at(at(along)) }
+		paper := img.at(5, 5)
+		for from := 0.0; from+stroke < length; from += stroke + gap {
+			const near = 1.5 // points from a stroke's end, clear of half-covered pixels
+			for _, along := range []float64{from + near, from + stroke/2, from + stroke - near} {
+				if c := colour(along); c == paper {
+					t.Errorf("along %v: paper at %g, in a stroke", way, along)
+				}
+			}
+			for _, along := range []float64{from + stroke + near, from + stroke + gap/2, from + stroke + gap - near} {
+				if c := colour(along); c != paper {
+					t.Errorf("along %v: %v at %g, in a gap", way, c, along)
+				}
+			}
+		}
+		if c := colour(length + 4); c != paper {
+			t.Errorf("along %v: %v beyond the end", way, c)
 		}
 	}
 }

@@ -42,22 +42,31 @@ func face(heavy bool, size float64) font.Face {
 // large enough that the fonts' own units are not rounded away.
 const measureSize = 256
 
+// A measured text is asked for again and again as a figure is laid out.
+type measured struct {
+	text  string
+	heavy bool
+}
+
 var measure = struct {
 	sync.Mutex
-	faces [2]font.Face
-}{}
+	faces  map[bool]font.Face
+	widths map[measured]float64 // at a size of 1
+}{faces: map[bool]font.Face{}, widths: map[measured]float64{}}
 
 // TextWidth is the width of a text in points, in the fonts that ship.
 func TextWidth(text string, size float64, heavy bool) float64 {
 	measure.Lock()
 	defer measure.Unlock()
-	i := 0
-	if heavy {
-		i = 1
+	k := measured{text, heavy}
+	w, ok := measure.widths[k]
+	if !ok {
+		if measure.faces[heavy] == nil {
+			measure.faces[heavy] = face(heavy, measureSize)
+		}
+		const fixed = 64 // 26.6 fixed point
+		w = float64(font.MeasureString(measure.faces[heavy], text)) / fixed / measureSize
+		measure.widths[k] = w
 	}
-	if measure.faces[i] == nil {
-		measure.faces[i] = face(heavy, measureSize)
-	}
-	const fixed = 64 // 26.6 fixed point
-	return float64(font.MeasureString(measure.faces[i], text)) / fixed * size / measureSize
+	return w * size
 }
