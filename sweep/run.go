@@ -169,8 +169,12 @@ func (r *runner) run(k int) {
 		for _, v := range inner.Values {
 			r.fail(inner, v)
 		}
-	} else if inner.row != "" || !r.follow(c, inner) {
-		r.each(c, inner)
+	} else {
+		done := 0
+		if inner.row == "" {
+			done = r.follow(c, inner)
+		}
+		r.each(c, inner, done)
 	}
 	r.flush()
 }
@@ -189,13 +193,14 @@ func (r *runner) within(a *Axis, v float64) bool {
 	return true
 }
 
-// each solves every point of the inner axis from the beginning: where the values
-// change the structure.
-func (r *runner) each(c *netlist.Circuit, inner *Axis) {
-	for i, v := range inner.Values {
+// each solves the points of the inner axis from the given one on, each from the beginning:
+// where the values change the structure.
+func (r *runner) each(c *netlist.Circuit, inner *Axis, from int) {
+	for i := from; i < len(inner.Values); i++ {
 		if r.ctx.Err() != nil {
 			return
 		}
+		v := inner.Values[i]
 		changed, list := c.With(inner.settings(i)...)
 		if list.HasErrors() || !r.compile(changed) {
 			r.fail(inner, v)
@@ -217,31 +222,25 @@ func (r *runner) compile(c *netlist.Circuit) bool {
 	return err == nil
 }
 
-// follow solves the inner axis along its branch. It reports false, with nothing
-// done, where some value changes the structure.
-func (r *runner) follow(c *netlist.Circuit, inner *Axis) bool {
+// follow solves the inner axis along its branch, and tells how many points it did: those
+// before the first value that changes the structure.
+func (r *runner) follow(c *netlist.Circuit, inner *Axis) int {
 	if !r.compile(c) {
-		return false
+		return 0
 	}
 	t := r.s.NewTuner(inner.slots(c)...)
 	numbers := make([]float64, len(inner.names))
-	put := func(v float64) bool {
-		for i := range numbers {
-			numbers[i] = v
-		}
-		return t.Set(numbers...)
-	}
-	for _, v := range inner.Values {
-		if !put(v) {
-			return false
-		}
-	}
 	x := make([]float64, r.s.Size())
-	for _, v := range inner.Values {
+	for i, v := range inner.Values {
 		if r.ctx.Err() != nil {
-			return true
+			return len(inner.Values)
 		}
-		put(v)
+		for k := range numbers {
+			numbers[k] = v
+		}
+		if !t.Set(numbers...) {
+			return i
+		}
 		if r.past.predict(v, x) {
 			r.s.Continue()
 			// A predictor that needs more than a few steps has lost its branch.
@@ -265,7 +264,7 @@ func (r *runner) follow(c *netlist.Circuit, inner *Axis) bool {
 		}
 		r.anew(inner, v)
 	}
-	return true
+	return len(inner.Values)
 }
 
 func (r *runner) refresh(x []float64) {

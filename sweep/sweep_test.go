@@ -155,7 +155,7 @@ func TestRowsOfADivider(t *testing.T) {
 func TestRowsEqualSolve(t *testing.T) {
 	c := shipped(t, "mast-lamp.bias")
 	show := []string{"LAMP.I", "Q1.Vce", "VCC.P"}
-	for _, text := range []string{"VCC=2V..20V", "ambient=-40degC..80degC", "gp.betaF=20..500", "RE=10..1k", "LAMP.row=1..6", "sig.Rbulk=0ohm..10ohm"} {
+	for _, text := range []string{"VCC=2V..20V", "ambient=-40degC..80degC", "gp.betaF=20..500", "RE=10..1k", "LAMP.row=1..6", "sig.Rbulk=0ohm..10ohm", "RE=100,47,0,51", "RE=30..0"} {
 		a := axis(t, c, text, 7, false)
 		for i, row := range rows(t, sweep.Plan{Circuit: c, Axes: []sweep.Axis{a}, Show: show}) {
 			changed, list := c.With(netlist.Setting{Name: strings.TrimSuffix(a.Name, ".V"), Value: fmt.Sprint(a.Values[i])})

@@ -70,11 +70,19 @@ func (a *Answer) outward(name string, values []float64) (Curve, error) {
 	return out, err
 }
 
-// nominalVolts are the node voltages of the nominal point.
+// nominalVolts are the node voltages of the nominal point, but for those within a row of
+// the load, which are not there when the load is held.
 func (a *Answer) nominalVolts() map[netlist.NodeID]float64 {
 	out := map[netlist.NodeID]float64{}
 	for node, v := range a.Nominal.NodeV {
 		out[netlist.NodeID(node)] = v
+	}
+	c := a.Nominal.Circuit
+	for _, i := range c.Load {
+		chain := c.Elements[i].Chain
+		for _, within := range chain[1 : len(chain)-1] {
+			delete(out, within)
+		}
 	}
 	return out
 }
