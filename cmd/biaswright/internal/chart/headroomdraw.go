@@ -153,6 +153,9 @@ func (p *picture) column(f *figure.Figure, y *axis, c *column, left, top, bottom
 		wanted = append(wanted, y.clamp(l.volts))
 	}
 	places := apart(wanted, small*line, top+small, bottom-small)
+	if high, low := c.ends(y); float64(len(labels))*small*line < low-high { // room between its own ends
+		places = apart(wanted, small*line, high+small, low-small)
+	}
 	for i, l := range labels {
 		from := edge
 		if l.node {
@@ -168,6 +171,16 @@ func (p *picture) column(f *figure.Figure, y *axis, c *column, left, top, bottom
 		f.Add(&figure.Line{Points: []figure.Point{{X: from, Y: wanted[i]}, {X: edge + 1, Y: wanted[i]}, {X: end - 2, Y: places[i]}}, Paint: figure.Frame, Width: 0.75})
 		f.Add(&figure.Text{At: figure.Point{X: end, Y: places[i] + small/3}, Text: l.text, Size: small, Paint: paint, Plate: true})
 	}
+}
+
+// ends are where a column begins and ends, from above: texts between them cross no rail.
+func (c *column) ends(y *axis) (high, low float64) {
+	high, low = math.Inf(1), math.Inf(-1)
+	for i := range c.blocks {
+		b := &c.blocks[i]
+		high, low = math.Min(high, y.clamp(b.top())), math.Max(low, y.clamp(b.bottom()))
+	}
+	return high, low
 }
 
 // drawBlock draws an element: as tall as its drop, members of a row parted by lines,
@@ -238,63 +251,86 @@ func heightFor(stacks ...*stack) float64 {
 }
 
 // pictures makes the rows of pictures of points that share one scale: those of one
-// row of paths side by side.
+// row of paths side by side. A row has as many paths as keep it no wider than a sheet
+// may be, one at least, and all rows about as many.
 func pictures(points []*solve.Point, titles []string) [][]*picture {
 	var stacks []*stack
-	low, high, most := 0.0, 0.0, 0
+	low, high := 0.0, 0.0
 	for _, p := range points {
 		s := newStack(p)
 		stacks = append(stacks, s)
-		low, high, most = math.Min(low, s.low), math.Max(high, s.high), max(most, len(s.columns))
+		low, high = math.Min(low, s.low), math.Max(high, s.high)
 	}
-	tall := heightFor(stacks...)
 	if low == high { // nothing stands anywhere
 		high = low + 1
 	}
+	tall := heightFor(stacks...)
+	most := 0
+	for _, s := range stacks {
+		most = max(most, len(s.columns))
+	}
+	for parts := (most + mostColumns - 1) / mostColumns; ; parts++ {
+		columns := (most + parts - 1) / max(parts, 1)
+		rows := rowsOf(stacks, titles, columns, most)
+		for _, row := range rows {
+			for _, p := range row {
+				p.tall, p.low, p.high = tall, low, high
+			}
+		}
+		if columns <= 1 || widthOf(rows) <= widestSheet {
+			return rows
+		}
+	}
+}
+
+// rowsOf parts the paths of pictures, the most of which a picture has, into rows of so many.
+func rowsOf(stacks []*stack, titles []string, columns, most int) [][]*picture {
 	var rows [][]*picture
-	for from := 0; from < most; from += mostColumns {
+	for from := 0; from < most; from += columns {
 		var row []*picture
 		for i, s := range stacks {
-			row = append(row, &picture{title: titles[i], s: s, from: from, to: min(from+mostColumns, len(s.columns)), tall: tall, low: low, high: high})
+			row = append(row, &picture{title: titles[i], s: s, from: min(from, len(s.columns)), to: min(from+columns, len(s.columns))})
 		}
 		rows = append(rows, row)
 	}
 	return rows
 }
 
-// widestRow is how wide pictures side by side may be before they stand one below the
-// other instead.
-const widestRow = 1800.0
+// widestSheet is how wide a sheet of pictures may be, in points.
+const widestSheet = 2400.0
 
-// place puts rows of pictures on a sheet.
+// pictures puts rows of pictures on a sheet, those of one point below each other.
 func (s *sheet) pictures(rows [][]*picture) {
+	widths := columnWidths(rows)
 	for _, row := range rows {
 		x := margin
 		for i, p := range row {
-			if i > 0 && x+p.natural() > s.f.Width-margin+1 {
-				x = margin
-				s.top += p.height(0) + between
-			}
 			p.draw(s.f, x, s.top, 0)
-			x += p.natural() + between
+			x += widths[i] + between
 		}
 		s.top += row[0].height(0) + between
 	}
 }
 
+// columnWidths are the widths that the pictures of each point want.
+func columnWidths(rows [][]*picture) []float64 {
+	var out []float64
+	for _, row := range rows {
+		for i, p := range row {
+			if i == len(out) {
+				out = append(out, 0)
+			}
+			out[i] = math.Max(out[i], p.natural())
+		}
+	}
+	return out
+}
+
 // widthOf is the width that rows of pictures want, margins included.
 func widthOf(rows [][]*picture) float64 {
-	all, single := 0.0, 0.0
-	for _, row := range rows {
-		w := 2*margin - between
-		for _, p := range row {
-			w += p.natural() + between
-			single = math.Max(single, p.natural()+2*margin)
-		}
-		all = math.Max(all, w)
-	}
-	if all > widestRow {
-		return single
+	all := 2*margin - between
+	for _, w := range columnWidths(rows) {
+		all += w + between
 	}
 	return all
 }

@@ -18,8 +18,8 @@ const curvePoints = 241
 // sheetWidth is the width of a sheet of plots in two columns.
 const sheetWidth = 1040.0
 
-// narrowest is the least width of a plot beside others.
-const narrowest = 400.0
+// narrowest and widestPlot are the widths of a plot beside others, in points.
+const narrowest, widestPlot = 400.0, 720.0
 
 // Limits draws the held quantity along every axis, with its band and limits, and below
 // the headroom at nominal, with low rails and at the hottest.
@@ -44,7 +44,7 @@ func Limits(a *render.LimitsAnswer) (*figure.Figure, error) {
 	rows := pictures(points, titles)
 	s := newSheet(math.Max(sheetWidth, widthOf(rows)), titleOf(a.Circuit, a.File), render.HoldText(a))
 	s.legend(tints...)
-	columns := max(2, min(len(panels), int(s.f.Width/narrowest)))
+	columns := max(2, min(len(panels), int(s.f.Width/narrowest)), int(s.f.Width/widestPlot))
 	for from := 0; from < len(panels); from += columns {
 		s.row(columns, panels[from:min(from+columns, len(panels))]...)
 	}

@@ -13,10 +13,10 @@ import (
 
 // Pixels is how many pixels of a PNG stand for a point, across and down: two, enough for
 // print and for fine screens; fewer in a figure that is large itself, which gets as many
-// as an ordinary screen has, but one to a point at least.
+// as an ordinary screen has, as long as its letters can be read at half the size.
 func Pixels(f *Figure) float64 {
 	const (
-		fine, least = 2, 1
+		fine, least = 2, 1.25
 		screen      = 1920 * 1080 // pixels
 	)
 	return max(least, min(fine, math.Sqrt(screen/(f.Width*f.Height))))
