@@ -88,7 +88,7 @@ var rules = map[string]row{
 	},
 	"cmd/biaswright/internal/figure": {},
 	"cmd/biaswright/internal/chart": {
-		code:  "netlist netlist/quantity solve sweep sweep/limits sweep/compare sweep/hand cmd/biaswright/internal/figure cmd/biaswright/internal/render",
+		code:  "netlist netlist/quantity solve sweep sweep/limits sweep/choose sweep/compare sweep/hand cmd/biaswright/internal/figure cmd/biaswright/internal/render",
 		tests: "devices devices/shelf netlist/diag sweep/hand",
 	},
 	"cmd/biaswright/internal/render": {

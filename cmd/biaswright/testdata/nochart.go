@@ -19,9 +19,10 @@ func chartOption(*cli.Context) (chartFile, error) { return chartFile{}, nil }
 func (*runner) illustrate(*request, *render.Answer)                   {}
 func (*runner) illustrateLimits(*limitsRequest, *render.LimitsAnswer) {}
 
-func (*runner) illustrateHand(*request, *render.HandAnswer)           {}
-func (*runner) illustrateComparison(chartFile, *render.CompareAnswer) {}
-func (chartFile) wanted() bool                                        { return false }
+func (*runner) illustrateChoices(*chooseRequest, *render.ChooseAnswer) {}
+func (*runner) illustrateHand(*request, *render.HandAnswer)            {}
+func (*runner) illustrateComparison(chartFile, *render.CompareAnswer)  {}
+func (chartFile) wanted() bool                                         { return false }
 
 type sweepDrawing struct{}
 

@@ -14,6 +14,7 @@ import (
 	"biaswright/netlist"
 	"biaswright/solve"
 	"biaswright/sweep"
+	"biaswright/sweep/choose"
 	"biaswright/sweep/hand"
 )
 
@@ -97,6 +98,87 @@ func TestDemosReadable(t *testing.T) {
 			}
 			readable(t, steps)
 		})
+	}
+}
+
+// choices is the short list of a text's open values.
+func choices(t *testing.T, text string) *render.ChooseAnswer {
+	t.Helper()
+	c := circuit(t, text)
+	found, err := choose.Find(c, choose.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return &render.ChooseAnswer{File: "test.bias", Circuit: c, Found: found}
+}
+
+// TestChoices draws a short list: a dot for each nominal value, at its place on the axis,
+// a bar to the worst one, and a verdict in words; values and names of any length.
+func TestChoices(t *testing.T) {
+	const text = "rail V = 10 V (9 V .. 11 V)\npath V -> RA 1k 1%% -> m -> %s ? E12 5%% -> gnd\ntarget m.V = 5 V within 12%%\nkeep m.V > 4 V\nkeep RA.P < 30 mW + 0.001 * V.P\n"
+	for _, name := range []string{"RB", "R" + strings.Repeat("x", 60)} {
+		a := choices(t, fmt.Sprintf(text, name))
+		f, err := chart.Choose(a)
+		if err != nil {
+			t.Fatal(err)
+		}
+		readable(t, f)
+		lines := len(a.Found.Choices) + 1 // the exact values too
+		const panels = 3                  // a target and two keeps
+		dots, alarms, verdicts := 0, 0, 0
+		for _, s := range f.Shapes {
+			switch s := s.(type) {
+			case *figure.Dot:
+				dots++
+			case *figure.Line:
+				if s.Paint == figure.Alarm {
+					alarms++
+				}
+			case *figure.Text:
+				if strings.HasSuffix(s.Text, "  NOT MET") {
+					verdicts++
+				}
+			}
+		}
+		missed := 0
+		for _, c := range append([]choose.Choice{a.Found.Exact}, a.Found.Choices...) {
+			for _, r := range c.Requirements {
+				if !r.Worst.Met {
+					missed++
+				}
+			}
+		}
+		if missed == 0 || dots != panels*lines || verdicts != missed || alarms != 2*missed { // a bar and its end
+			t.Errorf("%s: %d dots, %d verdicts, %d alarms; want %d, %d, %d", name, dots, verdicts, alarms, panels*lines, missed, 2*missed)
+		}
+	}
+}
+
+// TestChoicesToScale reads the dots back: the divider's voltages in the order and at the
+// distances of Ohm's law.
+func TestChoicesToScale(t *testing.T) {
+	a := choices(t, "rail V = 10 V\npath V -> RA 1k -> m -> RB ? E6 -> gnd\ntarget m.V = 5 V within 40%\n")
+	f, err := chart.Choose(a)
+	if err != nil {
+		t.Fatal(err)
+	}
+	var xs, want []float64
+	for _, s := range f.Shapes {
+		if d, ok := s.(*figure.Dot); ok {
+			xs = append(xs, d.At.X)
+		}
+	}
+	want = append(want, 5)
+	for _, c := range a.Found.Choices {
+		want = append(want, 10*c.Ohms[0]/(1000+c.Ohms[0]))
+	}
+	if len(xs) != len(want) || len(want) < 4 {
+		t.Fatalf("%d dots, want %d", len(xs), len(want))
+	}
+	for i := 3; i < len(xs); i++ {
+		if got, w := (xs[i]-xs[1])/(xs[2]-xs[1]), (want[i]-want[1])/(want[2]-want[1]); math.Abs(got-w) > 1e-6 {
+			t.Errorf("dot %d lies at %g of the way from the first choice to the second, want %g", i, got, w)
+		}
 	}
 }
 

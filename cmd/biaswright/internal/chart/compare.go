@@ -58,12 +58,12 @@ func axesOf(ts []*compare.Topology) []string {
 			}
 		}
 	}
-	slices.SortStableFunc(out, func(a, b string) int { return axisRank(a) - axisRank(b) })
+	sortBy(out, axisRank)
 	return out
 }
 
 // axisRank puts supplies first, then the load, then the temperature.
-func axisRank(axis string) int {
+func axisRank(axis string) float64 {
 	switch axis {
 	case netlist.LoadName:
 		return 1

@@ -81,7 +81,7 @@ func (p *picture) height(float64) float64 { return headRoom + p.tall + 2*small }
 
 // draw puts the picture; columns keep their own widths, whatever there is.
 func (p *picture) draw(f *figure.Figure, left, top, _ float64) {
-	f.Add(&figure.Text{At: figure.Point{X: left, Y: top + normal}, Text: p.title, Size: normal, Bold: true, Paint: figure.Ink})
+	heading(f, left, top+normal, p.title)
 	top += headRoom
 	bottom := top + p.tall
 	y := p.axis()
@@ -91,9 +91,9 @@ func (p *picture) draw(f *figure.Figure, left, top, _ float64) {
 	for i, v := range y.ticks {
 		at := y.place(v)
 		f.Add(figure.Segment(x-columnGap, at, right, at, figure.Grid))
-		f.Add(&figure.Text{At: figure.Point{X: x - columnGap - tickRoom, Y: at + small/3}, Text: y.labels[i], Anchor: figure.End, Size: small, Paint: figure.Soft})
+		note(f, x-columnGap-tickRoom, at+small/3, figure.End, y.labels[i])
 	}
-	f.Add(&figure.Text{At: figure.Point{X: left, Y: top - headRoom + normal + normal*line}, Text: "[" + y.symbol + "]", Size: small, Paint: figure.Soft})
+	note(f, left, top-headRoom+normal+normal*line, figure.Start, "["+y.symbol+"]")
 	p.levels(f, y, x-columnGap, right)
 	places := make([]float64, p.to-p.from) // the left edges of the columns
 	for i := range places {

@@ -189,13 +189,13 @@ func (p *Plot) draw(f *figure.Figure, left, top, width float64) {
 	fr.edges()
 	fr.curves()
 	fr.marks()
-	f.Add(&figure.Text{At: figure.Point{X: left, Y: top + normal}, Text: fr.y.title(p.YName), Size: normal, Bold: true, Paint: figure.Ink})
+	heading(f, left, top+normal, fr.y.title(p.YName))
 	f.Add(&figure.Text{
 		At: figure.Point{X: fr.right, Y: fr.bottom + tickRoom + small*line + normal}, Text: fr.x.title(p.XName),
 		Anchor: figure.End, Size: normal, Bold: true, Paint: figure.Ink,
 	})
 	for i, n := range p.notesOf(width) {
-		f.Add(&figure.Text{At: figure.Point{X: left, Y: top + plotHeight + float64(i)*small*line + small}, Text: n, Size: small, Paint: figure.Soft})
+		note(f, left, top+plotHeight+float64(i)*small*line+small, figure.Start, n)
 	}
 }
 
@@ -211,13 +211,16 @@ func (p *Plot) names() float64 {
 	return w + leader + tickRoom
 }
 
-// cut shortens a text to the widest room for one.
-func cut(s string) string {
-	if textRoom(s, small, false) <= widest {
+// cut shortens a text to the widest room for a name.
+func cut(s string) string { return cutTo(s, widest) }
+
+// cutTo shortens a small text to a room.
+func cutTo(s string, room float64) string {
+	if textRoom(s, small, false) <= room {
 		return s
 	}
 	runes := []rune(s)
-	for len(runes) > 1 && textRoom(string(runes)+"…", small, false) > widest {
+	for len(runes) > 1 && textRoom(string(runes)+"…", small, false) > room {
 		runes = runes[:len(runes)-1]
 	}
 	return strings.TrimSpace(string(runes)) + "…"
@@ -268,12 +271,12 @@ func (fr *frame) grid() {
 	for i, v := range fr.y.ticks {
 		at := fr.y.place(v)
 		fr.f.Add(figure.Segment(fr.left, at, fr.right, at, figure.Grid))
-		fr.f.Add(&figure.Text{At: figure.Point{X: fr.left - tickRoom, Y: at + small/3}, Text: fr.y.labels[i], Anchor: figure.End, Size: small, Paint: figure.Soft})
+		note(fr.f, fr.left-tickRoom, at+small/3, figure.End, fr.y.labels[i])
 	}
 	for i, v := range fr.x.ticks {
 		at := fr.x.place(v)
 		fr.f.Add(figure.Segment(at, fr.top, at, fr.bottom, figure.Grid))
-		fr.f.Add(&figure.Text{At: figure.Point{X: at, Y: fr.bottom + tickRoom + small}, Text: fr.x.labels[i], Anchor: figure.Middle, Size: small, Paint: figure.Soft})
+		note(fr.f, at, fr.bottom+tickRoom+small, figure.Middle, fr.x.labels[i])
 	}
 	for _, b := range fr.p.Bands { // its edges, for those who see no tint
 		for _, v := range []float64{b.Low, b.High} {
@@ -412,10 +415,10 @@ func (fr *frame) cut(in, out figure.Point) figure.Point {
 // points puts a few shapes on a curve, at other places for each.
 func (fr *frame) points(i int) {
 	c := &fr.p.Curves[i]
-	const shapes = 3 // on a curve: enough to follow it through a crossing
+	const some = 3 // on a curve: enough to follow it through a crossing
 	n := len(c.X)
-	for k := range shapes {
-		at := (2*k+1)*n/(2*shapes) + i*n/(2*shapes*max(1, len(fr.p.Curves)))
+	for k := range some {
+		at := (2*k+1)*n/(2*some) + i*n/(2*some*max(1, len(fr.p.Curves)))
 		if at < n && c.Y[at] >= fr.y.low && c.Y[at] <= fr.y.high && !(fr.p.Log && c.X[at] <= 0) {
 			fr.shape(c.Look, figure.Point{X: fr.x.place(c.X[at]), Y: fr.y.place(c.Y[at])})
 		}
@@ -431,28 +434,39 @@ func (fr *frame) shape(i int, at figure.Point) {
 		fill = figure.Paper
 	}
 	const r = 4.0 // points
-	poly := func(corners ...float64) {
-		a := &figure.Area{Fill: fill, Edge: paint, Width: 1.5}
-		for k := 0; k < len(corners); k += 2 {
-			a.Points = append(a.Points, figure.Point{X: at.X + r*corners[k], Y: at.Y + r*corners[k+1]})
-		}
-		fr.f.Add(a)
-	}
-	switch i % figure.Curves {
-	case 0:
+	corners := shapes[i%figure.Curves]
+	if corners == nil {
 		fr.f.Add(&figure.Dot{At: at, Radius: r - 0.5, Fill: fill, Edge: paint})
-	case 1:
-		poly(-.85, -.85, .85, -.85, .85, .85, -.85, .85)
-	case 2:
-		poly(0, -1.1, 1, .8, -1, .8)
-	case 3:
-		poly(0, -1.2, 1.2, 0, 0, 1.2, -1.2, 0)
-	case 4:
-		poly(0, 1.1, 1, -.8, -1, -.8)
-	case 5: // an upright cross
-		const a, b = 0.35, 1.15
-		poly(-a, -b, a, -b, a, -a, b, -a, b, a, a, a, a, b, -a, b, -a, a, -b, a, -b, -a, -a, -a)
+		return
 	}
+	a := &figure.Area{Fill: fill, Edge: paint, Width: 1.5}
+	for _, c := range corners {
+		a.Points = append(a.Points, figure.Point{X: at.X + r*c.X, Y: at.Y + r*c.Y})
+	}
+	fr.f.Add(a)
+}
+
+// shapes are the corners of the looks' shapes, in sizes of one; the first look has a dot.
+var shapes = [figure.Curves][]figure.Point{
+	1: {{X: -.85, Y: -.85}, {X: .85, Y: -.85}, {X: .85, Y: .85}, {X: -.85, Y: .85}},
+	2: {{X: 0, Y: -1.1}, {X: 1, Y: .8}, {X: -1, Y: .8}},
+	3: {{X: 0, Y: -1.2}, {X: 1.2, Y: 0}, {X: 0, Y: 1.2}, {X: -1.2, Y: 0}},
+	4: {{X: 0, Y: 1.1}, {X: 1, Y: -.8}, {X: -1, Y: -.8}},
+	// An upright cross.
+	5: {
+		{X: -.35, Y: -1.15},
+		{X: .35, Y: -1.15},
+		{X: .35, Y: -.35},
+		{X: 1.15, Y: -.35},
+		{X: 1.15, Y: .35},
+		{X: .35, Y: .35},
+		{X: .35, Y: 1.15},
+		{X: -.35, Y: 1.15},
+		{X: -.35, Y: .35},
+		{X: -1.15, Y: .35},
+		{X: -1.15, Y: -.35},
+		{X: -.35, Y: -.35},
+	},
 }
 
 // mostNames is how many curves are named; of more, every so many.

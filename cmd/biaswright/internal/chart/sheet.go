@@ -18,6 +18,16 @@ func textRoom(text string, size float64, bold bool) float64 {
 	return reserve * figure.TextWidth(text, size, bold)
 }
 
+// heading writes the name of a panel.
+func heading(f *figure.Figure, x, y float64, text string) {
+	f.Add(&figure.Text{At: figure.Point{X: x, Y: y}, Text: text, Size: normal, Bold: true, Paint: figure.Ink})
+}
+
+// note writes small text that stands back.
+func note(f *figure.Figure, x, y float64, anchor figure.Anchor, text string) {
+	f.Add(&figure.Text{At: figure.Point{X: x, Y: y}, Text: text, Anchor: anchor, Size: small, Paint: figure.Soft})
+}
+
 // A panel is what stands on a sheet.
 type panel interface {
 	height(width float64) float64
@@ -81,7 +91,7 @@ func (s *sheet) legend(list ...swatch) {
 			end = x + size + air + textRoom(w.text, small, false)
 		}
 		s.f.Add(figure.Box(x, s.top, x+size, s.top+size, w.paint, figure.Frame))
-		s.f.Add(&figure.Text{At: figure.Point{X: x + size + air, Y: s.top + size - 1}, Text: w.text, Size: small, Paint: figure.Soft})
+		note(s.f, x+size+air, s.top+size-1, figure.Start, w.text)
 		x = end + margin
 	}
 	if len(told) > 0 {

@@ -75,6 +75,13 @@ func (r *runner) illustrateHand(q *request, a *render.HandAnswer) {
 	}
 }
 
+func (r *runner) illustrateChoices(q *chooseRequest, a *render.ChooseAnswer) {
+	if q.chart.wanted() {
+		fig, err := chart.Choose(a)
+		r.drawIf(q.chart, fig, err)
+	}
+}
+
 func (r *runner) illustrateComparison(f chartFile, a *render.CompareAnswer) {
 	fig, err := chart.Compare(a)
 	r.drawIf(f, fig, err)

@@ -40,6 +40,7 @@ func (r *runner) chooseCommand() *cli.Command {
 			setFlag(),
 			&cli.StringSliceFlag{Name: "near", Usage: "`NODE=VOLTS`: take the nominal point nearest to these voltages; may be repeated"},
 			&cli.IntFlag{Name: "workers", Usage: "`N` parts of the search at a time; the answer is the same", Value: runtime.NumCPU()},
+			chartFlag("how the choices compare"),
 			jsonFlag(),
 			plainFlag(),
 		},
@@ -139,6 +140,7 @@ func (r *runner) chosen(name string, q *chooseRequest) (*render.ChooseAnswer, *t
 	if !a.Found.Reached || !a.Found.Choices[0].Met() {
 		r.raise(exitNotMet)
 	}
+	r.illustrateChoices(q, a)
 	if q.write == "" || !a.Found.Reached {
 		return a, nil
 	}

@@ -179,30 +179,31 @@ func endOfRange(ohms float64) string {
 	return ""
 }
 
-// A listed is a line of the short list: its name, and what each value is called.
-type listed struct {
-	name   string
-	c      *choose.Choice
-	values []string
+// A Listed is a line of the short list: "exact", "nearest", "ideal" or a number, and what
+// each value is called.
+type Listed struct {
+	Name   string
+	Choice *choose.Choice
+	Values []string // by unknown
 }
 
-// listOf is the short list, the exact values above it.
-func listOf(a *choose.Answer) []listed {
-	exact := func(name string, c *choose.Choice) listed {
-		out := listed{name: name, c: c}
+// ShortList is the short list, the exact values above it.
+func ShortList(a *choose.Answer) []Listed {
+	exact := func(name string, c *choose.Choice) Listed {
+		out := Listed{Name: name, Choice: c}
 		for _, ohms := range c.Ohms {
-			out.values = append(out.values, exactText(ohms))
+			out.Values = append(out.Values, exactText(ohms))
 		}
 		return out
 	}
-	out := []listed{exact(exactHeading(a), &a.Exact)}
+	out := []Listed{exact(exactHeading(a), &a.Exact)}
 	if a.Ideal != nil {
 		out = append(out, exact("ideal", a.Ideal))
 	}
 	for k := range a.Choices {
-		one := listed{name: strconv.Itoa(k + 1), c: &a.Choices[k]}
+		one := Listed{Name: strconv.Itoa(k + 1), Choice: &a.Choices[k]}
 		for i := range a.Unknowns {
-			one.values = append(one.values, valueText(a, one.c, i))
+			one.Values = append(one.Values, valueText(a, one.Choice, i))
 		}
 		out = append(out, one)
 	}
@@ -212,7 +213,7 @@ func listOf(a *choose.Answer) []listed {
 // printChoices prints the short list. Values that are too wide for columns stand below
 // it.
 func printChoices(w io.Writer, a *choose.Answer, l Look) {
-	lines := listOf(a)
+	lines := ShortList(a)
 	beside := besides(lines)
 	n := 0
 	if beside {
@@ -227,7 +228,7 @@ func printChoices(w io.Writer, a *choose.Answer, l Look) {
 	}
 	var draws []float64
 	for _, line := range lines {
-		draws = append(draws, line.c.Draw)
+		draws = append(draws, line.Choice.Draw)
 	}
 	s := scaleFor(draws...)
 	h[nominal], h[worst] = cell{"nominal", faint}, cell{"worst", faint}
@@ -236,20 +237,20 @@ func printChoices(w io.Writer, a *choose.Answer, l Look) {
 	t.add(row{head: true, cells: h})
 	for _, line := range lines {
 		r := make([]cell, cols)
-		r[0] = cell{"  " + line.name, noInk}
+		r[0] = cell{"  " + line.Name, noInk}
 		for i := range n {
-			r[i+1] = cell{l.text(line.values[i]), noInk}
+			r[i+1] = cell{l.text(line.Values[i]), noInk}
 		}
-		r[nominal], r[worst] = cell{bands(line.c.NominalScore()), noInk}, cell{bands(line.c.Score), noInk}
-		r[drawn] = cell{number(s.in(line.c.Draw)), noInk}
-		r[verdict] = verdictCell(line.c)
+		r[nominal], r[worst] = cell{bands(line.Choice.NominalScore()), noInk}, cell{bands(line.Choice.Score), noInk}
+		r[drawn] = cell{number(s.in(line.Choice.Draw)), noInk}
+		r[verdict] = verdictCell(line.Choice)
 		t.add(row{cells: r})
 	}
 	t.print(w, l)
 	if !beside {
 		for _, line := range lines {
 			var words []string
-			for i, v := range line.values {
+			for i, v := range line.Values {
 				words = append(words, a.Unknowns[i].Name+" "+v+",")
 			}
 			last := len(words) - 1
@@ -257,11 +258,11 @@ func printChoices(w io.Writer, a *choose.Answer, l Look) {
 			for i := range words {
 				words[i] = l.text(words[i])
 			}
-			flow(w, fmt.Sprintf("  %-7s", line.name), words)
+			flow(w, fmt.Sprintf("  %-7s", line.Name), words)
 		}
 	}
 	says := "Nominal and worst: the largest deviation of a target, where 1 is the edge of its band."
-	if slices.ContainsFunc(lines, func(line listed) bool { return line.c.Unmet > 0 }) {
+	if slices.ContainsFunc(lines, func(line Listed) bool { return line.Choice.Unmet > 0 }) {
 		says += " By: the largest miss, beyond a band or, of a keep, as a share of its bound."
 	}
 	wrap(w, "", l.text(says+" Behind a value: the coarsest series that has it; E24 is no part of E48 to E192."))
@@ -275,13 +276,13 @@ func printChoices(w io.Writer, a *choose.Answer, l Look) {
 }
 
 // besides tells that the values leave room for the figures beside them.
-func besides(lines []listed) bool {
+func besides(lines []Listed) bool {
 	const figures = 50 // columns
 	sum := 0
-	for i := range lines[0].values {
+	for i := range lines[0].Values {
 		widest := 0
 		for _, line := range lines {
-			widest = max(widest, width(line.values[i]))
+			widest = max(widest, width(line.Values[i]))
 		}
 		sum += widest + gap
 	}
@@ -364,7 +365,7 @@ func printChosen(w io.Writer, a *choose.Answer, l Look) {
 		if !r.Worst.Met {
 			cells[chsVerdict] = cell{"  NOT MET", bad}
 		}
-		cells[chsText] = cell{l.text(requirementText(a.Circuit, &r.Worst)), noInk}
+		cells[chsText] = cell{l.text(RequirementText(a.Circuit, &r.Worst)), noInk}
 		f := figuresOf(&r.Worst, r.Worst.Q.Unit.Symbol())
 		cells[chsNominal] = cell{l.text(orNone(r.Nominal.Value, f)), noInk}
 		cells[chsWorst] = cell{l.text(orNone(r.Worst.Value, f)), noInk}

@@ -150,7 +150,7 @@ func choice(a *choose.Answer, c *choose.Choice) choiceJSON {
 		r := &c.Requirements[i]
 		v := &r.Worst
 		j.Requirements = append(j.Requirements, requirementJSON{
-			v.Kind, requirementText(a.Circuit, v), v.Q.Text, v.Q.Unit.String(), v.Met, num(v.Low), num(v.High),
+			v.Kind, RequirementText(a.Circuit, v), v.Q.Text, v.Q.Unit.String(), v.Met, num(v.Low), num(v.High),
 			num(r.Nominal.Value), num(v.Value), num(v.Margin), endsJSON(r.At),
 		})
 	}

@@ -326,7 +326,7 @@ func failure(f *solve.Failure) *failureJSON {
 
 func verdict(c *netlist.Circuit, v *solve.Verdict) verdictJSON {
 	j := verdictJSON{
-		Kind: v.Kind, Text: requirementText(c, v), Quantity: v.Q.Text, Unit: v.Q.Unit.String(), Met: v.Met,
+		Kind: v.Kind, Text: RequirementText(c, v), Quantity: v.Q.Text, Unit: v.Q.Unit.String(), Met: v.Met,
 		Value: num(v.Value), Low: num(v.Low), High: num(v.High), Margin: num(v.Margin),
 	}
 	switch {

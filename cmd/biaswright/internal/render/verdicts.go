@@ -51,7 +51,7 @@ func verdictCells(a *Answer, v *solve.Verdict, l Look) []cell {
 		r[reqVerdict] = cell{"  NOT MET", bad}
 	}
 	unit := v.Q.Unit.Symbol()
-	r[reqText] = cell{l.text(requirementText(a.Circuit, v)), noInk}
+	r[reqText] = cell{l.text(RequirementText(a.Circuit, v)), noInk}
 	if math.IsNaN(v.Value) {
 		r[reqValue] = cell{"no value", noInk}
 		return r
@@ -139,9 +139,9 @@ func (f verdictFigures) allowed(v *solve.Verdict) string {
 	}
 }
 
-// requirementText writes a requirement as the file does: "target LAMP.I = 15 mA
+// RequirementText writes a requirement as the file does: "target LAMP.I = 15 mA
 // within 10 %".
-func requirementText(c *netlist.Circuit, v *solve.Verdict) string {
+func RequirementText(c *netlist.Circuit, v *solve.Verdict) string {
 	unit := v.Q.Unit.Symbol()
 	switch v.Kind {
 	case "target":
