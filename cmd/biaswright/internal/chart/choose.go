@@ -13,13 +13,18 @@ import (
 // Choose draws the short list: for each target and keep a line for each choice, from its
 // nominal value to where it is worst. The error is ErrNothing.
 func Choose(a *render.ChooseAnswer) (*figure.Figure, error) {
-	const width = 760.0 // points
 	if a.Found == nil {
 		return nil, ErrNothing
 	}
+	// Points: what the axis and the verdicts want, and the names beside them.
+	const least, axes, most = 760.0, 560.0, 1200.0
 	var panels []panel
 	var tints []swatch
 	list := render.ShortList(a.Found)
+	width := least
+	for _, one := range list {
+		width = math.Min(most, math.Max(width, axes+textRoom(choiceName(a.Found, one), small, false)))
+	}
 	for i := range a.Found.Exact.Requirements {
 		v := &a.Found.Exact.Requirements[i].Nominal
 		switch v.Kind { // a hold is each choice's own
@@ -82,12 +87,17 @@ func sameBounds(list []render.Listed, requirement int) bool {
 	return true
 }
 
-func choiceLine(a *choose.Answer, one render.Listed, requirement int, unit string) entry {
-	var what []string
+// choiceName is a choice's place in the list with its values.
+func choiceName(a *choose.Answer, one render.Listed) string {
+	var values []string
 	for i, text := range one.Values {
-		what = append(what, a.Unknowns[i].Name+" "+text)
+		values = append(values, a.Unknowns[i].Name+" "+text)
 	}
-	e := entry{what: one.Name + "  " + strings.Join(what, ", "), amount: "no value"}
+	return one.Name + "  " + strings.Join(values, ", ")
+}
+
+func choiceLine(a *choose.Answer, one render.Listed, requirement int, unit string) entry {
+	e := entry{what: choiceName(a, one), amount: "no value"}
 	var r choose.Requirement
 	if requirement < len(one.Choice.Requirements) {
 		r = one.Choice.Requirements[requirement]

@@ -37,7 +37,7 @@ func (l *lines) draw(f *figure.Figure, left, top, width float64) {
 	names, amounts := 0.0, 0.0
 	for i := range l.list {
 		e := &l.list[i]
-		names = math.Max(names, textRoom(cut(e.what), small, e.bold))
+		names = math.Max(names, textRoom(cutTo(e.what, width/2), small, e.bold))
 		amounts = math.Max(amounts, textRoom(e.amount, small, e.bold))
 	}
 	low, high := l.extent(width)
@@ -64,7 +64,7 @@ func (l *lines) draw(f *figure.Figure, left, top, width float64) {
 		e := &l.list[i]
 		from := top + float64(i)*lineHeight
 		base := from + 0.65*lineHeight // of texts that stand in a line's middle
-		f.Add(&figure.Text{At: figure.Point{X: left, Y: base}, Text: cut(e.what), Size: small, Bold: e.bold, Paint: figure.Ink})
+		f.Add(&figure.Text{At: figure.Point{X: left, Y: base}, Text: cutTo(e.what, width/2), Size: small, Bold: e.bold, Paint: figure.Ink})
 		e.draw(f, x, from+lineHeight/2, i+1 < len(l.list))
 		f.Add(&figure.Text{At: figure.Point{X: left + width, Y: base}, Text: e.amount, Anchor: figure.End, Size: small, Bold: e.bold, Paint: figure.Ink})
 	}
