@@ -43,6 +43,9 @@ type Plan struct {
 	// Near, where set, are node voltages in V that the first point of the innermost
 	// axis is to be near; the others follow it, as long as its branch goes on.
 	Near map[netlist.NodeID]float64
+	// From, where set, is a point of this circuit at the first value of the innermost axis,
+	// to begin with sooner than Near does; one of another structure is passed over.
+	From *solve.Point
 }
 
 // Points is how many rows the plan has.
@@ -163,9 +166,12 @@ func (r *runner) run(k int) {
 		settings = append(a.settings(at), settings...)
 		r.outside = r.outside || !r.within(a, a.Values[at])
 	}
-	c, list := r.plan.Circuit.With(settings...)
+	c := r.plan.Circuit
+	if len(settings) > 0 { // a copy is dear beside a few points
+		c, _ = c.With(settings...)
+	}
 	inner := &axes[len(axes)-1]
-	if list.HasErrors() {
+	if c == nil {
 		for _, v := range inner.Values {
 			r.fail(inner, v)
 		}
@@ -231,6 +237,9 @@ func (r *runner) follow(c *netlist.Circuit, inner *Axis) int {
 	t := r.s.NewTuner(inner.slots(c)...)
 	numbers := make([]float64, len(inner.names))
 	x := make([]float64, r.s.Size())
+	if p := r.plan.From; p != nil && len(p.Unknowns()) == len(x) {
+		r.past.add(inner.Values[0], p.Unknowns())
+	}
 	for i, v := range inner.Values {
 		if r.ctx.Err() != nil {
 			return len(inner.Values)

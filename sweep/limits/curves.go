@@ -59,7 +59,7 @@ func (a *Answer) outward(name string, values []float64) (Curve, error) {
 	if err != nil {
 		return Curve{}, err
 	}
-	plan := sweep.Plan{Circuit: c, Axes: []sweep.Axis{axis}, Show: []string{a.Hold.Q.Text}, Near: a.nominalVolts()}
+	plan := sweep.Plan{Circuit: c, Axes: []sweep.Axis{axis}, Show: []string{a.Hold.Q.Text}, Near: a.nominalVolts(), From: a.Nominal}
 	var out Curve
 	err = sweep.Run(context.Background(), plan, func(r sweep.Row) error {
 		out.X = append(out.X, r.At[0])

@@ -65,7 +65,7 @@ func inStrips(f *Figure, scale float64, width, height int, take func(rows []uint
 	}
 	// As many strips may wait as are drawn. Who has room takes the next strip, so the one
 	// that is waited for has it.
-	room := make(chan []uint8, 2*workers)
+	room := make(chan []uint8, workers+1)
 	for range cap(room) {
 		room <- make([]uint8, strip*(1+width))
 	}
