@@ -217,6 +217,7 @@ func drawBlock(f *figure.Figure, y *axis, b *block, left float64) {
 func hatch(f *figure.Figure, left, top, right, bottom float64) {
 	f.Add(figure.Box(left, top, right, bottom, figure.Paper, figure.None))
 	const every = 7.0 // points, down
+	lines := &figure.Strokes{Paint: figure.Frame, Width: 0.6}
 	width := right - left
 	for at := top; at < bottom+width; at += every {
 		// From (left, at) up to (right, at - width), cut at the box's edges.
@@ -228,11 +229,10 @@ func hatch(f *figure.Figure, left, top, right, bottom float64) {
 			x2, y2 = x2-(top-y2), top
 		}
 		if x1 < x2 {
-			l := figure.Segment(x1, y1, x2, y2, figure.Frame)
-			l.Width = 0.6
-			f.Add(l)
+			lines.Points = append(lines.Points, figure.Point{X: x1, Y: y1}, figure.Point{X: x2, Y: y2})
 		}
 	}
+	f.Add(lines)
 }
 
 // mostColumns is how many paths stand side by side in one row of pictures.

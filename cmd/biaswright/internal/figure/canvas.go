@@ -20,6 +20,8 @@ func reach(s Shape) (above, below float64) {
 	switch s := s.(type) {
 	case *Line:
 		above, below = heights(s.Points)
+	case *Strokes:
+		above, below = heights(s.Points)
 	case *Area:
 		above, below = heights(s.Points)
 	case *Dot:
@@ -64,7 +66,7 @@ func (c *canvas) draw(f *Figure, top int) {
 	c.top = float64(top)
 	draw.Draw(c.img, c.img.Rect, image.NewUniform(light[Paper]), image.Point{}, draw.Src)
 	for _, s := range f.Shapes {
-		if above, below := reach(s); below*c.scale >= c.top && above*c.scale <= c.top+strip {
+		if c.reached(reach(s)) {
 			c.shape(s)
 		}
 	}
@@ -74,6 +76,8 @@ func (c *canvas) shape(s Shape) {
 	switch s := s.(type) {
 	case *Line:
 		c.line(s)
+	case *Strokes:
+		c.strokes(s)
 	case *Area:
 		c.area(s)
 	case *Dot:
@@ -81,6 +85,11 @@ func (c *canvas) shape(s Shape) {
 	case *Text:
 		c.text(s)
 	}
+}
+
+// reached tells whether some of a shape lies in the strip, given how far it goes.
+func (c *canvas) reached(above, below float64) bool {
+	return below*c.scale >= c.top && above*c.scale <= c.top+strip
 }
 
 // y is where a height of the figure lies in the strip.
@@ -182,6 +191,15 @@ func (c *canvas) thick(course, width float64) (from, to int) {
 }
 
 func whole(pixels float64) int { return int(math.Round(pixels)) }
+
+func (c *canvas) strokes(s *Strokes) {
+	for i := 0; i+1 < len(s.Points); i += 2 {
+		if one := s.Points[i : i+2]; c.reached(reach(&Line{Points: one})) {
+			c.trace(one)
+		}
+	}
+	c.stroke(s.Paint, s.Width, nil)
+}
 
 func (c *canvas) fill(fill, edge Paint, width float64) {
 	if fill != None {

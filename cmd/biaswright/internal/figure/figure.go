@@ -15,7 +15,7 @@ type Figure struct {
 // A Point is a place in a figure, in points.
 type Point struct{ X, Y float64 }
 
-// A Shape is a *Line, an *Area, a *Dot or a *Text.
+// A Shape is a *Line, a *Strokes, an *Area, a *Dot or a *Text.
 type Shape interface{ shape() }
 
 // A Line joins points by straight strokes.
@@ -25,6 +25,13 @@ type Line struct {
 	Width  float64 // points; 0 is 1
 	// Dash alternates the lengths of strokes and gaps, in points; nil is solid.
 	Dash []float64
+}
+
+// Strokes are many straight strokes alike, such as a hatch's: solid, two points each.
+type Strokes struct {
+	Points []Point // from, to, from, to, ...
+	Paint  Paint
+	Width  float64 // points; 0 is 1
 }
 
 // An Area is a closed polygon, filled, and outlined where Edge is not None.
@@ -65,10 +72,11 @@ type Text struct {
 	Plate bool
 }
 
-func (*Line) shape() {}
-func (*Area) shape() {}
-func (*Dot) shape()  {}
-func (*Text) shape() {}
+func (*Line) shape()    {}
+func (*Strokes) shape() {}
+func (*Area) shape()    {}
+func (*Dot) shape()     {}
+func (*Text) shape()    {}
 
 // Add puts shapes on top of those that are there. Inlined at each of its calls it would add
 // some twenty kilobytes to the program.

@@ -28,6 +28,8 @@ func WriteSVG(w io.Writer, f *Figure) error {
 		switch s := s.(type) {
 		case *Line:
 			svgLine(&b, s)
+		case *Strokes:
+			svgStrokes(&b, s)
 		case *Area:
 			svgArea(&b, s)
 		case *Dot:
@@ -129,6 +131,14 @@ func svgLine(b *bytes.Buffer, s *Line) {
 		fmt.Fprintf(b, ` stroke-dasharray="%s"`, strings.Join(dash, " "))
 	}
 	b.WriteString("/>\n")
+}
+
+func svgStrokes(b *bytes.Buffer, s *Strokes) {
+	b.WriteString(`<path d="`)
+	for i := 0; i+1 < len(s.Points); i += 2 {
+		b.WriteString(paths(s.Points[i : i+2]))
+	}
+	fmt.Fprintf(b, "\"%s/>\n", ink(None, s.Paint, s.Width))
 }
 
 func svgArea(b *bytes.Buffer, s *Area) {
