@@ -158,13 +158,7 @@ func (t *Topology) window(axis string) (low, high float64) {
 	if l == nil {
 		return math.NaN(), math.NaN()
 	}
-	end := func(s limits.Side) float64 {
-		if s.Reason == limits.End {
-			return s.SearchedTo
-		}
-		return s.At
-	}
-	return end(l.Low), end(l.High)
+	return l.Low.HoldsTo(), l.High.HoldsTo()
 }
 
 // dropout is the supply nearest 0 that still holds, NaN where it holds all the way.
@@ -207,7 +201,7 @@ func (t *Topology) BreaksFirst() (l *limits.Limit, high bool) {
 					end = t.Circuit.Slots[id].Bounds.High
 				}
 			}
-			if side.Reason == limits.End || end == lim.Nominal || ranged && !ok {
+			if !side.Limited() || end == lim.Nominal || ranged && !ok {
 				continue
 			}
 			room := math.Abs(side.At-lim.Nominal) / math.Abs(end-lim.Nominal)

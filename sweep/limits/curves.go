@@ -96,7 +96,7 @@ func steps(l *Limit, points int) (xs []float64, at int) {
 		xs = append(xs, (1-f)*l.From+f*l.To)
 	}
 	for _, s := range []Side{l.Low, l.High} {
-		if s.Reason != End {
+		if s.Limited() {
 			xs = append(xs, s.At)
 		}
 	}

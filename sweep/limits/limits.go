@@ -77,17 +77,30 @@ const (
 	Band Reason = "band" // the quantity left its band
 	Fold Reason = "fold" // the branch turns back: no such point beyond
 	End  Reason = "end"  // searched to the end, still holds
+	// Lost: holds as far as the branch could be followed; nothing is known beyond.
+	Lost Reason = "lost"
 )
 
 // A Side is one side of an axis.
 type Side struct {
-	// At is the last value that holds, NaN where the search reached its end.
+	// At is the last value that holds, NaN where the search met no limit.
 	At         float64
 	Reason     Reason
 	SearchedTo float64
 	Cause      Cause
-	// Point is the circuit at At; nil at the end.
+	// Point is the circuit at At; nil without a limit.
 	Point *solve.Point
+}
+
+// Limited tells that the search met a limit.
+func (s *Side) Limited() bool { return s.Reason == Band || s.Reason == Fold }
+
+// HoldsTo is the limit, or how far was searched where there is none.
+func (s *Side) HoldsTo() float64 {
+	if s.Limited() {
+		return s.At
+	}
+	return s.SearchedTo
 }
 
 // Errors that a file can mend.
@@ -252,7 +265,7 @@ func (a *Answer) limit(ax *axis) (Limit, error) {
 	if l.Nominal < 0 || ax.name == netlist.LoadName {
 		worse = l.High
 	}
-	if ax.name != "ambient" && worse.Reason != End {
+	if ax.name != "ambient" && worse.Limited() {
 		l.Headroom = math.Abs(l.Nominal - worse.At)
 	}
 	return l, nil
@@ -290,7 +303,8 @@ func (a *Answer) side(ax *axis, direction int) (Side, error) {
 	case w.Outcome == follow.RangeEnd:
 		return side, nil
 	default:
-		return side, fmt.Errorf("%s: the walk %s at %.6g", ax.name, w.Outcome, w.Lambda)
+		side.Reason, side.SearchedTo = Lost, w.Lambda
+		return side, nil
 	}
 	side.SearchedTo = side.At
 	side.Cause = a.explain(ax, side)

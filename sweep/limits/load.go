@@ -62,7 +62,7 @@ func (a *Answer) loadAnswers(c *netlist.Circuit, counts bool, workers int) {
 
 func (a *Answer) window(c *netlist.Circuit, l *Load, lim *Limit) {
 	at := func(s Side) (float64, *solve.Point) {
-		if s.Reason != End {
+		if s.Limited() {
 			return s.At, s.Point
 		}
 		p, err := cold(c.HoldLoad(s.SearchedTo))

@@ -86,7 +86,7 @@ func limitPlot(a *render.LimitsAnswer, l *limits.Limit, c limits.Curve) *Plot {
 		if high {
 			side = l.High
 		}
-		if side.Reason != limits.End {
+		if side.Limited() {
 			p.Marks = append(p.Marks, Mark{X: side.At, Text: render.With(side.At, l.Unit.Symbol()), High: high})
 		}
 		if says := render.SideSays(a, l, high); says != "" {

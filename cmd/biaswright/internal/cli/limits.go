@@ -95,8 +95,13 @@ func (r *runner) limitsOf(name string, q *limitsRequest) (*render.LimitsAnswer, 
 	}
 	r.illustrateLimits(q, a)
 	for i := range a.Limits.Limits {
-		if low, high := a.Short(&a.Limits.Limits[i]); low || high {
+		l := &a.Limits.Limits[i]
+		low, high := a.Short(l)
+		if low || high {
 			r.raise(exitNotMet)
+		}
+		if low && !l.Low.Limited() || high && !l.High.Limited() { // lost on the way
+			r.raise(exitNoPoint)
 		}
 	}
 	return a, nil

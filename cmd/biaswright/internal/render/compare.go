@@ -296,8 +296,8 @@ func (a *CompareAnswer) Says(i int, rows []compare.Row) string {
 	for i := range t.Limits.Limits { // then the supplies, and the load
 		o := &t.Limits.Limits[i]
 		up := o.Axis == netlist.LoadName || o.Nominal < 0
-		if reason := sideOf(o, up).Reason; o.Axis != "ambient" && reason != limits.End && (o != l || up != high) {
-			says += fmt.Sprintf("; %s may go to %s, where %s", o.Axis, With(sideOf(o, up).At, o.Unit.Symbol()), whyText(t, o, up))
+		if side := sideOf(o, up); o.Axis != "ambient" && side.Limited() && (o != l || up != high) {
+			says += fmt.Sprintf("; %s may go to %s, where %s", o.Axis, With(side.At, o.Unit.Symbol()), whyText(t, o, up))
 		}
 	}
 	return says

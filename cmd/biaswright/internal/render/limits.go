@@ -25,8 +25,8 @@ type LimitsAnswer struct {
 	Warnings diag.List
 }
 
-// Short tells the sides of a limit that lie inside the axis's stated range: the
-// hold is not met there.
+// Short tells the sides on which the hold is not met, or not shown to be, as far as the
+// axis's stated range goes.
 func (a *LimitsAnswer) Short(l *limits.Limit) (low, high bool) {
 	id, ok := a.Circuit.Lookup(l.Axis)
 	if !ok { // the load's voltage has no stated range
@@ -35,8 +35,8 @@ func (a *LimitsAnswer) Short(l *limits.Limit) (low, high bool) {
 	b := &a.Circuit.Slots[id].Bounds
 	const rounding = 1e-9 // a limit is this near
 	slack := rounding * math.Max(math.Abs(b.Low), math.Abs(b.High))
-	low = b.Stated && l.Low.Reason != limits.End && l.Low.At > b.Low+slack
-	high = b.Stated && l.High.Reason != limits.End && l.High.At < b.High-slack
+	low = b.Stated && l.Low.Reason != limits.End && l.Low.HoldsTo() > b.Low+slack
+	high = b.Stated && l.High.Reason != limits.End && l.High.HoldsTo() < b.High-slack
 	return low, high
 }
 
@@ -115,25 +115,21 @@ func printLimits(w io.Writer, a *LimitsAnswer, l Look) {
 		unit := lim.Unit.Symbol()
 		r[limAxis] = cell{l.text("  " + lim.Axis + " [" + unit + "]"), noInk}
 		r[limNominal] = cell{number(lim.Nominal), noInk}
-		r[limLow] = cell{edge(lim.Low), noInk}
-		r[limHigh] = cell{edge(lim.High), noInk}
+		r[limLow] = cell{number(lim.Low.HoldsTo()), noInk}
+		r[limHigh] = cell{number(lim.High.HoldsTo()), noInk}
 		if !math.IsNaN(lim.Headroom) {
 			r[limHeadroom] = cell{number(lim.Headroom), noInk}
 		}
 		if low, high := a.Short(lim); low || high {
-			r[limMark] = cell{l.text("NOT MET over " + statedRange(a.Circuit, lim)), bad}
+			what := "NOT MET over "
+			if !(low && lim.Low.Limited()) && !(high && lim.High.Limited()) {
+				what = "NOT KNOWN over " // it was lost on the way
+			}
+			r[limMark] = cell{l.text(what + statedRange(a.Circuit, lim)), bad}
 		}
 		t.add(row{cells: r})
 	}
 	t.print(w, l)
-}
-
-// edge is the last value that holds, or the end of the search.
-func edge(s limits.Side) string {
-	if s.Reason == limits.End {
-		return number(s.SearchedTo)
-	}
-	return number(s.At)
 }
 
 func statedRange(c *netlist.Circuit, lim *limits.Limit) string {
@@ -149,7 +145,10 @@ func SideSays(a *LimitsAnswer, lim *limits.Limit, high bool) string {
 		side, beyond = lim.High, "above"
 	}
 	unit := lim.Unit.Symbol()
-	if side.Reason == limits.End {
+	switch side.Reason {
+	case limits.Lost:
+		return fmt.Sprintf("%s holds to %s; %s", lim.Axis, With(side.SearchedTo, unit), Says(a.Limits, lim, side))
+	case limits.End:
 		if side.SearchedTo == lim.Nominal {
 			return ""
 		}
@@ -166,6 +165,8 @@ func Says(a *limits.Answer, lim *limits.Limit, side limits.Side) string {
 	switch side.Reason {
 	case limits.End:
 		return "still holds where the search ends"
+	case limits.Lost:
+		return "the branch could not be followed further, and nothing is known beyond"
 	case limits.Fold:
 		says := "the circuit collapses: its operating point ends there, and it must jump to another"
 		if left := leftText(side.Cause.Left, 2); left != "" {

@@ -122,7 +122,7 @@ func side(a *limits.Answer, l *limits.Limit, s limits.Side) sideJSON {
 		At: num(s.At), Reason: string(s.Reason), Says: Says(a, l, s), SearchedTo: num(s.SearchedTo),
 		Value: num(math.NaN()), Relative: num(math.NaN()), Left: []leftJSON{},
 	}
-	if s.Reason == limits.End {
+	if !s.Limited() {
 		return j
 	}
 	j.Value, j.Relative = num(s.Cause.Value), num(s.Cause.Relative)
