@@ -96,7 +96,7 @@ func indifferent(float64) float64 { return math.NaN() }
 
 func unitOf(ts []*Topology) quantity.Unit {
 	for _, t := range ts {
-		if t.Failure == nil {
+		if t.Target != nil {
 			return t.Target.Q.Unit
 		}
 	}

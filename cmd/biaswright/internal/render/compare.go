@@ -77,7 +77,7 @@ func (a *CompareAnswer) quantity() string {
 	name := ""
 	for _, t := range a.Topologies {
 		switch {
-		case t.Failure != nil:
+		case t.Target == nil:
 		case name == "":
 			name = t.Target.Q.Text
 		case name != t.Target.Q.Text:
