@@ -265,7 +265,7 @@ func (r *resolver) hands() {
 		b.quantity = func(x *syntax.QuantityExpr) (Ref, bool) {
 			ref, ok := r.quantityRef(x)
 			if _, has := stated[quantityText(x)]; ok && !has {
-				r.errorf("no-hand", x.Span, "add a line: hand "+quantityText(x)+" = …", "the hand calculation does not say what %s is", quantityText(x))
+				r.errorf("no-hand", x.Span, r.handHint(x), "the hand calculation does not say what %s is", quantityText(x))
 				return ref, false
 			}
 			return ref, ok
@@ -281,6 +281,19 @@ func (r *resolver) hands() {
 		r.c.Hands = append(r.c.Hands, Hand{Q: q, Value: value, Span: s.Where()})
 	}
 	r.handCircle()
+}
+
+// handHint says how a hand line comes by a quantity: a rail's voltage is stated already.
+func (r *resolver) handHint(x *syntax.QuantityExpr) string {
+	text := quantityText(x)
+	if name, ok := strings.CutSuffix(text, ".V"); ok {
+		for i := range r.c.Rails {
+			if r.c.Rails[i].Name == name {
+				return "write " + name + ", the rail's voltage"
+			}
+		}
+	}
+	return "add a line: hand " + text + " = …"
 }
 
 // handCircle says where a hand line leads back to itself. Lines are taken off in

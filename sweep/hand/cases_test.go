@@ -374,6 +374,42 @@ part sig diode drop = 0.62 V at 1 mA`+c.text+"\nhand Q1.Ic = 1 mA"))
 	}
 }
 
+// A transistor that stands on gnd and is driven by resistors into saturation is judged as
+// a switch, whatever saturation costs; one with an emitter resistor, in a mirror or in
+// its active region is not.
+func TestSwitchesAreJudgedAsSwitches(t *testing.T) {
+	for _, c := range []struct {
+		name, text string
+		kind       hand.RuleKind
+		kept       bool
+	}{
+		{"driven hard", "path VCC -> RC 1k -> c -> Q1 gp base=b -> gnd\npath VCC -> RB 10k -> b", hand.Switch, true},
+		{"hardly saturated", "path VCC -> RC 1k -> c -> Q1 gp base=b -> gnd\npath VCC -> RB 100k -> b", hand.Switch, false},
+		{"active", "path VCC -> RC 100 -> c -> Q1 gp base=b -> gnd\npath VCC -> RB 100k -> b", hand.Saturation, true},
+		{"an emitter resistor", "path VCC -> RC 10k -> c -> Q1 gp base=b -> e -> RE 100 -> gnd\npath VCC -> RB 10k -> b", hand.Saturation, false},
+		{"a mirror", "path VCC -> R1 1k -> b -> Q2 gp base=b -> gnd\npath VCC -> RC 100k -> c -> Q1 gp base=b -> gnd", hand.Saturation, false},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			a := check(t, read(t, "test.bias", "rail VCC = 12 V\npart gp npn Vbe = 0.65 V at 1 mA, betaF = 150, betaR = 3\n"+c.text+"\nhand Q1.Ic = 1 mA"))
+			q := slices.IndexFunc(a.Circuit.Elements, func(e netlist.Element) bool { return e.Name == "Q1" })
+			for i := range a.Rules {
+				r := &a.Rules[i]
+				if r.Element != q {
+					continue
+				}
+				if r.Kind != c.kind || r.Kept() != c.kept {
+					t.Errorf("%s, kept %v; want %s, %v", r.Kind, r.Kept(), c.kind, c.kept)
+				}
+				if forced := a.Full.Elements[q].Ic / a.Full.Elements[q].Ib; r.Kind == hand.Switch && r.Figure != forced {
+					t.Errorf("figure %g, want I_C/I_B, %g", r.Figure, forced)
+				}
+				return
+			}
+			t.Error("no rule of Q1")
+		})
+	}
+}
+
 // A bench on which one value differs from the file's: its readings name that value.
 func TestMeasuredNamesTheValue(t *testing.T) {
 	const text = `

@@ -24,6 +24,10 @@ const (
 	// Saturation: a transistor keeps at least 0.3 V above the V_CE at which it
 	// saturates: half a volt in all (common practice).
 	Saturation RuleKind = "saturation"
+	// Switch: a saturated transistor that stands on a rail or gnd, its base fed by
+	// resistors alone, is meant to be on, and is so for sure where I_C/I_B is 20 or less
+	// (common practice: ten to twenty).
+	Switch RuleKind = "switch"
 )
 
 // The rules' bounds, common practice all.
@@ -31,17 +35,19 @@ const (
 	stiffEnough = 10
 	feedsEnough = 10
 	spareEnough = 0.3 // V
+	forcedMost  = 20
 )
 
 // A Rule is a rule of thumb tested on the circuit.
 type Rule struct {
 	Kind RuleKind
-	// Element is the transistor (Stiffness, Saturation) or the reference.
+	// Element is the transistor (Stiffness, Saturation, Switch) or the reference.
 	Element int
 	// Node is the base's (Stiffness, Reference), Bases the transistors fed there.
 	Node  netlist.NodeID
 	Bases []int
-	// Figure is a ratio, or volts for Saturation; Wanted is what the rule asks for.
+	// Figure is a ratio, or volts for Saturation; Wanted is what the rule asks for: the
+	// least, and of Switch the most.
 	Figure, Wanted float64
 	// Beta is I_C/I_B, Emitter the emitter resistor and Divider the parallel
 	// resistance of the divider, in ohm (Stiffness). Amps is the reference's current
@@ -49,12 +55,17 @@ type Rule struct {
 	Beta, Emitter, Divider, Amps, Base float64
 	// Costs is by row what it costs here: the full solution over that without the
 	// bases' currents (Saturation: without the collector junction), less 1. NaN where
-	// there is none.
+	// there is none, as for a Switch, whose saturation is wanted.
 	Costs []float64
 }
 
 // Kept tells whether the rule holds.
-func (r *Rule) Kept() bool { return r.Figure >= r.Wanted }
+func (r *Rule) Kept() bool {
+	if r.Kind == Switch {
+		return r.Figure <= r.Wanted
+	}
+	return r.Figure >= r.Wanted
+}
 
 // rules tests every rule of thumb where it applies, in the order of the elements.
 func (a *Answer) rules() []Rule {
@@ -72,6 +83,10 @@ func (a *Answer) rules() []Rule {
 		if !done[e.Base] {
 			done[e.Base] = true
 			out = append(out, a.references(e.Base)...)
+		}
+		if r, ok := a.asSwitch(i); ok {
+			out = append(out, r)
+			continue
 		}
 		out = append(out, a.saturation(i))
 	}
@@ -180,11 +195,7 @@ func (a *Answer) divider(node netlist.NodeID) (parallel float64, ok bool) {
 func (a *Answer) stiffness(q int) (Rule, bool) {
 	e := &a.Circuit.Elements[q]
 	parallel, ok := a.divider(e.Base)
-	emitter := e.To
-	if a.Circuit.Parts[e.Part].Kind.PNP {
-		emitter = e.From
-	}
-	ends, re := a.legs(emitter)
+	ends, re := a.legs(a.emitter(q))
 	if !ok || len(ends) == 0 {
 		return Rule{}, false
 	}
@@ -255,6 +266,29 @@ func (a *Answer) references(node netlist.NodeID) []Rule {
 		})
 	}
 	return out
+}
+
+func (a *Answer) emitter(q int) netlist.NodeID {
+	e := &a.Circuit.Elements[q]
+	if a.Circuit.Parts[e.Part].Kind.PNP {
+		return e.From
+	}
+	return e.To
+}
+
+// asSwitch is the rule of a transistor that is meant to be a switch.
+func (a *Answer) asSwitch(q int) (Rule, bool) {
+	c, ep := a.Circuit, &a.Full.Elements[q]
+	base := c.Elements[q].Base
+	if ep.State != "saturated" || !isGiven(c, a.emitter(q)) {
+		return Rule{}, false
+	}
+	for _, i := range a.tied(base) {
+		if kind := c.Elements[i].Kind; i != q && kind != netlist.Resistor && kind != netlist.Link {
+			return Rule{}, false // something else decides on the base
+		}
+	}
+	return Rule{Kind: Switch, Element: q, Node: base, Bases: []int{q}, Figure: ep.Ic / ep.Ib, Wanted: forcedMost, Base: ep.Ib, Costs: a.none()}, true
 }
 
 func (a *Answer) saturation(q int) Rule {

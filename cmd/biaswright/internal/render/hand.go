@@ -452,6 +452,8 @@ func RuleText(a *hand.Answer, r *hand.Rule) string {
 		}
 		says = fmt.Sprintf("%s's %s at %s is %s times the base current there, %s of %s (rule: %s or more); the base current", name, Measured(r.Amps, "A"), a.Circuit.Nodes[r.Node].Name,
 			number(r.Figure), Measured(r.Base, "A"), strings.Join(bases, ", "), stated(r.Wanted, ""))
+	case hand.Switch:
+		return fmt.Sprintf("%s is on, as a switch: I_C is %s times its base current, %s (rule: %s or less)", name, number(r.Figure), Measured(r.Base, "A"), stated(r.Wanted, ""))
 	default:
 		side := "above"
 		if r.Figure < 0 {
