@@ -13,7 +13,7 @@ import (
 
 // curvePoints is how many steps a curve is solved at: a step is two points wide, less
 // than the eye asks for.
-const curvePoints = 241
+const curvePoints = 181
 
 // sheetWidth is the width of a sheet of plots in two columns.
 const sheetWidth = 1040.0

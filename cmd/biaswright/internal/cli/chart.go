@@ -134,7 +134,7 @@ func (r *runner) draw(f chartFile, fig *figure.Figure) {
 	var b bytes.Buffer
 	err := f.write(&b, fig)
 	if err == nil {
-		err = r.create(f.name, b.Bytes())
+		err = r.create(f.name, b.Bytes(), false)
 	}
 	if err != nil {
 		r.raise(exitFile)

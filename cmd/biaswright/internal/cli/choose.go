@@ -169,7 +169,7 @@ func (r *runner) writeChoice(a *render.ChooseAnswer, text []byte, q *chooseReque
 	if err := a.Found.Verify(best, c); err != nil {
 		return refuse("the copy would be another circuit: %v", err)
 	}
-	if err := r.create(q.write, copied); err != nil {
+	if err := r.create(q.write, copied, true); err != nil {
 		r.raise(exitFile)
 		r.complain("cannot write %s: %v", q.write, err)
 		return nil

@@ -119,8 +119,9 @@ func (p *partialFile) remove() {
 }
 
 // replace writes a file so that it holds either its old or its new text, never a
-// part: the text goes to a file beside it, which then takes its name.
-func (r *runner) replace(name string, text []byte) (err error) {
+// part: the text goes to a file beside it, which then takes its name. What cannot be made
+// again must be safe on the disk before that.
+func (r *runner) replace(name string, text []byte, safely bool) (err error) {
 	target, err := filepath.EvalSymlinks(name) // a link stays a link
 	if err != nil {
 		return plainError(err)
@@ -147,8 +148,10 @@ func (r *runner) replace(name string, text []byte) (err error) {
 	if err = f.Chmod(info.Mode().Perm()); err != nil {
 		return plainError(err)
 	}
-	if err = f.Sync(); err != nil {
-		return plainError(err)
+	if safely {
+		if err = f.Sync(); err != nil {
+			return plainError(err)
+		}
 	}
 	if err = f.Close(); err != nil {
 		return plainError(err)
@@ -158,11 +161,11 @@ func (r *runner) replace(name string, text []byte) (err error) {
 
 // create writes a file, new or in the place of an old one; no part of it is left where
 // that fails. What is no ordinary file, such as a pipe, is written to as it is.
-func (r *runner) create(name string, text []byte) error {
+func (r *runner) create(name string, text []byte, safely bool) error {
 	info, err := os.Stat(name)
 	switch {
 	case err == nil && info.Mode().IsRegular():
-		return r.replace(name, text)
+		return r.replace(name, text, safely)
 	case err == nil && info.IsDir():
 		return errors.New("it is a directory")
 	case err == nil:

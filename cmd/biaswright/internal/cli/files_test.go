@@ -20,7 +20,7 @@ func TestReplace(t *testing.T) {
 		t.Fatal(err)
 	}
 	r := &runner{}
-	if err := r.replace(link, []byte("new")); err != nil {
+	if err := r.replace(link, []byte("new"), true); err != nil {
 		t.Fatal(err)
 	}
 	if got, err := os.ReadFile(name); err != nil || string(got) != "new" {
@@ -42,10 +42,10 @@ func TestReplaceThatFailsLeavesNothing(t *testing.T) {
 		t.Fatal(err)
 	}
 	r := &runner{}
-	if err := r.replace(folder, []byte("new")); err == nil {
+	if err := r.replace(folder, []byte("new"), true); err == nil {
 		t.Error("a folder is replaced by a file")
 	}
-	if err := r.replace(filepath.Join(dir, "gone", "a.bias"), nil); err == nil {
+	if err := r.replace(filepath.Join(dir, "gone", "a.bias"), nil, true); err == nil {
 		t.Error("a file is written where no folder is")
 	}
 	left(t, dir, 1)

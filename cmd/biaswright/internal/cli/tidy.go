@@ -66,7 +66,7 @@ func (r *runner) tidyFile(name string, check, write bool) error {
 		_, err = fmt.Fprintln(r.out, shown)
 	case check:
 	case write && differs:
-		if err := r.replace(name, canonical); err != nil {
+		if err := r.replace(name, canonical, true); err != nil {
 			r.raise(exitFile)
 			r.complain("cannot write %s: %v", name, err)
 		}

@@ -296,8 +296,12 @@ func (g *glyphs) Glyph(dot fixed.Point26_6, r rune) (at image.Rectangle, ink ima
 func (g *glyphs) draw(k glyphKey) glyph {
 	about, ink, from, advance, ok := g.Face.Glyph(fixed.Point26_6{X: k.place}, k.r)
 	own := image.NewAlpha(image.Rectangle{Max: about.Size()})
-	if ok {
-		draw.Draw(own, own.Rect, ink, from, draw.Src) // the face uses its own again
+	if of, alpha := ink.(*image.Alpha); ok && alpha { // the face uses its own again
+		for y := range about.Dy() {
+			copy(own.Pix[y*own.Stride:(y+1)*own.Stride], of.Pix[of.PixOffset(from.X, from.Y+y):])
+		}
+	} else if ok {
+		draw.Draw(own, own.Rect, ink, from, draw.Src)
 	}
 	return glyph{own, about, advance, ok}
 }

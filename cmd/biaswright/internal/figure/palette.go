@@ -4,7 +4,6 @@ import (
 	"encoding/binary"
 	"image/color"
 	"math"
-	"sync"
 )
 
 // A palette gives a picture an index of its colours, which makes it a third as large and
@@ -26,22 +25,22 @@ const (
 	known      = 1 << 24
 )
 
-// exact are the paints.
-var exact = sync.OnceValue(func() map[uint32]bool {
-	out := map[uint32]bool{}
-	for _, c := range light[Paper:] {
-		out[packed(c.R, c.G, c.B)] = true
-	}
-	return out
-})
-
 func packed(r, g, b uint8) uint32 { return uint32(r)<<16 | uint32(g)<<8 | uint32(b) }
 
-// newPalette has paper at 0.
+// common is how many places are the same in all palettes: the paints', and some that are
+// not used, to make a power of two.
+const common = 32
+
+// newPalette has the paints at their places, paper at 0.
 func newPalette() *palette {
-	p := &palette{at: map[uint32]uint8{}}
-	paper := light[Paper]
-	p.add(packed(paper.R, paper.G, paper.B))
+	p := &palette{colours: make([]color.NRGBA, common, 2*common), at: make(map[uint32]uint8, 2*common)}
+	for i := range p.colours {
+		p.colours[i] = light[Paper]
+	}
+	for i, c := range light[Paper:] {
+		p.colours[i] = c
+		p.at[packed(c.R, c.G, c.B)] = uint8(i)
+	}
 	return p
 }
 
@@ -81,13 +80,13 @@ func (p *palette) of(rgb uint32) uint8 {
 	return r.place
 }
 
-// shown is the place of what a colour is shown as.
+// shown is the place of what a colour is shown as: itself, where it has a place.
 func (p *palette) shown(rgb uint32) uint8 {
-	if !exact()[rgb] {
-		const high = 0xf0f0f0 // the upper half of each channel
-		rgb = rgb&high | rgb&high>>4
+	if at, ok := p.at[rgb]; ok {
+		return at
 	}
-	return p.add(rgb)
+	const high = 0xf0f0f0 // the upper half of each channel
+	return p.add(rgb&high | rgb&high>>4)
 }
 
 // add is the place of a colour, a new one while there is room, then the nearest.
@@ -123,17 +122,23 @@ func (p *palette) nearest(rgb uint32) uint8 {
 func (p *palette) join(other *palette) []uint8 {
 	const most = 256 // the places a byte can name, so that none needs looking after
 	places := make([]uint8, most)
-	for i, c := range other.colours {
-		places[i] = p.add(packed(c.R, c.G, c.B))
+	for i := range common {
+		places[i] = uint8(i)
+	}
+	for i, c := range other.colours[common:] {
+		places[common+i] = p.add(packed(c.R, c.G, c.B))
 	}
 	return places
 }
 
-// rename gives pixels their places in another palette, in which paper is 0 too.
+// rename gives pixels their places in another palette.
 func rename(pixels, places []uint8) {
-	const stroke = 8 // pixels looked at together; most are all paper
+	const (
+		stroke = 8                  // pixels looked at together
+		beyond = 0xe0e0e0e0e0e0e0e0 // the bits of places from common on
+	)
 	for len(pixels) >= stroke {
-		if binary.LittleEndian.Uint64(pixels) != 0 {
+		if binary.LittleEndian.Uint64(pixels)&beyond != 0 {
 			for i, at := range pixels[:stroke] {
 				pixels[i] = places[at]
 			}

@@ -110,17 +110,22 @@ func writeChunks(w io.Writer, width, height int, p *palette, pixels []byte) erro
 	for _, c := range p.colours {
 		colours = append(colours, c.R, c.G, c.B)
 	}
-	var out bytes.Buffer
-	out.WriteString("\x89PNG\r\n\x1a\n")
+	if _, err := io.WriteString(w, "\x89PNG\r\n\x1a\n"); err != nil {
+		return err
+	}
 	for _, chunk := range []struct {
 		name string
 		data []byte
 	}{{"IHDR", head}, {"PLTE", colours}, {"IDAT", pixels}, {"IEND", nil}} {
-		named := append([]byte(chunk.name), chunk.data...)
-		_ = binary.Write(&out, binary.BigEndian, uint32(len(chunk.data))) // a buffer takes it
-		out.Write(named)
-		_ = binary.Write(&out, binary.BigEndian, crc32.ChecksumIEEE(named))
+		name := []byte(chunk.name)
+		sum := crc32.Update(crc32.ChecksumIEEE(name), crc32.IEEETable, chunk.data)
+		for _, part := range [][]byte{
+			binary.BigEndian.AppendUint32(nil, uint32(len(chunk.data))), name, chunk.data, binary.BigEndian.AppendUint32(nil, sum),
+		} {
+			if _, err := w.Write(part); err != nil {
+				return err
+			}
+		}
 	}
-	_, err := w.Write(out.Bytes())
-	return err
+	return nil
 }
