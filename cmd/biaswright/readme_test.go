@@ -81,6 +81,48 @@ func TestREADME(t *testing.T) {
 	}
 }
 
+// A picture of README stands below a comment with the command that drew it.
+var pictured = regexp.MustCompile(`(?m)^<!-- (biaswright .* --chart (\S+)) -->\n!\[[^\]]+\]\((\S+)\)$`)
+
+// TestPictures draws README's pictures again: they are what the command draws today.
+func TestPictures(t *testing.T) {
+	root := filepath.Join(packageDir, "..", "..")
+	text, err := os.ReadFile(filepath.Join(root, "README.md"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir := t.TempDir()
+	for _, folder := range []string{"circuits", "pictures"} {
+		if err := os.CopyFS(filepath.Join(dir, "testdata", folder), os.DirFS(filepath.Join(root, "testdata", folder))); err != nil {
+			t.Fatal(err)
+		}
+	}
+	found := pictured.FindAllStringSubmatch(string(text), -1)
+	if want := strings.Count(string(text), "!["); len(found) != want || want == 0 {
+		t.Fatalf("%d of %d pictures stand below the command that drew them", len(found), want)
+	}
+	for _, match := range found {
+		command, drawn, shown := match[1], match[2], match[3]
+		if drawn != shown {
+			t.Errorf("%s is shown, and %s drawn", shown, drawn)
+		}
+		want, err := os.ReadFile(filepath.Join(dir, shown))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if said, err := run(dir, command); err != nil {
+			t.Fatalf("%v\n%s", err, said)
+		}
+		got, err := os.ReadFile(filepath.Join(dir, drawn))
+		if err != nil {
+			t.Fatal(err)
+		}
+		if err := alike(string(got), string(want)); err != nil {
+			t.Errorf("%s: %v", shown, err)
+		}
+	}
+}
+
 // parses checks a bias block, and makes its file where it is named.
 func parses(t *testing.T, dir string, f fence) {
 	t.Helper()
