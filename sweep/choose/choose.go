@@ -10,15 +10,17 @@
 // little worse). What is best is decided in this order:
 //
 //  1. no stated rating is exceeded at any end of the ranges;
-//  2. the largest miss of a target, keep or hold there: nothing where all are met;
+//  2. targets, keeps and hold are met there, or else at the nominal point at least;
+//  3. the largest miss of a target or keep there, and then that of the hold, so that a hold
+//     that no values can keep does not drive the targets away: nothing where all are met;
 //     otherwise how far a quantity lies beyond its band, in units of the band, or beyond
 //     the bound of a keep, as a fraction of the bound;
-//  3. where all are met, fewer resistors;
-//  4. the largest deviation of a target there, in units of its band: |Q - target|
+//  4. where all are met, fewer resistors;
+//  5. the largest deviation of a target there, in units of its band: |Q - target|
 //     over the width that the file states, 1 at the band's edge;
-//  5. the distance from the exact values, Σ ln²(R/R_exact), where two combinations
+//  6. the distance from the exact values, Σ ln²(R/R_exact), where two combinations
 //     deviate alike;
-//  6. the lower values.
+//  7. the lower values.
 //
 // The grid is every value of each series from a tenth of the exact value to ten times
 // it, in all combinations. All of it is searched: the deviation at the nominal point is a

@@ -296,3 +296,14 @@ func TestLargestMissDecides(t *testing.T) {
 		t.Errorf("%v missed by %g with %d, want 1070 by %g", c.Ohms, c.Miss, c.Unmet, want)
 	}
 }
+
+// A hold that no value can keep does not drive the target away: its miss is a little less
+// where the current is far too small.
+func TestHopelessHoldLeavesTheTarget(t *testing.T) {
+	a := find(t, "rail W = 10 V (9 V .. 11 V)\npart d diode drop = 0.7 V at 1 mA\npath W -> R ? E24 -> a -> D1 d -> gnd\ntarget R.I = 5 mA within 25%\nhold R.I within 1%")
+	for _, r := range a.Choices[0].Requirements {
+		if want := r.Nominal.Kind != "hold"; r.Worst.Met != want || !r.Nominal.Met {
+			t.Errorf("%v: %s %s met: %v, want %v", a.Choices[0].Ohms, r.Nominal.Kind, r.Nominal.Q.Text, r.Worst.Met, want)
+		}
+	}
+}

@@ -538,7 +538,7 @@ func (s *seeker) pick(found []*place) *place {
 	rank := func(p *place) (burnt, missed bool) {
 		s.from(p)
 		k := s.t.judge(s.take(p.u), key{}, worstKey)
-		return k.burnt, k.miss > 0
+		return k.burnt, !k.whole()
 	}
 	best := found[0]
 	burnt, missed := rank(best)

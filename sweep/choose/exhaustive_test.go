@@ -62,8 +62,10 @@ type corner struct {
 type result struct {
 	ohms  []float64
 	burnt bool
+	off   bool // something is missed at the nominal point
 	unmet int
-	miss  float64
+	miss  float64 // of targets and keeps
+	lost  float64 // of the hold
 	score float64
 	away  float64
 }
@@ -181,7 +183,7 @@ func (x *exhaustive) judge(ohms []float64) result {
 	var nominal, holdFrom *solve.Point
 	see := func(p *solve.Point) {
 		if p == nil {
-			r.score, r.miss = math.Inf(1), math.Inf(1)
+			r.score, r.miss, r.lost = math.Inf(1), math.Inf(1), math.Inf(1)
 			for _, v := range solve.Judge(nominal, holdFrom) {
 				unmet[[2]any{v.Kind, v.Index}] = true
 			}
@@ -190,7 +192,11 @@ func (x *exhaustive) judge(ohms []float64) result {
 		for _, v := range solve.Judge(p, holdFrom) {
 			if !v.Met {
 				unmet[[2]any{v.Kind, v.Index}] = true
-				r.miss = math.Max(r.miss, missed(x.c, &v))
+				if by := missed(x.c, &v); v.Kind == "hold" {
+					r.lost = math.Max(r.lost, by)
+				} else {
+					r.miss = math.Max(r.miss, by)
+				}
 			}
 			if v.Kind == "target" {
 				target := &x.c.Targets[v.Index]
@@ -211,7 +217,7 @@ func (x *exhaustive) judge(ohms []float64) result {
 		p := cold(at.plain, values)
 		if i == 0 {
 			if nominal = p; p == nil {
-				r.score, r.miss, r.unmet = math.Inf(1), math.Inf(1), math.MaxInt
+				r.score, r.miss, r.lost, r.unmet, r.off = math.Inf(1), math.Inf(1), math.Inf(1), math.MaxInt, true
 				return r
 			}
 			if x.c.Hold != nil {
@@ -219,6 +225,9 @@ func (x *exhaustive) judge(ohms []float64) result {
 			}
 		}
 		see(p)
+		if i == 0 {
+			r.off = len(unmet) > 0
+		}
 		if p == nil {
 			continue
 		}
@@ -342,8 +351,14 @@ func (x *exhaustive) best(exact []float64) []result {
 		switch {
 		case a.burnt != b.burnt:
 			return b.burnt
+		case a.unmet == 0 != (b.unmet == 0):
+			return a.unmet == 0
+		case a.off != b.off:
+			return b.off
 		case differ(a.miss, b.miss):
 			return a.miss < b.miss
+		case differ(a.lost, b.lost):
+			return a.lost < b.lost
 		case differ(a.score, b.score):
 			return a.score < b.score
 		}
@@ -442,12 +457,12 @@ func compare(t *testing.T, name, text string, o choose.Options) {
 	}
 	for i, got := range a.Choices {
 		want := all[i]
-		if len(got.Ratings) > 0 != want.burnt || got.Unmet != want.unmet && want.unmet != math.MaxInt || differ(got.Miss, want.miss) || differ(got.Score, want.score) {
+		if len(got.Ratings) > 0 != want.burnt || got.Unmet != want.unmet && want.unmet != math.MaxInt || differ(got.Miss, math.Max(want.miss, want.lost)) || differ(got.Score, want.score) {
 			t.Errorf("%s, place %d: %v with %d unmet, score %.12g, ratings %v; exhaustive has %+v\n%s", name, i+1, got.Ohms, got.Unmet, got.Score, got.Ratings, want, text)
 			return
 		}
 		unique := !slices.ContainsFunc(all, func(r result) bool {
-			return !slices.Equal(r.ohms, want.ohms) && r.burnt == want.burnt && !differ(r.miss, want.miss) && !differ(r.score, want.score)
+			return !slices.Equal(r.ohms, want.ohms) && r.burnt == want.burnt && !differ(r.miss, want.miss) && !differ(r.lost, want.lost) && !differ(r.score, want.score)
 		})
 		if unique && !slices.Equal(got.Ohms, want.ohms) {
 			t.Errorf("%s, place %d: %v, exhaustive has %v", name, i+1, got.Ohms, want.ohms)

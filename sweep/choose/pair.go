@@ -86,11 +86,15 @@ func (s *seeker) ideal(ohms []float64) []float64 {
 		if k.less(bestKey) {
 			best, bestKey = inside, k
 		}
-		// What is missed counts more than any deviation within the bands.
-		const burnt, missed, nowhere = 1e9, 1e3, 1e5
-		f := math.Min(k.score, nowhere) + missed*math.Min(k.miss, nowhere) + beyond
+		// What is missed counts more than any deviation within the bands, and what a hold
+		// misses less than the rest.
+		const burnt, off, missed, lost, nowhere = 1e13, 5e12, 1e6, 1e3, 1e5
+		f := math.Min(k.score, nowhere) + missed*math.Min(k.miss, nowhere) + lost*math.Min(k.lost, nowhere) + beyond
 		if k.burnt {
 			f += burnt
+		}
+		if k.off {
+			f += off
 		}
 		return f
 	}}

@@ -227,7 +227,7 @@ func (a *Answer) detail(ohms []float64) (Choice, error) {
 		}
 		return true
 	})
-	out.Unmet, out.Miss, out.Score = y.unmet, y.miss, y.score
+	out.Unmet, out.Miss, out.Score = y.unmet, math.Max(y.miss, y.lost), y.score
 	for i := range out.Requirements {
 		out.Requirements[i].Worst.Met = y.met[i]
 	}

@@ -313,16 +313,18 @@ func followers(c *netlist.Circuit) []bool {
 
 // A key orders combinations; see the package's documentation.
 type key struct {
-	burnt bool // a rating is exceeded
-	miss  float64
-	pairs int // resistors more than one a value
+	burnt bool    // a rating is exceeded
+	off   bool    // something is missed at the nominal point already
+	miss  float64 // of targets and keeps, the largest
+	lost  float64 // of the hold, the largest
+	pairs int     // resistors more than one a value
 	score float64
 	away  float64
 	at    int // place in the grid; pairs stand behind it
 }
 
 // worstKey is behind every other.
-var worstKey = key{burnt: true, miss: math.Inf(1), score: math.Inf(1), away: math.Inf(1), at: math.MaxInt}
+var worstKey = key{burnt: true, off: true, miss: math.Inf(1), lost: math.Inf(1), score: math.Inf(1), away: math.Inf(1), at: math.MaxInt}
 
 // less compares scores and distances to so many parts of a band or of an e-fold:
 // above what rounding does to a solution, below what matters.
@@ -331,9 +333,15 @@ func (a key) less(b key) bool {
 	switch {
 	case a.burnt != b.burnt:
 		return b.burnt
+	case a.whole() != b.whole():
+		return a.whole()
+	case a.off != b.off:
+		return b.off
 	case !alike(a.miss, b.miss, parts):
 		return a.miss < b.miss
-	case a.miss == 0 && a.pairs != b.pairs:
+	case !alike(a.lost, b.lost, parts):
+		return a.lost < b.lost
+	case a.whole() && a.pairs != b.pairs:
 		return a.pairs < b.pairs
 	case !alike(a.score, b.score, parts):
 		return a.score < b.score
@@ -342,6 +350,9 @@ func (a key) less(b key) bool {
 	}
 	return a.at < b.at
 }
+
+// whole tells that nothing is missed, as far as is known.
+func (a *key) whole() bool { return a.miss == 0 && a.lost == 0 }
 
 func alike(a, b, parts float64) bool {
 	return a == b || math.Round(a*parts) == math.Round(b*parts)
@@ -372,14 +383,18 @@ func (y *tally) add(g sight) {
 		}
 	}
 	if g.failed {
-		y.miss, y.score = math.Inf(1), math.Inf(1)
+		y.miss, y.lost, y.score = math.Inf(1), math.Inf(1), math.Inf(1)
 	}
 	for i := range g.verdicts {
 		v := &g.verdicts[i]
 		if v.Kind == "target" {
 			y.score = math.Max(y.score, Deviation(v))
 		}
-		if !v.Met {
+		switch {
+		case v.Met:
+		case v.Kind == "hold":
+			y.lost = math.Max(y.lost, missOf(v))
+		default:
 			y.miss = math.Max(y.miss, missOf(v))
 		}
 	}
@@ -634,6 +649,9 @@ func (t *trial) judge(ohms []float64, k, limit key) key {
 	last := 0
 	t.visit(ohms, t.order, func(probe int, g sight) bool {
 		y.add(g)
+		if probe == 0 { // the nominal point comes first
+			y.off = !y.whole()
+		}
 		last = probe
 		return y.key.less(limit)
 	})

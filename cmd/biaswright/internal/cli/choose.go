@@ -21,9 +21,10 @@ const defaultList = 5
 const chooseObjective = "Finds the resistances written ? E24: first the exact values that meet the targets, then the\n" +
 	"best of all combinations of preferred values (IEC 60063) from a tenth of the exact ones to ten\n" +
 	"times them. Best is, in this order, over the stated ranges and tolerances: no rating exceeded;\n" +
-	"targets, keeps and hold met, or else the largest miss smallest; the largest deviation of a\n" +
-	"target smallest, in units of its band. Where currents must not grow without need, say so in\n" +
-	"the file: keep VCC.I < 30 mA."
+	"targets, keeps and hold met, or else at the nominal point at least; the largest miss of a\n" +
+	"target or keep smallest, then that of the hold; the largest deviation of a target smallest,\n" +
+	"in units of its band. Where currents must not grow without need, say so in the file:\n" +
+	"keep VCC.I < 30 mA."
 
 func (r *runner) chooseCommand() *cli.Command {
 	return &cli.Command{
