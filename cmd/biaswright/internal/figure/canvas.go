@@ -1,6 +1,7 @@
 package figure
 
 import (
+	"cmp"
 	"image"
 	"image/draw"
 	"math"
@@ -136,32 +137,26 @@ func (c *canvas) level(s *Line) bool {
 		return false
 	}
 	a, b := s.Points[0], s.Points[1]
-	upright := a.X == b.X
-	if !upright && a.Y != b.Y {
+	dx, dy := cmp.Compare(b.X, a.X), cmp.Compare(b.Y, a.Y)
+	if dx != 0 && dy != 0 {
 		return false
 	}
 	width := s.Width
 	if width == 0 {
 		width = 1
 	}
+	at := func(along float64) image.Point {
+		return image.Pt(whole(c.x(a.X+float64(dx)*along)), whole(c.y(a.Y+float64(dy)*along)))
+	}
 	paint := image.NewUniform(light[s.Paint])
-	dashes(math.Abs(b.X-a.X)+math.Abs(b.Y-a.Y), s.Dash, func(from, to float64) {
-		stroke := image.Rect(0, 0, 0, 0)
-		if upright {
-			y := a.Y
-			if b.Y < a.Y {
-				from, to = -from, -to
-			}
-			stroke.Min.X, stroke.Max.X = c.thick(c.x(a.X), width)
-			stroke.Min.Y, stroke.Max.Y = whole(c.y(y+from)), whole(c.y(y+to))
+	dashes(math.Hypot(b.X-a.X, b.Y-a.Y), s.Dash, func(from, to float64) {
+		r := image.Rectangle{at(from), at(to)}.Canon()
+		if dx == 0 {
+			r.Min.X, r.Max.X = c.thick(c.x(a.X), width)
 		} else {
-			if b.X < a.X {
-				from, to = -from, -to
-			}
-			stroke.Min.X, stroke.Max.X = whole(c.x(a.X+from)), whole(c.x(a.X+to))
-			stroke.Min.Y, stroke.Max.Y = c.thick(c.y(a.Y), width)
+			r.Min.Y, r.Max.Y = c.thick(c.y(a.Y), width)
 		}
-		draw.Draw(c.img, stroke.Canon(), paint, image.Point{}, draw.Src)
+		draw.Draw(c.img, r, paint, image.Point{}, draw.Src)
 	})
 	return true
 }
@@ -190,7 +185,8 @@ func (c *canvas) thick(course, width float64) (from, to int) {
 	return from, from + across
 }
 
-func whole(pixels float64) int { return int(math.Round(pixels)) }
+// whole rounds to whole pixels, halves always up: the same in every strip.
+func whole(pixels float64) int { return int(math.Floor(pixels + 0.5)) }
 
 func (c *canvas) strokes(s *Strokes) {
 	for i := 0; i+1 < len(s.Points); i += 2 {
@@ -213,23 +209,48 @@ func (c *canvas) fill(fill, edge Paint, width float64) {
 }
 
 func (c *canvas) area(s *Area) {
-	fill := s.Fill
-	if box, level := c.box(s); level && fill != None { // whole pixels: sharper, and sooner done
-		draw.Draw(c.img, box, image.NewUniform(light[fill]), image.Point{}, draw.Src)
-		fill = None
+	if s.level() {
+		c.box(s)
+		return
 	}
 	c.trace(s.Points)
 	c.dc.ClosePath()
-	c.fill(fill, s.Edge, s.Width)
+	c.fill(s.Fill, s.Edge, s.Width)
 }
 
-// box is the area in pixels, if its edges are level.
-func (c *canvas) box(s *Area) (image.Rectangle, bool) {
+// level tells an area whose edges are level: as Box makes it, from the upper left corner.
+func (s *Area) level() bool {
 	p := s.Points
-	if len(p) != 4 || p[0].Y != p[1].Y || p[1].X != p[2].X || p[2].Y != p[3].Y || p[3].X != p[0].X {
-		return image.Rectangle{}, false
+	return len(p) == 4 && p[0].Y == p[1].Y && p[1].X == p[2].X && p[2].Y == p[3].Y && p[3].X == p[0].X
+}
+
+// box draws such an area in whole pixels: sharper, and sooner done.
+func (c *canvas) box(s *Area) {
+	a, b := s.Points[0], s.Points[2]
+	fill := func(r image.Rectangle, p Paint) {
+		draw.Draw(c.img, r, image.NewUniform(light[p]), image.Point{}, draw.Src)
 	}
-	return image.Rect(whole(c.x(p[0].X)), whole(c.y(p[0].Y)), whole(c.x(p[2].X)), whole(c.y(p[2].Y))), true
+	if s.Fill != None {
+		fill(image.Rect(whole(c.x(a.X)), whole(c.y(a.Y)), whole(c.x(b.X)), whole(c.y(b.Y))), s.Fill)
+	}
+	if s.Edge == None {
+		return
+	}
+	width := s.Width
+	if width == 0 {
+		width = 1
+	}
+	var left, right, above, below [2]int // where each edge begins and ends, across it
+	left[0], left[1] = c.thick(c.x(a.X), width)
+	right[0], right[1] = c.thick(c.x(b.X), width)
+	above[0], above[1] = c.thick(c.y(a.Y), width)
+	below[0], below[1] = c.thick(c.y(b.Y), width)
+	for _, r := range []image.Rectangle{
+		image.Rect(left[0], above[0], right[1], above[1]), image.Rect(left[0], below[0], right[1], below[1]),
+		image.Rect(left[0], above[0], left[1], below[1]), image.Rect(right[0], above[0], right[1], below[1]),
+	} {
+		fill(r, s.Edge)
+	}
 }
 
 func (c *canvas) dot(s *Dot) {
@@ -254,54 +275,4 @@ func (c *canvas) text(s *Text) {
 		Dot: fixed.Point26_6{X: fixed.Int26_6(math.Floor(c.x(left) * unit)), Y: fixed.I(whole(c.y(s.At.Y)))},
 	}
 	d.DrawString(s.Text)
-}
-
-const (
-	unit = 64       // of 26.6 fixed point, a pixel
-	step = unit / 4 // at which glyphs are drawn, across: no eye sees less
-)
-
-// glyphs are a face that draws each letter once, at each of four places in a pixel;
-// figures come again and again. Baselines lie on whole pixels.
-type glyphs struct {
-	font.Face
-	known map[glyphKey]glyph
-}
-
-type glyphKey struct {
-	r     rune
-	place fixed.Int26_6 // in a pixel, across
-}
-
-// A glyph is a letter's ink, with where it stands about its place.
-type glyph struct {
-	ink     *image.Alpha
-	about   image.Rectangle
-	advance fixed.Int26_6
-	ok      bool
-}
-
-// Glyph is font.Face's.
-func (g *glyphs) Glyph(dot fixed.Point26_6, r rune) (at image.Rectangle, ink image.Image, from image.Point, advance fixed.Int26_6, ok bool) {
-	x := (dot.X + step/2) / step * step
-	k := glyphKey{r, x & (unit - 1)}
-	known, seen := g.known[k]
-	if !seen {
-		known = g.draw(k)
-		g.known[k] = known
-	}
-	return known.about.Add(image.Pt(x.Floor(), dot.Y.Floor())), known.ink, image.Point{}, known.advance, known.ok
-}
-
-func (g *glyphs) draw(k glyphKey) glyph {
-	about, ink, from, advance, ok := g.Face.Glyph(fixed.Point26_6{X: k.place}, k.r)
-	own := image.NewAlpha(image.Rectangle{Max: about.Size()})
-	if of, alpha := ink.(*image.Alpha); ok && alpha { // the face uses its own again
-		for y := range about.Dy() {
-			copy(own.Pix[y*own.Stride:(y+1)*own.Stride], of.Pix[of.PixOffset(from.X, from.Y+y):])
-		}
-	} else if ok {
-		draw.Draw(own, own.Rect, ink, from, draw.Src)
-	}
-	return glyph{own, about, advance, ok}
 }

@@ -1,12 +1,15 @@
 package figure
 
 import (
+	"image"
+	"image/draw"
 	"sync"
 
 	"golang.org/x/image/font"
 	"golang.org/x/image/font/gofont/gobold"
 	"golang.org/x/image/font/gofont/goregular"
 	"golang.org/x/image/font/opentype"
+	"golang.org/x/image/math/fixed"
 )
 
 // The Go fonts, drawn by Bigelow & Holmes for the Go project, under its licence.
@@ -64,9 +67,58 @@ func TextWidth(text string, size float64, heavy bool) float64 {
 		if measure.faces[heavy] == nil {
 			measure.faces[heavy] = face(heavy, measureSize)
 		}
-		const fixed = 64 // 26.6 fixed point
-		w = float64(font.MeasureString(measure.faces[heavy], text)) / fixed / measureSize
+		w = float64(font.MeasureString(measure.faces[heavy], text)) / unit / measureSize
 		measure.widths[k] = w
 	}
 	return w * size
+}
+
+const (
+	unit = 64       // of 26.6 fixed point, a pixel
+	step = unit / 4 // at which glyphs are drawn, across: no eye sees less
+)
+
+// glyphs are a face that draws each letter once, at each of four places in a pixel;
+// figures come again and again. Baselines lie on whole pixels.
+type glyphs struct {
+	font.Face
+	known map[glyphKey]glyph
+}
+
+type glyphKey struct {
+	r     rune
+	place fixed.Int26_6 // in a pixel, across
+}
+
+// A glyph is a letter's ink, with where it stands about its place.
+type glyph struct {
+	ink     *image.Alpha
+	about   image.Rectangle
+	advance fixed.Int26_6
+	ok      bool
+}
+
+// Glyph is font.Face's.
+func (g *glyphs) Glyph(dot fixed.Point26_6, r rune) (at image.Rectangle, ink image.Image, from image.Point, advance fixed.Int26_6, ok bool) {
+	x := (dot.X + step/2) / step * step
+	k := glyphKey{r, x & (unit - 1)}
+	known, seen := g.known[k]
+	if !seen {
+		known = g.draw(k)
+		g.known[k] = known
+	}
+	return known.about.Add(image.Pt(x.Floor(), dot.Y.Floor())), known.ink, image.Point{}, known.advance, known.ok
+}
+
+func (g *glyphs) draw(k glyphKey) glyph {
+	about, ink, from, advance, ok := g.Face.Glyph(fixed.Point26_6{X: k.place}, k.r)
+	own := image.NewAlpha(image.Rectangle{Max: about.Size()})
+	if of, alpha := ink.(*image.Alpha); ok && alpha { // the face uses its own again
+		for y := range about.Dy() {
+			copy(own.Pix[y*own.Stride:(y+1)*own.Stride], of.Pix[of.PixOffset(from.X, from.Y+y):])
+		}
+	} else if ok {
+		draw.Draw(own, own.Rect, ink, from, draw.Src)
+	}
+	return glyph{own, about, advance, ok}
 }
