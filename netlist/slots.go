@@ -38,18 +38,30 @@ func (c *Circuit) Values() []float64 {
 // Propagate recomputes in place every slot of values that follows others. It
 // allocates nothing. The caller owns values (length len(c.Slots)).
 func (c *Circuit) Propagate(values []float64) {
+	c.PropagateWith(values, nil)
+}
+
+// PropagateWith is Propagate where some followers have a number of their own: own is
+// given each follower and the number that it would take, and returns the one that it
+// takes. What follows it follows that. A nil own leaves all as they are.
+func (c *Circuit) PropagateWith(values []float64, own func(id SlotID, number float64) float64) {
 	var short [shortExpr]float64
 	for i := range c.priv.followers {
 		f := &c.priv.followers[i]
+		number := 0.0
 		if f.expr == nil {
-			values[f.slot] = values[f.from]
-			continue
+			number = values[f.from]
+		} else {
+			vals := short[:]
+			if len(f.expr.ops) > shortExpr {
+				vals = make([]float64, len(f.expr.ops))
+			}
+			number, _ = f.expr.run(vals, values, nil)
 		}
-		vals := short[:]
-		if len(f.expr.ops) > shortExpr {
-			vals = make([]float64, len(f.expr.ops))
+		if own != nil {
+			number = own(f.slot, number)
 		}
-		values[f.slot], _ = f.expr.run(vals, values, nil)
+		values[f.slot] = number
 	}
 }
 

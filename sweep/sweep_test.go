@@ -177,6 +177,45 @@ func TestRowsEqualSolve(t *testing.T) {
 	}
 }
 
+// A value that follows others has the swept number all the same, and what follows it
+// follows that: each row must be what solve gives with the value set.
+func TestSweptFollowersAreFollowed(t *testing.T) {
+	c := read(t, `rail VCC = VS
+rail V2 = VH
+given VS = 10 V
+given VH = VS / 2
+given BF = 100
+given BG = BF * 2
+given RT = 1 kohm
+given RU = RT * 2
+given IT = VS / RT / 10
+part q npn Vbe = 0.65 V at 1 mA, betaF = BG
+path VCC -> R1 RU -> a -> Q1 q base=b -> gnd
+path V2 -> RB 100k -> b
+path VCC -> I1 IT -> c -> R3 RT -> gnd
+`)
+	show := []string{"R1.V / R1.I", "V2.V", "c.V", "a.V", "I1.I"}
+	for _, text := range []string{"RU=500,2k", "VH=3,6", "IT=1m,3m", "BG=50,300", "q.betaF=50,300", "VS=5,12", "BF=50,150", "RT=500,2k", "VCC=5,12", "Q1.betaF=30,60"} {
+		a := axis(t, c, text, 2, false)
+		for i, row := range rows(t, sweep.Plan{Circuit: c, Axes: []sweep.Axis{a}, Show: show}) {
+			changed, list := c.With(netlist.Setting{Name: strings.TrimSuffix(a.Name, ".V"), Value: fmt.Sprint(a.Values[i])})
+			if list.HasErrors() {
+				t.Fatal(list[0].Message)
+			}
+			res, err := solve.Solve(changed, solve.Options{})
+			if err != nil {
+				t.Fatal(err)
+			}
+			for k, q := range show {
+				e, _ := changed.ParseExpr(q)
+				if want, _ := e.Eval(res.Point); math.Abs(row.Values[k]-want) > 1e-9*math.Abs(want) {
+					t.Errorf("%s at %g: %s = %.12g, solve gives %.12g", text, a.Values[i], q, row.Values[k], want)
+				}
+			}
+		}
+	}
+}
+
 func TestSameRowsWhateverTheWorkers(t *testing.T) {
 	c := shipped(t, "mast-lamp.bias")
 	text := func(workers int) string {

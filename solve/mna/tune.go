@@ -2,6 +2,7 @@ package mna
 
 import (
 	"math"
+	"slices"
 
 	"biaswright/netlist"
 )
@@ -12,6 +13,7 @@ type Tuner struct {
 	s        *System
 	slots    []netlist.SlotID
 	follow   bool             // other slots follow the moved ones
+	pinned   bool             // a moved slot would itself follow others
 	offsets  bool             // ideal branches move
 	base     bool             // resistors or sources move
 	devices  []int32          // devices whose coefficients move
@@ -20,7 +22,8 @@ type Tuner struct {
 	scale    float64
 }
 
-// NewTuner prepares to move these slots of s, each a number of its own.
+// NewTuner prepares to move these slots of s. One that follows others has a number of its
+// own from the first Set on.
 func (s *System) NewTuner(slots ...netlist.SlotID) *Tuner {
 	t := &Tuner{s: s, slots: slots, scale: s.startCurrent()}
 	moved := s.touched(slots)
@@ -31,6 +34,9 @@ func (s *System) NewTuner(slots ...netlist.SlotID) *Tuner {
 		}
 	}
 	t.follow = own > len(slots)
+	for _, id := range slots {
+		t.pinned = t.pinned || s.circuit.Follows(id)
+	}
 	for _, b := range s.forest.branches {
 		if b.slot != netlist.None && moved[b.slot] {
 			t.offsets = true
@@ -81,7 +87,12 @@ func (s *System) touched(slots []netlist.SlotID) []bool {
 	for _, id := range slots {
 		values[id] = math.NaN()
 	}
-	s.circuit.Propagate(values)
+	s.circuit.PropagateWith(values, func(id netlist.SlotID, number float64) float64 {
+		if slices.Contains(slots, id) {
+			return math.NaN()
+		}
+		return number
+	})
 	moved := make([]bool, len(values))
 	for i, v := range values {
 		moved[i] = math.IsNaN(v) && !math.IsNaN(s.values[i])
@@ -125,7 +136,15 @@ func (t *Tuner) Set(numbers ...float64) bool {
 	for i, id := range t.slots {
 		s.values[id] = numbers[i]
 	}
-	if t.follow {
+	switch {
+	case t.follow && t.pinned:
+		s.circuit.PropagateWith(s.values, func(id netlist.SlotID, number float64) float64 {
+			if i := slices.Index(t.slots, id); i >= 0 {
+				return numbers[i]
+			}
+			return number
+		})
+	case t.follow:
 		s.circuit.Propagate(s.values)
 	}
 	if t.offsets {

@@ -279,35 +279,51 @@ func (x *exhaustive) turned(at *netlist.Circuit, p *solve.Point, values []float6
 // moved puts every tolerance at the end that moves what has the derivatives d up or
 // down; nil where none does.
 func (x *exhaustive) moved(at *netlist.Circuit, values, d []float64, up bool) []float64 {
-	out := slices.Clone(values)
-	any := false
-	for _, givens := range []bool{true, false} {
-		for _, group := range x.drawn {
-			if slices.Contains(at.Givens, group[0]) != givens {
-				continue
-			}
-			sum := 0.0
-			for _, id := range group {
-				low, high := ends(&at.Slots[id], values[id])
-				sum += d[id] * (high - low)
-			}
-			for _, id := range group {
-				if d[id] == 0 {
-					continue
-				}
-				any = true
-				low, high := ends(&at.Slots[id], out[id])
-				if out[id] = low; sum > 0 == up {
-					out[id] = high
-				}
-			}
+	raised := map[netlist.SlotID]bool{}
+	for _, group := range x.drawn {
+		sum := 0.0
+		for _, id := range group {
+			low, high := ends(&at.Slots[id], values[id])
+			sum += d[id] * (high - low)
 		}
-		if givens {
-			at.Propagate(out)
+		for _, id := range group {
+			if d[id] != 0 {
+				raised[id] = sum > 0 == up
+			}
 		}
 	}
-	if !any {
+	if len(raised) == 0 {
 		return nil
+	}
+	// One at a time, as a file reads: each number is that of what it follows, as drawn, and
+	// keeps its own end while later ones are drawn.
+	out := slices.Clone(values)
+	own := map[netlist.SlotID]float64{}
+	keep := func(id netlist.SlotID, number float64) float64 {
+		if v, ok := own[id]; ok {
+			return v
+		}
+		return number
+	}
+	draw := func(id netlist.SlotID) {
+		high, drawn := raised[id]
+		if _, done := own[id]; !drawn || done {
+			return
+		}
+		low, top := ends(&at.Slots[id], out[id])
+		if own[id] = low; high {
+			own[id] = top
+		}
+		out[id] = own[id]
+		at.PropagateWith(out, keep)
+	}
+	for _, id := range at.Givens {
+		draw(id)
+	}
+	for _, group := range x.drawn {
+		for _, id := range group {
+			draw(id)
+		}
 	}
 	return out
 }

@@ -260,7 +260,6 @@ func rangesOf(c *netlist.Circuit) []End {
 // variablesOf lists what has a tolerance: given values, then the elements' numbers in
 // file order; what a batch draws together is one.
 func variablesOf(c *netlist.Circuit, more []End) []variable {
-	follows := followers(c)
 	var out []variable
 	batched := map[[2]int]int{} // batch and place within an element -> index into out
 	add := func(id netlist.SlotID, batch, place int) {
@@ -271,7 +270,7 @@ func variablesOf(c *netlist.Circuit, more []End) []variable {
 		if !s.Bounds.Stated || math.IsNaN(s.Value) || s.Bounds.Low == s.Bounds.High && s.Bounds.Relative == 0 {
 			return
 		}
-		d := draw{id, follows[id]}
+		d := draw{id, c.Follows(id)}
 		if at, known := batched[[2]int{batch, place}]; known && batch >= 0 {
 			out[at] = append(out[at], d)
 			return
@@ -290,22 +289,6 @@ func variablesOf(c *netlist.Circuit, more []End) []variable {
 		batch := slices.IndexFunc(c.Batches, func(b []int) bool { return slices.Contains(b, i) })
 		for place, id := range append([]netlist.SlotID{e.Value, e.TC, e.Size}, e.Params...) {
 			add(id, batch, place)
-		}
-	}
-	return out
-}
-
-// followers marks the numbers that follow others: they alone recover from being
-// spoilt.
-func followers(c *netlist.Circuit) []bool {
-	values := c.Values()
-	out := make([]bool, len(values))
-	for i := range values {
-		if was := values[i]; !math.IsNaN(was) {
-			values[i] = math.NaN()
-			c.Propagate(values)
-			out[i] = !math.IsNaN(values[i])
-			values[i] = was
 		}
 	}
 	return out
@@ -605,7 +588,8 @@ func (t *trial) gain(b *bench, r *requirement) []float64 {
 func (t *trial) turn(b *bench, gain []float64, up bool) ([]End, bool) {
 	copy(t.values, b.s.Values())
 	var ends []End
-	for _, following := range []bool{false, true} { // a drawn follower stands after what it followed
+	followers := 0 // of the ends, behind the others
+	for _, following := range []bool{false, true} {
 		for _, v := range t.variables {
 			high := t.slope(b, gain, v) > 0 == up
 			for _, d := range v {
@@ -613,18 +597,30 @@ func (t *trial) turn(b *bench, gain []float64, up bool) ([]End, bool) {
 					continue
 				}
 				e := End{Name: t.c.Slots[d.slot].Name, Slot: d.slot, High: high}
-				e.Value = d.end(t.c, t.values[d.slot], high)
-				t.values[d.slot] = e.Value
+				if following {
+					followers++
+				} else {
+					e.Value = d.end(t.c, t.values[d.slot], high)
+					t.values[d.slot] = e.Value
+				}
 				ends = append(ends, e)
 			}
-		}
-		if !following {
-			b.c.Propagate(t.values)
 		}
 	}
 	if len(ends) == 0 {
 		return nil, false
 	}
+	// What follows a drawn number follows it as drawn, and is then drawn itself.
+	drawn := ends[len(ends)-followers:]
+	b.c.PropagateWith(t.values, func(id netlist.SlotID, number float64) float64 {
+		for i := range drawn {
+			if e := &drawn[i]; e.Slot == id {
+				e.Value = draw{slot: id}.end(t.c, number, e.High)
+				return e.Value
+			}
+		}
+		return number
+	})
 	s := t.spread
 	s.s.Apply(t.values)
 	s.startFrom(b)

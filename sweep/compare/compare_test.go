@@ -325,3 +325,35 @@ func BenchmarkFive(b *testing.B) {
 		}
 	}
 }
+
+// Tolerances of a value derived from another, and of a resistor that takes a given value:
+// each its own draw about what it follows. By Ohm's law over all corners.
+func TestDerivedTolerances(t *testing.T) {
+	top := compare.Of(read(t, "x.bias", []byte(`rail V = 10 V
+given RX = 1 kohm 5%
+given W = RX * 2 3%
+path V -> R1 W 2% -> a -> R2 1k 1% -> gnd
+path a -> R3 RX -> gnd
+target a.V = 2 V within 10%
+`)), 1)
+	if top.Failure != nil {
+		t.Fatal(top.Failure)
+	}
+	low, high := math.Inf(1), math.Inf(-1)
+	for corner := range 16 {
+		side := func(bit int, tolerance float64) float64 {
+			if corner>>bit&1 == 1 {
+				return 1 + tolerance
+			}
+			return 1 - tolerance
+		}
+		rx := 1000 * side(0, .05)
+		r1, r2 := 2*rx*side(1, .03)*side(2, .02), 1000*side(3, .01)
+		below := 1 / (1/r2 + 1/rx)
+		v := 10 * below / (r1 + below)
+		low, high = math.Min(low, v), math.Max(high, v)
+	}
+	if got := top.Resistors; math.Abs(got.Low-low) > 1e-9 || math.Abs(got.High-high) > 1e-9 {
+		t.Errorf("over tolerance %.9g .. %.9g V, by hand %.9g .. %.9g V", got.Low, got.High, low, high)
+	}
+}

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"biaswright/netlist"
@@ -29,7 +30,7 @@ func (t *Topology) spans() error {
 		case parameter == "betaF":
 			betas = varies(c, betas, netlist.SlotID(i))
 		case !of && c.Slots[i].Unit == quantity.Ohm: // a resistor's, or a given one
-			resistors = varies(c, resistors, netlist.SlotID(i))
+			resistors = tolerates(c, resistors, netlist.SlotID(i))
 		}
 	}
 	m := &mover{c: c, q: t.Target.Q, nominal: t.Limits.Nominal, value: t.Value}
@@ -57,9 +58,17 @@ func (t *Topology) spans() error {
 	return nil
 }
 
-// varies adds a slot that has a range of its own.
+// varies adds a slot that has a range and does not follow another.
 func varies(c *netlist.Circuit, list []netlist.SlotID, id netlist.SlotID) []netlist.SlotID {
-	if b := &c.Slots[id].Bounds; b.Stated && b.Low < b.High && !c.Follows(id) {
+	if c.Follows(id) {
+		return list
+	}
+	return tolerates(c, list, id)
+}
+
+// tolerates adds a slot that has a range of its own, about whatever number it has.
+func tolerates(c *netlist.Circuit, list []netlist.SlotID, id netlist.SlotID) []netlist.SlotID {
+	if b := &c.Slots[id].Bounds; b.Stated && b.Low < b.High {
 		list = append(list, id)
 	}
 	return list
@@ -84,23 +93,47 @@ func (m *mover) span(slots []netlist.SlotID) (Span, error) {
 	if err != nil {
 		return Span{}, err
 	}
-	low, high := make([]float64, len(slots)), make([]float64, len(slots))
-	for i, id := range slots {
-		b := &m.c.Slots[id].Bounds
-		low[i], high[i] = b.Low, b.High
-		if slope[id] < 0 {
-			low[i], high[i] = high[i], low[i]
-		}
-	}
 	out := Span{m.value, m.value}
-	for _, corner := range [][]float64{low, high} {
-		v, _, err := m.at(slots, corner)
+	for _, up := range []bool{false, true} {
+		v, _, err := m.at(slots, m.corner(slots, func(id netlist.SlotID) bool { return slope[id] >= 0 == up }))
 		if err != nil {
 			return Span{}, err
 		}
 		out = out.with(v)
 	}
 	return out, nil
+}
+
+// corner is the slots' values at the ends of their ranges, the high end where high says
+// so: of one that follows others, about the number that they have there.
+func (m *mover) corner(slots []netlist.SlotID, high func(netlist.SlotID) bool) []float64 {
+	end := func(id netlist.SlotID, number float64) float64 {
+		b := &m.c.Slots[id].Bounds
+		low, top := b.Low, b.High
+		if b.Relative != 0 {
+			low, top = number*(1-b.Relative), number*(1+b.Relative)
+			low, top = math.Min(low, top), math.Max(low, top)
+		}
+		if high(id) {
+			return top
+		}
+		return low
+	}
+	values := m.c.Values()
+	for _, id := range slots {
+		values[id] = end(id, values[id])
+	}
+	m.c.PropagateWith(values, func(id netlist.SlotID, number float64) float64 {
+		if slices.Contains(slots, id) {
+			return end(id, number)
+		}
+		return number
+	})
+	out := make([]float64, len(slots))
+	for i, id := range slots {
+		out[i] = values[id]
+	}
+	return out
 }
 
 func (s Span) with(v float64) Span { return Span{math.Min(s.Low, v), math.Max(s.High, v)} }
