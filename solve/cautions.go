@@ -17,7 +17,9 @@ import (
 //   - "slip": Rating names what looks like a slip, Value is its number, Limit the
 //     bound of what is usual that it passes;
 //   - "hot": element Subject, without a stated rating, dissipates Value;
-//   - "bright": emitter Subject runs at Value.
+//   - "bright": emitter Subject runs at Value;
+//   - "impossible": element Subject carries Value, which nothing survives, and far
+//     beyond which the models are not those of any part.
 //
 // Value and Limit are in SI units.
 type Caution struct {
@@ -38,6 +40,9 @@ const (
 	// brightCurrent in A: emitters driven harder are lamps to be judged by IEC
 	// 62471 (common practice: the 350 mA class).
 	brightCurrent = 0.35
+	// impossibleCurrent in A: far above what any part of a bias network, or the wire to it,
+	// carries (common practice). A junction straight across a supply gets there.
+	impossibleCurrent = 1e4
 	// betaVoltage in V at 25 degC: a base-emitter junction beyond it is in high
 	// injection, where beta falls (common practice).
 	betaVoltage = 0.8
@@ -97,6 +102,9 @@ func elementCautions(p *Point, i int) []Caution {
 			power = math.Max(power, m.P)
 		}
 	}
+	if most := mostCurrent(ep); most > impossibleCurrent {
+		add(Caution{Kind: "impossible", Value: most, Limit: impossibleCurrent})
+	}
 	rated := false
 	switch e.Kind {
 	case netlist.Resistor:
@@ -133,6 +141,17 @@ func elementCautions(p *Point, i int) []Caution {
 		add(Caution{Kind: "hot", Value: power, Limit: hotPower})
 	}
 	return out
+}
+
+// mostCurrent is the largest current of an element's terminals.
+func mostCurrent(ep *ElementPoint) float64 {
+	most := 0.0
+	for _, i := range []float64{ep.I, ep.Ic, ep.Ib, ep.Ie} {
+		if i = math.Abs(i); i > most { // false for a NaN
+			most = i
+		}
+	}
+	return most
 }
 
 // exceedsPart compares with the ratings of a part, in its own order, and tells

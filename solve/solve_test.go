@@ -279,6 +279,8 @@ func TestCautions(t *testing.T) {
 		{"a resistor of 10 mΩ", "rail V = 10 V\npath V -> R1 10k -> a -> R2 10 mohm -> gnd\n", "slip R2 ohms"},
 		{"a diode that drops 2 V", "rail V = 10 V\npart x diode drop = 2 V at 10 mA\npath V -> R1 1k -> a -> D1 x -> gnd\n", "slip x drop"},
 		{"a transistor at amps", "rail V = 10 V\npart q npn Vbe = 0.65 V at 1 mA\npath V -> R1 0.5 20 W -> c -> Q1 q base=V -> e -> R2 3 50 W -> gnd\n", "beta-current Q1"},
+		{"a base without its resistor", "rail V = 5 V\npart q npn Vbe = 0.65 V at 1 mA\npath V -> R1 1k -> c -> Q1 q base=V -> gnd\n", "impossible Q1"},
+		{"a diode across a supply", "rail V = 3 V\npart d diode drop = 0.62 V at 1 mA, n = 1.8\npath V -> D1 d -> gnd\n", "impossible D1"},
 		{"a bright emitter", "rail V = 10 V\npart x led drop = 3 V at 350 mA, Pmax = 5 W\npath V -> R1 15 10 W -> a -> D1 x -> gnd\n", "bright D1"},
 	} {
 		t.Run(test.name, func(t *testing.T) {

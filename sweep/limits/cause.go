@@ -5,6 +5,7 @@ import (
 	"sort"
 
 	"biaswright/netlist"
+	"biaswright/solve/mna"
 )
 
 // A Cause is why a circuit stops holding, in figures; words are made of it
@@ -17,9 +18,7 @@ type Cause struct {
 	// Slope is dQ/d(axis) at the limit, in the held quantity's unit over the
 	// axis's; NaN where it does not exist. Relative is Slope over Q.
 	Slope, Relative float64
-	// Carrier is the element that passes on most of Slope, and Share its part.
-	Carrier string
-	Share   float64
+	Carrier
 	// Value is the held quantity at the limit.
 	Value float64
 }
@@ -46,7 +45,7 @@ const starving = 0.25
 // explain compares the circuit at the limit with the nominal one.
 func (a *Answer) explain(ax *axis, side Side) Cause {
 	p := side.Point
-	c := Cause{Slope: math.NaN(), Relative: math.NaN(), Value: math.NaN()}
+	c := Cause{Slope: math.NaN(), Relative: math.NaN(), Carrier: Carrier{Share: math.NaN()}, Value: math.NaN()}
 	if v, ok := a.Hold.Q.Eval(p); ok {
 		c.Value = v
 	}
@@ -78,13 +77,43 @@ func (a *Answer) explain(ax *axis, side Side) Cause {
 		c.Relative = c.Slope / c.Value
 	}
 	if shares, err := p.Contributions(a.Hold.Q, ax.slot); err == nil && c.Slope != 0 {
-		for _, s := range shares {
-			if share := s.Amount / c.Slope; share > c.Share {
-				c.Carrier, c.Share = ax.c.Elements[s.Element].Name, share
-			}
-		}
+		c.Carrier = carrier(ax.c, shares, c.Slope)
 	}
 	return c
+}
+
+// A Carrier is the element that passes on most of a slope: Through, with its Share of it.
+// Where another takes much of that back, as a reference diode does from the junction that
+// it makes up for, that one is Against. Where contributions cancel altogether, or many
+// carry a little, there is none, "" and NaN.
+type Carrier struct {
+	Through, Against string
+	Share            float64
+}
+
+func carrier(c *netlist.Circuit, shares []mna.Contribution, slope float64) Carrier {
+	const (
+		least = 0.5 // less is not most of it
+		much  = 1.5 // more, and another takes back half of the slope
+		most  = 3   // more, and what is left of so much tells nothing of any one part
+	)
+	out, largest, smallest := Carrier{Share: math.NaN()}, math.Inf(-1), math.Inf(1)
+	for _, s := range shares {
+		of := s.Amount / slope
+		if of > largest {
+			out.Through, largest = c.Elements[s.Element].Name, of
+		}
+		if of < smallest {
+			out.Against, smallest = c.Elements[s.Element].Name, of
+		}
+	}
+	if !(largest >= least && largest <= most) {
+		return Carrier{Share: math.NaN()}
+	}
+	if out.Share = largest; largest <= much {
+		out.Against = ""
+	}
+	return out
 }
 
 // conducts tells a junction that carried more than leakage at the nominal point.

@@ -23,7 +23,7 @@ func ExampleFind() {
 		return
 	}
 	l := a.Limits[0]
-	fmt.Printf("%s: %.2f .. %.2f V, %s, through %s\n", l.Axis, l.Low.At, l.High.At, l.Low.Reason, l.Low.Cause.Carrier)
+	fmt.Printf("%s: %.2f .. %.2f V, %s, through %s\n", l.Axis, l.Low.At, l.High.At, l.Low.Reason, l.Low.Cause.Through)
 	// Output:
 	// VCC.V: 8.10 .. 9.90 V, band, through R1
 }

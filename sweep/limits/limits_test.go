@@ -258,7 +258,7 @@ func TestDividerFollowsItsSupply(t *testing.T) {
 	if math.Abs(low.At-7.4) > 0.6 || low.Reason != limits.Band {
 		t.Errorf("22 %% less at %.3g V (%s), want near 7.5 V", low.At, low.Reason)
 	}
-	if len(low.Cause.Left) != 0 || low.Cause.Carrier != "RU" || low.Cause.Share < 0.8 {
+	if len(low.Cause.Left) != 0 || low.Cause.Through != "RU" || low.Cause.Share < 0.8 {
 		t.Errorf("cause %+v: no part left its region, and RU carries the drift", low.Cause)
 	}
 	d := find(t, diodeSink)
@@ -459,6 +459,26 @@ func TestHoldsBetweenTheLimits(t *testing.T) {
 					t.Errorf("%s: %s still holds at %g, beyond its limit %g", name, l.Axis, past, side.At)
 				}
 			}
+		}
+	}
+}
+
+// Where contributions cancel no part is named: a cascoded pair whose emitter resistor and
+// junction undo each other, beside the Early effect of the mirror's output, which is what
+// moves the current (switched off, 95 % of the slope is gone).
+func TestCancellingPartsCarryNothing(t *testing.T) {
+	const text = `rail VCC = 10 V
+rail VB = 3 V
+part q npn Vbe = 0.66 V at 2 mA, betaF = 150, VA = 60 V
+part p pnp Veb = 0.64 V at 1 mA, betaF = 90, VA = 40 V
+path VB -> R1 10k -> b
+path VCC -> Q2 p base=m -> m -> Q1 q base=b -> e -> RE 1k -> gnd
+path VCC -> Q3 p base=m -> out -> RL 400 -> gnd
+hold RL.I within 5%
+`
+	for _, r := range find(t, text).Regulation {
+		if r.Axis == "VCC.V" && (r.Through != "" || !math.IsNaN(r.Share)) {
+			t.Errorf("VCC.V acts through %s, %g of it", r.Through, r.Share)
 		}
 	}
 }

@@ -16,9 +16,7 @@ type Regulation struct {
 	// Absolute is dQ/dx, Relative that over Q; Resistance |dx/dQ| in ohm for a
 	// current Q and a voltage x, else NaN.
 	Absolute, Relative, Resistance float64
-	// Carrier is the element that passes on most of it, and Share its part.
-	Carrier string
-	Share   float64
+	Carrier
 }
 
 // regulate fills in the regulation of every axis that was searched.
@@ -58,11 +56,7 @@ func (a *Answer) slope(name string, p *solve.Point, slot netlist.SlotID) error {
 	if err != nil {
 		return err
 	}
-	for _, s := range shares {
-		if share := s.Amount / d[slot]; share > r.Share {
-			r.Carrier, r.Share = p.Circuit.Elements[s.Element].Name, share
-		}
-	}
+	r.Carrier = carrier(p.Circuit, shares, d[slot])
 	a.Regulation = append(a.Regulation, r)
 	return nil
 }

@@ -82,7 +82,7 @@ func (r *runner) fill(a *render.Answer, nominal *netlist.Circuit, o solve.Option
 		}
 	}
 	for _, c := range a.Cautions {
-		if c.Kind == "rating" {
+		if c.Kind == "rating" || c.Kind == "impossible" {
 			r.raise(exitNotMet)
 		}
 	}

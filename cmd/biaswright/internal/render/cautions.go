@@ -66,6 +66,8 @@ func CautionText(c *solve.Caution) string {
 	case "bright":
 		return fmt.Sprintf("%s runs at %s: do not look into a bright emitter, infrared least of all, which the eye does not see; IEC 62471 says how its light is judged.",
 			c.Subject, Measured(c.Value, "A"))
+	case "impossible":
+		return fmt.Sprintf("%s carries %s, which nothing survives, and of which no model knows anything: is a resistor missing, or a part the wrong way round?", c.Subject, Measured(c.Value, "A"))
 	default:
 		return fmt.Sprintf("%s: %s.", c.Subject, c.Kind)
 	}

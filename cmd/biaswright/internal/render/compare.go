@@ -320,8 +320,8 @@ func whyText(t *compare.Topology, l *limits.Limit, high bool) string {
 		return "the circuit collapses"
 	case left != "":
 		return left
-	case side.Cause.Carrier != "":
-		return moved + ", most of it through " + side.Cause.Carrier
+	case side.Cause.Through != "":
+		return moved + ", most of it through " + carrierText(&side.Cause.Carrier)
 	}
 	return moved
 }

@@ -52,6 +52,9 @@ func LimitsScreen(w io.Writer, a *LimitsAnswer, l Look) error {
 	found := a.Limits
 	printSketch(p, a.Sketch, l)
 	wrap(p, "", l.text(HoldText(a)))
+	if found.Nominal.Unstable {
+		wrap(p, "", l.paint(unstableText, bad))
+	}
 	fmt.Fprintln(p)
 	printLimits(p, a, l)
 	fmt.Fprintln(p)
@@ -71,6 +74,9 @@ func LimitsScreen(w io.Writer, a *LimitsAnswer, l Look) error {
 	}
 	return p.err
 }
+
+// unstableText stands where limits are those of a point that --near asked for.
+const unstableText = "This point cannot be stable: no real circuit stays there, and its limits are of theory."
 
 // HoldText says what is held.
 func HoldText(a *LimitsAnswer) string {
@@ -212,10 +218,18 @@ func driftText(a *limits.Answer, lim *limits.Limit, c *limits.Cause) string {
 	if !math.IsNaN(c.Relative) {
 		says += ", " + slopeText(c.Relative, lim.Unit) + " there"
 	}
-	if c.Carrier != "" {
-		says += ", most of it through " + c.Carrier
+	if through := carrierText(&c.Carrier); through != "" {
+		says += ", most of it through " + through
 	}
 	return says
+}
+
+// carrierText names what passes on most of a slope, and what takes much of that back.
+func carrierText(c *limits.Carrier) string {
+	if c.Against == "" {
+		return c.Through
+	}
+	return c.Through + ", against " + c.Against
 }
 
 // slopeText writes a relative slope: %/V, or ppm/K for a temperature.
@@ -262,7 +276,10 @@ func printRegulation(w io.Writer, a *limits.Answer, l Look) {
 		if !math.IsNaN(g.Resistance) {
 			r[regResistance] = cell{l.text(resistanceText(g.Resistance)), noInk}
 		}
-		r[regCarrier] = cell{l.text(g.Carrier), noInk}
+		r[regCarrier] = cell{l.text(carrierText(&g.Carrier)), noInk}
+		if g.Through == "" && g.Relative != 0 {
+			r[regCarrier] = cell{"no single part", noInk}
+		}
 		t.add(row{cells: r})
 	}
 	t.print(w, l)

@@ -65,6 +65,7 @@ type regulationJSON struct {
 	Relative   num     `json:"relative"`
 	Resistance num     `json:"resistance"`
 	Through    *string `json:"through"`
+	Against    *string `json:"against"`
 	Share      num     `json:"share"`
 }
 
@@ -108,7 +109,7 @@ func LimitsJSON(a *LimitsAnswer) any {
 	}
 	for _, r := range a.Limits.Regulation {
 		j.Regulation = append(j.Regulation, regulationJSON{
-			r.Axis, num(r.Absolute), num(r.Relative), num(r.Resistance), orNull(r.Carrier), num(r.Share),
+			r.Axis, num(r.Absolute), num(r.Relative), num(r.Resistance), orNull(r.Through), orNull(r.Against), num(r.Share),
 		})
 	}
 	if l := a.Limits.Load; l != nil {
@@ -126,7 +127,7 @@ func side(a *limits.Answer, l *limits.Limit, s limits.Side) sideJSON {
 		return j
 	}
 	j.Value, j.Relative = num(s.Cause.Value), num(s.Cause.Relative)
-	j.Part = orNull(s.Cause.Carrier)
+	j.Part = orNull(s.Cause.Through)
 	for i, p := range s.Cause.Left {
 		if i == 0 {
 			j.Part = &p.Name
