@@ -150,7 +150,7 @@ func (p *Point) setStates() {
 		}
 		collector, base, vbc, vbe := p.state.Saturation(i)
 		switch {
-		case math.Abs(ep.Ic) < offShare*largest && math.Abs(ep.Ie) < offShare*largest:
+		case math.Abs(ep.Ic) <= offShare*largest && math.Abs(ep.Ie) <= offShare*largest: // all at 0 too
 			ep.State = "off"
 		case vbc > 0 && vbc > vbe:
 			ep.State = "reverse"

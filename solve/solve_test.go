@@ -234,6 +234,17 @@ func TestStates(t *testing.T) {
 	}
 }
 
+// Where nothing flows at all a transistor is off, and its junctions are at the ambient to
+// the last digit.
+func TestAtRest(t *testing.T) {
+	p := point(t, "rail V = 0 V\nambient = 46.98 degC\npart q npn Vbe = 0.65 V at 1 mA\npath V -> R1 1k -> c -> Q1 q base=c -> gnd\n").Point
+	for i := range p.Elements {
+		if p.Circuit.Elements[i].Name == "Q1" && (p.Elements[i].State != "off" || p.Elements[i].Tj != 46.98) {
+			t.Errorf("%s at %v degC, want off at 46.98", p.Elements[i].State, p.Elements[i].Tj)
+		}
+	}
+}
+
 func point0(t testing.TB, c *netlist.Circuit) *solve.Point {
 	t.Helper()
 	r, err := solve.Solve(c, solve.Options{})

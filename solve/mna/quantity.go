@@ -305,7 +305,8 @@ func (st *State) temperature(index, member int, seed *Seed, weight float64) (flo
 	if seed != nil {
 		seed.slot[st.s.circuit.Ambient] += weight
 	}
-	return st.s.kelvin[first] - zeroCelsius, true
+	ambient := st.s.values[st.s.circuit.Ambient]
+	return ambient + (st.s.kelvin[first] - (ambient + zeroCelsius)), true // to the last digit where it is the ambient
 }
 
 func (st *State) transistor(e *netlist.Element, index int, symbol string, seed *Seed, weight float64) (float64, bool) {
