@@ -5,9 +5,9 @@
 // Every combination is judged by solving the circuit itself: at the nominal point,
 // at every combination of the ends of the stated rail and ambient ranges, and at
 // each of these with the tolerances turned against each requirement in turn (the
-// corner that the signs of the exact derivatives show, then solved; where a quantity turns
-// round within its tolerances, as at the edge of saturation, another corner may be a
-// little worse). What is best is decided in this order:
+// corner that the signs of the exact derivatives show, and then the one that they show
+// there; where a quantity turns round within its tolerances, as at the edge of
+// saturation, yet another corner may be a little worse). What is best is decided in this order:
 //
 //  1. no stated rating is exceeded at any end of the ranges;
 //  2. targets, keeps and hold are met there, or else at the nominal point at least;

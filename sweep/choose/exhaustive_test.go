@@ -234,44 +234,63 @@ func (x *exhaustive) judge(ohms []float64) result {
 		for _, caution := range solve.Cautions(p) {
 			r.burnt = r.burnt || caution.Kind == "rating"
 		}
-		for _, turned := range x.turned(at.c, p, values) {
-			see(cold(at.moved, turned))
+		for _, l := range x.leans(at.c) {
+			for _, up := range l.ups {
+				first := x.moved(at.c, values, l.d(p), up)
+				if first == nil {
+					continue
+				}
+				there := cold(at.moved, first)
+				see(there)
+				if there == nil {
+					continue
+				}
+				// The derivatives there may point elsewhere.
+				if second := x.moved(at.c, values, l.d(there), up); second != nil && !slices.Equal(first, second) {
+					see(cold(at.moved, second))
+				}
+			}
 		}
 	}
 	r.unmet = len(unmet)
 	return r
 }
 
-// turned are the numbers with their tolerances against each requirement: a keep is hurt
-// one way, a target or hold both ways.
-func (x *exhaustive) turned(at *netlist.Circuit, p *solve.Point, values []float64) [][]float64 {
-	slope := func(q *netlist.Expr) []float64 {
+// A lean is what tolerances are turned against: derivatives at a point, and the ways that
+// hurt.
+type lean struct {
+	d   func(p *solve.Point) []float64
+	ups []bool
+}
+
+// leans are a keep one way, a target or hold both ways.
+func (x *exhaustive) leans(at *netlist.Circuit) []lean {
+	slope := func(p *solve.Point, q *netlist.Expr) []float64 {
 		_, d, err := p.Sensitivity(q)
 		if err != nil {
 			x.t.Fatal(err)
 		}
 		return d
 	}
-	var out [][]float64
-	against := func(d []float64, ups ...bool) {
-		for _, up := range ups {
-			if v := x.moved(at, values, d, up); v != nil {
-				out = append(out, v)
-			}
-		}
+	var out []lean
+	both := func(q *netlist.Expr) {
+		out = append(out, lean{func(p *solve.Point) []float64 { return slope(p, q) }, []bool{false, true}})
 	}
 	for i := range at.Targets {
-		against(slope(at.Targets[i].Q), false, true)
+		both(at.Targets[i].Q)
 	}
 	for i := range at.Keeps {
-		d := slope(at.Keeps[i].Left)
-		for k, less := range slope(at.Keeps[i].Right) {
-			d[k] -= less
-		}
-		against(d, !at.Keeps[i].Greater)
+		k := &at.Keeps[i]
+		out = append(out, lean{func(p *solve.Point) []float64 {
+			d := slope(p, k.Left)
+			for i, less := range slope(p, k.Right) {
+				d[i] -= less
+			}
+			return d
+		}, []bool{!k.Greater}})
 	}
 	if at.Hold != nil {
-		against(slope(at.Hold.Q), false, true)
+		both(at.Hold.Q)
 	}
 	return out
 }

@@ -506,8 +506,14 @@ func (t *trial) visit(ohms []float64, order []int, tell func(probe int, g sight)
 		if k == 0 {
 			continue
 		}
-		if g, ok := t.look(t.probes[k]); ok && !tell(k, g) {
+		g, ok := t.look(t.probes[k])
+		if ok && !tell(k, g) {
 			return
+		}
+		if ok && !g.failed && t.probes[k].against >= 0 {
+			if g, ok = t.lookAgain(t.probes[k]); ok && !tell(k, g) {
+				return
+			}
 		}
 	}
 }
@@ -565,6 +571,24 @@ func (t *trial) lookAgainst(b *bench, p probe) (sight, bool) {
 		g.verdicts = t.verdicts(t.spread.state)
 	}
 	return g, true
+}
+
+// lookAgain turns the tolerances by the derivatives where lookAgainst has turned them to.
+// It reports false where that is the same corner.
+func (t *trial) lookAgain(p probe) (sight, bool) {
+	b := t.corners[p.corner]
+	before, now := b.gains[p.against].d, t.gain(t.spread, &t.requirements[p.against])
+	if now == nil || !slices.ContainsFunc(t.variables, func(v variable) bool {
+		return t.slope(b, before, v) > 0 != (t.slope(b, now, v) > 0)
+	}) {
+		return sight{}, false
+	}
+	ends, ok := t.turn(b, now, p.up)
+	g := sight{ends: append(slices.Clip(b.ends), ends...), failed: !ok}
+	if ok {
+		g.verdicts = t.verdicts(t.spread.state)
+	}
+	return g, len(ends) > 0
 }
 
 // gain is the derivative of left less right by slot; nil where there is none.
