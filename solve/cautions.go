@@ -184,11 +184,18 @@ var (
 	usualParam    = map[string]map[string]usual{
 		"diode": {"drop": {0.15, 1.3}, "n": {0.9, 3}},
 		"led":   {"drop": {1, 5}, "n": {0.9, 6}},
-		"zener": {"Vz": {1.8, 200}},
+		"zener": {"Vz": {1.8, 200}, "drop": {0.4, 1.3}},
 		"npn":   {"Vbe": {0.4, 0.9}, "betaF": {5, 5000}, "VA": {5, math.Inf(1)}, "n": {0.9, 2.1}},
 		"pnp":   {"Veb": {0.4, 0.9}, "betaF": {5, 5000}, "VA": {5, math.Inf(1)}, "n": {0.9, 2.1}},
 	}
 )
+
+// Usual is the range, in SI units, in which a parameter of a kind of part commonly lies;
+// ok is false where none is known. What lies outside is rarer than a slip.
+func Usual(kind, param string) (low, high float64, ok bool) {
+	u, ok := usualParam[kind][param]
+	return u.low, u.high, ok
+}
 
 // slips lists numbers that look like slips, in elements and parts that are used.
 func slips(c *netlist.Circuit) []Caution {

@@ -374,6 +374,25 @@ part sig diode drop = 0.62 V at 1 mA`+c.text+"\nhand Q1.Ic = 1 mA"))
 	}
 }
 
+// What no part can be explains nothing: a base-emitter voltage of a volt.
+func TestImpossibleSuspectsAreLeftOut(t *testing.T) {
+	a := check(t, read(t, "test.bias", `rail VCC = 12 V
+part gp npn Vbe = 0.65 V at 1 mA, betaF = 150
+path VCC -> R1 6.8k -> b -> R2 1.2k -> gnd
+path VCC -> RC 470 -> c -> Q1 gp base=b -> e -> RE 220 -> gnd
+hand e.V = 1 V
+measured e.V = 0.6 V
+`))
+	for _, s := range a.Suspects {
+		if s.Name == "gp.Vbe" && s.To > 0.9 {
+			t.Errorf("%s = %g is to explain %g", s.Name, s.To, s.Explained)
+		}
+	}
+	if len(a.Suspects) == 0 {
+		t.Error("nothing explains a reading that a resistor does")
+	}
+}
+
 // A transistor that stands on gnd and is driven by resistors into saturation is judged as
 // a switch, whatever saturation costs; one with an emitter resistor, in a mirror or in
 // its active region is not.

@@ -213,7 +213,7 @@ func (f *fit) suspects(slopes [][]float64) []Suspect {
 	slices.SortStableFunc(guesses, func(x, y guess) int { return cmp.Compare(y.explained, x.explained) })
 	var out []Suspect
 	for _, g := range guesses[:min(tried, len(guesses))] {
-		if s, ok := f.solve(g.slot); ok && s.Explained >= alike {
+		if s, ok := f.solve(g.slot); ok && s.Explained >= alike && possible(c, &s) {
 			out = append(out, s)
 		}
 	}
@@ -237,6 +237,24 @@ func (f *fit) suspects(slopes [][]float64) []Suspect {
 		return cmp.Compare(x.widths(c), y.widths(c))
 	})
 	return out
+}
+
+// possible tells that a suspect would need a number that such a part may have.
+func possible(c *netlist.Circuit, s *Suspect) bool {
+	of, param, _ := strings.Cut(s.Name, ".")
+	kind := ""
+	for i := range c.Parts {
+		if c.Parts[i].Name == of {
+			kind = c.Parts[i].Kind.Name
+		}
+	}
+	for i := range c.Elements {
+		if e := &c.Elements[i]; e.Name == of && e.Part != netlist.None {
+			kind = c.Parts[e.Part].Kind.Name
+		}
+	}
+	low, high, known := solve.Usual(kind, param)
+	return !known || s.To >= low && s.To <= high
 }
 
 // relative is a difference of the k-th measured value over that value.
