@@ -37,7 +37,7 @@ func (s scale) in(x float64) float64 {
 
 // number writes x, already in its column's unit, with four significant digits
 // from 0.1 up, three below it, and a power of ten where a row of zeros would
-// follow the point.
+// follow the point, or digits that mean nothing stand before it.
 func number(x float64) string {
 	switch a := math.Abs(x); {
 	case math.IsNaN(x):
@@ -50,6 +50,8 @@ func number(x float64) string {
 		return "0"
 	case a < 1e-4: // four zeros after the point are no longer read at a glance
 		return power(x, 2)
+	case a >= 1e9: // of no use in any unit; all its digits would tell of rounding
+		return power(x, digits-1)
 	case a < 0.1:
 		return significant(x, digits-1)
 	default:

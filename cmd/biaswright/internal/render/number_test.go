@@ -22,6 +22,8 @@ func TestNumberShowsThreeToFourDigits(t *testing.T) {
 		{999.96, "1000"},
 		{123456, "123456"},
 		{1.2e-9, "1.20e-9"},
+		{2519149744431524352, "2.519e18"},
+		{-12595748722157621248, "-1.260e19"},
 		{math.Inf(1), "infinite"},
 		{math.NaN(), "-"},
 	} {
