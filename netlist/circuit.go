@@ -16,6 +16,8 @@
 package netlist
 
 import (
+	"math"
+
 	"biaswright/netlist/diag"
 	"biaswright/netlist/quantity"
 )
@@ -236,6 +238,15 @@ type Target struct {
 	Within   float64
 	Relative bool
 	Span     diag.Span
+}
+
+// Band is what the target allows, in Q's unit.
+func (t *Target) Band() (low, high float64) {
+	w := t.Within
+	if t.Relative {
+		w *= math.Abs(t.Value)
+	}
+	return t.Value - w, t.Value + w
 }
 
 // A Keep is a bound: Left < Right, or Left > Right where Greater.

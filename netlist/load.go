@@ -12,8 +12,8 @@ const LoadName = "load.V"
 // HoldLoad returns a copy of c in which the declared load is an ideal voltage, in V
 // along the load's path: what a compliance run does. The voltage is a slot of its
 // own, "load.V", which Lookup and With know. The load's current stays the I of its
-// elements; their other quantities have no number any more. A later With must not
-// change the count of a row. Without a load, c itself is returned.
+// elements; their other quantities have no number any more. Without a load, c itself is
+// returned.
 func (c *Circuit) HoldLoad(volts float64) *Circuit {
 	if len(c.Load) == 0 {
 		return c

@@ -54,6 +54,9 @@ func (c *Circuit) With(settings ...Setting) (*Circuit, diag.List) {
 		if fresh == nil {
 			return nil, diags
 		}
+		if c.LoadHeld { // the tree knows nothing of it
+			fresh = fresh.HoldLoad(c.Value(c.LoadVolts))
+		}
 		ch.c, kept = fresh.copy(), all
 	}
 	for _, s := range kept {

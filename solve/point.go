@@ -35,6 +35,10 @@ type InnerPoint struct {
 // A RailPoint is what a rail delivers, in V, A and W.
 type RailPoint struct{ V, I, P float64 }
 
+// Delivers is the current in A that the rail gives to the circuit, whichever its polarity;
+// 0 where it takes some.
+func (r *RailPoint) Delivers() float64 { return math.Max(0, r.I*math.Copysign(1, r.V)) }
+
 // An ElementPoint is an element's quantities in SI units; V and I run along its
 // arrow. A transistor has no V and I (NaN).
 type ElementPoint struct {

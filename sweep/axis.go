@@ -8,6 +8,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -212,10 +213,20 @@ func (a *Axis) ratios(from, to float64, points int) error {
 		case points - 1:
 			a.Values = append(a.Values, to)
 		default:
-			a.Values = append(a.Values, from*math.Pow(to/from, float64(i)/float64(points-1)))
+			a.Values = append(a.Values, byRatio(from, to, float64(i)/float64(points-1)))
 		}
 	}
 	return nil
+}
+
+// byRatio is from (to/from)^f.
+func byRatio(from, to, f float64) float64 {
+	if ratio := to / from; ratio != 0 && !math.IsInf(ratio, 0) {
+		return from * math.Pow(ratio, f)
+	}
+	// In two halves: the ratio is more than a double holds.
+	half := math.Pow(math.Sqrt(math.Abs(to))/math.Sqrt(math.Abs(from)), f)
+	return from * half * half
 }
 
 // settings are the settings that put value i in force, exact to the last digit.
@@ -239,6 +250,15 @@ func (a *Axis) slots(c *netlist.Circuit) []netlist.SlotID {
 		out[k], _ = c.Lookup(name)
 	}
 	return out
+}
+
+// Overlaps tells whether two axes move one value.
+func (a *Axis) Overlaps(c *netlist.Circuit, b *Axis) bool {
+	if a.row != "" || b.row != "" {
+		return a.row == b.row
+	}
+	mine := a.slots(c)
+	return slices.ContainsFunc(b.slots(c), func(id netlist.SlotID) bool { return slices.Contains(mine, id) })
 }
 
 // inside tells whether a value lies in a slot's stated range; where none is stated,

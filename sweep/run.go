@@ -2,6 +2,7 @@ package sweep
 
 import (
 	"context"
+	"math"
 
 	"biaswright/netlist"
 	"biaswright/solve"
@@ -44,15 +45,20 @@ type Plan struct {
 	// axis is to be near; the others follow it, as long as its branch goes on.
 	Near map[netlist.NodeID]float64
 	// From, where set, is a point of this circuit at the first value of the innermost axis,
-	// to begin with sooner than Near does; one of another structure is passed over.
+	// to begin with sooner than Near does; one with another number of unknowns is passed
+	// over.
 	From *solve.Point
 }
 
-// Points is how many rows the plan has.
+// Points is how many rows the plan has, math.MaxInt where that is more.
 func (p *Plan) Points() int {
 	n := 1
 	for i := range p.Axes {
-		n *= len(p.Axes[i].Values)
+		values := len(p.Axes[i].Values)
+		if values > 0 && n > math.MaxInt/values {
+			return math.MaxInt
+		}
+		n *= values
 	}
 	return n
 }
@@ -79,7 +85,7 @@ func Run(ctx context.Context, p Plan, emit func(Row) error) error {
 	defer cancel()
 	inner := len(p.Axes[len(p.Axes)-1].Values)
 	runs := p.Points() / max(inner, 1)
-	workers := max(p.Workers, 1)
+	workers := max(min(p.Workers, runs), 1)
 	// Each run has its own channel, and they are read in order; a slot is taken
 	// before a run starts, so that at most that many are ahead.
 	slots := make(chan struct{}, workers)

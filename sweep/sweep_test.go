@@ -216,6 +216,31 @@ path VCC -> I1 IT -> c -> R3 RT -> gnd
 	}
 }
 
+// With the load's voltage held, the number in its row does not matter, and moving it is no
+// harm, in either order of the axes.
+func TestRowsOfAHeldLoad(t *testing.T) {
+	c := shipped(t, "mast-lamp.bias")
+	res, err := solve.Solve(c, solve.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	held := c.HoldLoad(res.Point.LoadV)
+	volts, lots := axis(t, held, "load.V=1V..9V", 2, false), axis(t, held, "LAMP.row=1..3", 2, false)
+	for _, axes := range [][]sweep.Axis{{volts, lots}, {lots, volts}} {
+		want := map[float64]float64{} // current by load voltage
+		for _, r := range rows(t, sweep.Plan{Circuit: held, Axes: axes, Show: []string{"LAMP.I"}}) {
+			at := r.At[0]
+			if axes[1].Name == volts.Name {
+				at = r.At[1]
+			}
+			if was, seen := want[at]; r.Status != sweep.OK || seen && math.Abs(r.Values[0]/was-1) > 1e-9 {
+				t.Errorf("%v: %v, %s", r.At, r.Values, r.Status)
+			}
+			want[at] = r.Values[0]
+		}
+	}
+}
+
 func TestSameRowsWhateverTheWorkers(t *testing.T) {
 	c := shipped(t, "mast-lamp.bias")
 	text := func(workers int) string {

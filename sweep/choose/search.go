@@ -232,7 +232,7 @@ func (a *Answer) detail(ohms []float64) (Choice, error) {
 		out.Requirements[i].Worst.Met = y.met[i]
 	}
 	for _, r := range out.Nominal.Rails {
-		out.Draw += math.Max(0, r.I)
+		out.Draw += r.Delivers()
 	}
 	return out, nil
 }

@@ -102,7 +102,7 @@ func (t *Topology) power(p *solve.Point) {
 	watts := 0.0
 	for _, r := range p.Rails {
 		watts += r.P
-		t.SupplyCurrent += math.Max(0, r.I*math.Copysign(1, r.V))
+		t.SupplyCurrent += r.Delivers()
 	}
 	t.Efficiency = math.NaN()
 	if len(t.Circuit.Load) > 0 {

@@ -4,6 +4,7 @@ import (
 	"math"
 	"strconv"
 
+	"biaswright/cmd/biaswright/internal/render"
 	"biaswright/netlist/quantity"
 )
 
@@ -23,7 +24,7 @@ type axis struct {
 // symbol takes one fixed prefix where it takes any.
 func newAxis(low, high float64, unit string, logarithmic bool, most int) *axis {
 	a := &axis{low: low, high: high, log: logarithmic, symbol: unit}
-	if prefixable(unit) {
+	if render.Prefixable(unit) {
 		const enough = 3 // digits by which the largest number is judged
 		p := quantity.CommonPrefix([]float64{low, high}, enough)
 		a.ten, a.symbol = p.Ten, p.Symbol+unit
@@ -34,15 +35,6 @@ func newAxis(low, high float64, unit string, logarithmic bool, most int) *axis {
 		a.even(most)
 	}
 	return a
-}
-
-// prefixable tells whether an SI prefix may stand before a unit.
-func prefixable(unit string) bool {
-	switch unit {
-	case "", "°C", "%", "1/K":
-		return false
-	}
-	return true
 }
 
 // title is "VCC.V [V]".

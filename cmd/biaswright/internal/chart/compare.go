@@ -87,11 +87,8 @@ func (p *Plot) topology(name string, i int, t *compare.Topology, axis string) er
 		p.XUnit, p.YUnit = l.Unit.Symbol(), t.Limits.Hold.Q.Unit.Symbol()
 		p.YName = t.Limits.Hold.Q.Text
 		if len(p.Bands) == 0 && t.Target.Q.Text == t.Limits.Hold.Q.Text {
-			w := t.Target.Within
-			if t.Target.Relative {
-				w *= t.Target.Value
-			}
-			p.Bands = append(p.Bands, Range{t.Target.Value - w, t.Target.Value + w})
+			low, high := t.Target.Band()
+			p.Bands = append(p.Bands, Range{low, high})
 		}
 		if !p.Focus.there() {
 			p.Focus = around(t.Limits.Hold.Nominal)

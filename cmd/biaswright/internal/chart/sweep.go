@@ -195,11 +195,8 @@ func (s *Sweep) bounds(p *Plot, e *netlist.Expr) {
 	c := s.answer.Circuit
 	for i := range c.Targets {
 		if t := &c.Targets[i]; t.Q.Text == e.Text {
-			w := t.Within
-			if t.Relative {
-				w *= math.Abs(t.Value)
-			}
-			p.Bands = append(p.Bands, Range{t.Value - w, t.Value + w})
+			low, high := t.Band()
+			p.Bands = append(p.Bands, Range{low, high})
 		}
 	}
 	if q, within, relative := solve.HoldOf(c); len(p.Bands) == 0 && q != nil && q.Text == e.Text && s.nominal != nil {

@@ -58,6 +58,7 @@ func (r *runner) compare(c *cli.Context) error {
 	case c.Bool("json"):
 		return r.writeAll([]any{render.CompareJSON(a)})
 	case c.Bool("csv"):
+		r.diagnose(a.Warnings)
 		err = render.CompareCSV(r.out, a)
 	default:
 		r.diagnose(a.Warnings)

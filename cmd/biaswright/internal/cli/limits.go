@@ -51,7 +51,7 @@ func (r *runner) limits(c *cli.Context) error {
 	if q.workers < 1 {
 		return usagef("--workers %d: at least one must work", q.workers)
 	}
-	if text := c.String("within"); text != "" {
+	if text := c.String("within"); c.IsSet("within") {
 		reading, err := quantity.Parse(text)
 		if err != nil || !(reading.Value > 0) {
 			return &usageError{fmt.Sprintf("--within %q is no width", text), "write --within 2% or --within 10mV"}

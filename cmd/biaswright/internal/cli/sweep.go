@@ -182,7 +182,7 @@ func (r *runner) plan(name string, q *sweepRequest) (*render.SweepAnswer, *sweep
 	}
 	a := &render.SweepAnswer{File: in.name, Circuit: c, Set: q.set, Warnings: in.warnings}
 	p := &sweep.Plan{Workers: q.workers, Near: in.near}
-	if res, err := solve.Solve(c, solve.Options{}); err == nil {
+	if res, err := solve.Solve(c, solve.Options{Near: in.near}); err == nil {
 		p.Nominal = res.Point // what a hold is judged against
 	} else if sweepsLoad(q.over) {
 		a.Failure = failure(err)
@@ -238,6 +238,11 @@ func (r *runner) axes(p *sweep.Plan, q *sweepRequest) *diag.Diagnostic {
 			e, _ := sweep.IsError(err)
 			return &diag.Diagnostic{Code: "axis", Message: "--over " + text + ": " + e.Message, Hint: e.Hint}
 		}
+		for i := range p.Axes {
+			if axis.Overlaps(p.Circuit, &p.Axes[i]) {
+				return &diag.Diagnostic{Code: "axis", Message: "--over " + text + ": " + p.Axes[i].Name + " is swept over already"}
+			}
+		}
 		p.Axes = append(p.Axes, axis)
 	}
 	for _, name := range q.log {
@@ -247,7 +252,7 @@ func (r *runner) axes(p *sweep.Plan, q *sweepRequest) *diag.Diagnostic {
 	}
 	const most = 100_000_000 // rows; a day's work, and surely a slip
 	if n := p.Points(); n > most {
-		return &diag.Diagnostic{Code: "axis", Message: fmt.Sprintf("%d rows are too many", n)}
+		return &diag.Diagnostic{Code: "axis", Message: fmt.Sprintf("more than %d rows are too many", most)}
 	}
 	return nil
 }

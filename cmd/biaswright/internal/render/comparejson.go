@@ -72,11 +72,8 @@ func CompareJSON(a *CompareAnswer) any {
 }
 
 func targetJSON(t *netlist.Target) *holdJSON {
-	w := t.Within
-	if t.Relative {
-		w *= math.Abs(t.Value)
-	}
-	return &holdJSON{t.Q.Text, t.Q.Unit.String(), num(t.Value), [2]num{num(t.Value - w), num(t.Value + w)}}
+	low, high := t.Band()
+	return &holdJSON{t.Q.Text, t.Q.Unit.String(), num(t.Value), [2]num{num(low), num(high)}}
 }
 
 func topology(a *CompareAnswer, t *compare.Topology, i int, rows []compare.Row) topologyJSON {

@@ -91,7 +91,7 @@ func stated(x float64, unit string) string {
 	// Volts and ohms of the usual size stand as they are: 0.65 V, 0.1 Ω.
 	const least, most = 0.01, 1000
 	plain := (unit == "V" || unit == "Ω") && math.Abs(x) >= least && math.Abs(x) < most
-	if !plain && prefixable(unit) {
+	if !plain && Prefixable(unit) {
 		s = scaleFor(x)
 	}
 	const atMost = 6 // enough for any stated value, and hides binary fractions
@@ -102,7 +102,7 @@ func stated(x float64, unit string) string {
 // Measured writes a number with its own prefix and four significant digits.
 func Measured(x float64, unit string) string {
 	s := noScale
-	if prefixable(unit) {
+	if Prefixable(unit) {
 		s = scaleFor(x)
 	}
 	return strings.TrimRight(number(s.in(x))+" "+s.prefix+unit, " ")

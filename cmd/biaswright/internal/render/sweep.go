@@ -168,7 +168,7 @@ func (s *sweepScreen) End() error {
 		} else {
 			name, unit = s.a.Show[i-axes].Text, s.a.Show[i-axes].Unit.Symbol()
 		}
-		if prefixable(unit) {
+		if Prefixable(unit) {
 			scales[i] = scaleFor(s.column(i)...)
 		}
 		if unit != "" {

@@ -80,7 +80,7 @@ type verdictFigures struct {
 
 func figuresOf(v *solve.Verdict, unit string) verdictFigures {
 	f := verdictFigures{unit: unit, digits: digits}
-	if prefixable(unit) {
+	if Prefixable(unit) {
 		f.actual = scaleFor(v.Value, v.Low, v.High)
 		f.bound = f.actual
 		const apart = 0.01 // the smaller would have lost two of its digits
@@ -174,8 +174,8 @@ func withinText(x float64, relative bool, unit string) string {
 	return stated(x, unit)
 }
 
-// prefixable tells the units that the trade writes with SI prefixes.
-func prefixable(unit string) bool {
+// Prefixable tells the units that the trade writes with SI prefixes.
+func Prefixable(unit string) bool {
 	switch unit {
 	case "V", "A", "W", "Ω", "S", "V/K":
 		return true

@@ -40,3 +40,13 @@ func TestDerivedGivenIsDrawn(t *testing.T) {
 		}
 	}
 }
+
+// What a negative rail delivers counts like a positive one's: by Ohm's law.
+func TestDrawOfANegativeRail(t *testing.T) {
+	a := find(t, "rail VEE = -12 V\npath gnd -> RA 1k -> m -> RB ? E24 -> VEE\ntarget m.V = -4 V within 20%")
+	for _, c := range a.Choices {
+		if want := 12 / (1000 + c.Ohms[0]); !close(c.Draw, want, 1e-9) {
+			t.Errorf("RB %g draws %g A, want %g A", c.Ohms[0], c.Draw, want)
+		}
+	}
+}
