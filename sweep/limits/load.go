@@ -65,7 +65,11 @@ func (a *Answer) window(c *netlist.Circuit, l *Load, lim *Limit) {
 		if s.Limited() {
 			return s.At, s.Point
 		}
-		p, err := cold(c.HoldLoad(s.SearchedTo))
+		held, start, err := a.heldLoad(c)
+		if err != nil {
+			return s.SearchedTo, nil
+		}
+		p, err := solve.Onward(held.HoldLoad(s.SearchedTo), start)
 		if err != nil {
 			return s.SearchedTo, nil
 		}

@@ -44,11 +44,14 @@ func (a *Answer) regulate(c *netlist.Circuit) error {
 
 func (a *Answer) slope(name string, p *solve.Point, slot netlist.SlotID) error {
 	q := a.Hold.Q
+	unit := p.Circuit.Slots[slot].Unit
 	value, d, err := p.Sensitivity(q)
-	if err != nil {
-		return err
+	if err != nil { // such as at the root of 0: there is no slope, and all else stands
+		none := math.NaN()
+		a.Regulation = append(a.Regulation, Regulation{Axis: name, Unit: unit, Absolute: none, Relative: none, Resistance: none, Carrier: Carrier{Share: none}})
+		return nil
 	}
-	r := Regulation{Axis: name, Unit: p.Circuit.Slots[slot].Unit, Absolute: d[slot], Relative: d[slot] / value, Resistance: math.NaN()}
+	r := Regulation{Axis: name, Unit: unit, Absolute: d[slot], Relative: d[slot] / value, Resistance: math.NaN()}
 	if q.Unit == quantity.Ampere && r.Unit == quantity.Volt {
 		r.Resistance = math.Abs(1 / d[slot])
 	}

@@ -277,7 +277,7 @@ func printRegulation(w io.Writer, a *limits.Answer, l Look) {
 			r[regResistance] = cell{l.text(resistanceText(g.Resistance)), noInk}
 		}
 		r[regCarrier] = cell{l.text(carrierText(&g.Carrier)), noInk}
-		if g.Through == "" && g.Relative != 0 {
+		if g.Through == "" && g.Relative != 0 && !math.IsNaN(g.Relative) {
 			r[regCarrier] = cell{"no single part", noInk}
 		}
 		t.add(row{cells: r})
