@@ -49,9 +49,22 @@ func ChooseScreen(w io.Writer, a *ChooseAnswer, l Look) error {
 	printChosen(p, found, l)
 	if a.Written != "" {
 		fmt.Fprintln(p)
-		wrap(p, "", l.text("Choice 1 is written to "+a.Written+"."))
+		wrap(p, "", l.text(writtenText(a)))
 	}
 	return p.err
+}
+
+// writtenText says where the best choice went, and what of this run did not.
+func writtenText(a *ChooseAnswer) string {
+	says := "Choice 1 is written to " + a.Written + "."
+	if len(a.Set) == 0 {
+		return says
+	}
+	var set []string
+	for _, s := range a.Set {
+		set = append(set, s.String())
+	}
+	return says + " It was chosen with " + strings.Join(set, ", ") + ", which is not written: the copy has the file's own values."
 }
 
 // The columns of the open values.
