@@ -141,6 +141,20 @@ func ends(value, relative float64) (low, high float64) {
 	return math.Min(low, high), math.Max(low, high)
 }
 
+// End is one end of the bounds about a number, both in the slot's unit: of a percentage that
+// of the number given, which the slot may have elsewhere than in its circuit; else the
+// stated one.
+func (b *Bounds) End(number float64, high bool) float64 {
+	low, top := b.Low, b.High
+	if b.Relative != 0 {
+		low, top = ends(number, b.Relative)
+	}
+	if high {
+		return top
+	}
+	return low
+}
+
 // Follows tells whether a slot has no number of its own, but that of others: an element's
 // parameter its part's, a value the given value that stands for it.
 func (c *Circuit) Follows(id SlotID) bool { return c.Slots[id].def.follows }

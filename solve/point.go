@@ -203,6 +203,18 @@ func (p *Point) railCurrents() float64 {
 	return sum
 }
 
+// Volts are the voltages in V of all nodes but gnd, as Options.Near has them; the caller owns
+// the map.
+func (p *Point) Volts() map[netlist.NodeID]float64 {
+	out := make(map[netlist.NodeID]float64, len(p.NodeV))
+	for node, v := range p.NodeV {
+		if id := netlist.NodeID(node); id != netlist.Gnd {
+			out[id] = v
+		}
+	}
+	return out
+}
+
 // Unknowns are the solver's unknowns at the point, in V; read only.
 func (p *Point) Unknowns() []float64 { return p.x }
 

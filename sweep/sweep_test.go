@@ -151,34 +151,38 @@ func TestRowsOfADivider(t *testing.T) {
 	}
 }
 
-// Each row must be what solve gives for that circuit alone.
-func TestRowsEqualSolve(t *testing.T) {
-	c := shipped(t, "mast-lamp.bias")
-	show := []string{"LAMP.I", "Q1.Vce", "VCC.P"}
-	for _, text := range []string{"VCC=2V..20V", "ambient=-40degC..80degC", "gp.betaF=20..500", "RE=10..1k", "LAMP.row=1..6", "sig.Rbulk=0ohm..10ohm", "RE=100,47,0,51", "RE=30..0"} {
-		a := axis(t, c, text, 7, false)
-		for i, row := range rows(t, sweep.Plan{Circuit: c, Axes: []sweep.Axis{a}, Show: show}) {
-			changed, list := c.With(netlist.Setting{Name: strings.TrimSuffix(a.Name, ".V"), Value: fmt.Sprint(a.Values[i])})
-			if list.HasErrors() {
-				t.Fatal(list[0].Message)
-			}
-			res, err := solve.Solve(changed, solve.Options{})
-			if err != nil {
-				t.Fatal(err)
-			}
-			for k, q := range show {
-				e, _ := changed.ParseExpr(q)
-				want, _ := e.Eval(res.Point)
-				if math.Abs(row.Values[k]-want) > 1e-9*math.Abs(want) {
-					t.Errorf("%s at %g: %s = %.12g, solve gives %.12g", text, a.Values[i], q, row.Values[k], want)
-				}
+// equalSolve holds each row of a sweep against what solve gives with the value set.
+func equalSolve(t *testing.T, c *netlist.Circuit, over string, show []string) {
+	t.Helper()
+	a := axis(t, c, over, 7, false)
+	for i, row := range rows(t, sweep.Plan{Circuit: c, Axes: []sweep.Axis{a}, Show: show}) {
+		changed, list := c.With(netlist.Setting{Name: strings.TrimSuffix(a.Name, ".V"), Value: fmt.Sprint(a.Values[i])})
+		if list.HasErrors() {
+			t.Fatal(list[0].Message)
+		}
+		res, err := solve.Solve(changed, solve.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for k, q := range show {
+			e, _ := changed.ParseExpr(q)
+			want, _ := e.Eval(res.Point)
+			if math.Abs(row.Values[k]-want) > 1e-9*math.Abs(want) {
+				t.Errorf("%s at %g: %s = %.12g, solve gives %.12g", over, a.Values[i], q, row.Values[k], want)
 			}
 		}
 	}
 }
 
+func TestRowsEqualSolve(t *testing.T) {
+	c := shipped(t, "mast-lamp.bias")
+	for _, over := range []string{"VCC=2V..20V", "ambient=-40degC..80degC", "gp.betaF=20..500", "RE=10..1k", "LAMP.row=1..6", "sig.Rbulk=0ohm..10ohm", "RE=100,47,0,51", "RE=30..0"} {
+		equalSolve(t, c, over, []string{"LAMP.I", "Q1.Vce", "VCC.P"})
+	}
+}
+
 // A value that follows others has the swept number all the same, and what follows it
-// follows that: each row must be what solve gives with the value set.
+// follows that.
 func TestSweptFollowersAreFollowed(t *testing.T) {
 	c := read(t, `rail VCC = VS
 rail V2 = VH
@@ -194,25 +198,8 @@ path VCC -> R1 RU -> a -> Q1 q base=b -> gnd
 path V2 -> RB 100k -> b
 path VCC -> I1 IT -> c -> R3 RT -> gnd
 `)
-	show := []string{"R1.V / R1.I", "V2.V", "c.V", "a.V", "I1.I"}
-	for _, text := range []string{"RU=500,2k", "VH=3,6", "IT=1m,3m", "BG=50,300", "q.betaF=50,300", "VS=5,12", "BF=50,150", "RT=500,2k", "VCC=5,12", "Q1.betaF=30,60"} {
-		a := axis(t, c, text, 2, false)
-		for i, row := range rows(t, sweep.Plan{Circuit: c, Axes: []sweep.Axis{a}, Show: show}) {
-			changed, list := c.With(netlist.Setting{Name: strings.TrimSuffix(a.Name, ".V"), Value: fmt.Sprint(a.Values[i])})
-			if list.HasErrors() {
-				t.Fatal(list[0].Message)
-			}
-			res, err := solve.Solve(changed, solve.Options{})
-			if err != nil {
-				t.Fatal(err)
-			}
-			for k, q := range show {
-				e, _ := changed.ParseExpr(q)
-				if want, _ := e.Eval(res.Point); math.Abs(row.Values[k]-want) > 1e-9*math.Abs(want) {
-					t.Errorf("%s at %g: %s = %.12g, solve gives %.12g", text, a.Values[i], q, row.Values[k], want)
-				}
-			}
-		}
+	for _, over := range []string{"RU=500,2k", "VH=3,6", "IT=1m,3m", "BG=50,300", "q.betaF=50,300", "VS=5,12", "BF=50,150", "RT=500,2k", "VCC=5,12", "Q1.betaF=30,60"} {
+		equalSolve(t, c, over, []string{"R1.V / R1.I", "V2.V", "c.V", "a.V", "I1.I"})
 	}
 }
 

@@ -18,5 +18,15 @@ func Text(name string) ([]byte, bool) {
 	return slices.Clone(generic), true
 }
 
+// All returns the text of every shelf by its name, as netlist.Files has them; the caller
+// owns them.
+func All() map[string][]byte {
+	out := map[string][]byte{}
+	for _, name := range Names() {
+		out[name], _ = Text(name)
+	}
+	return out
+}
+
 // Names lists the shelves.
 func Names() []string { return []string{"generic"} }

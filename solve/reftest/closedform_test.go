@@ -11,6 +11,7 @@ import (
 
 	"biaswright/devices"
 	"biaswright/devices/physics"
+	"biaswright/devices/shelf"
 	"biaswright/netlist"
 	"biaswright/solve"
 )
@@ -31,7 +32,7 @@ func TestDiodeResistorByWrightOmega(t *testing.T) {
 		n := rapid.Float64Range(1, 2).Draw(r, "n")
 		text := fmt.Sprintf("rail VS = %s V\npart d diode Isat = %s A, n = %s\npath VS -> R1 %s -> a -> D1 d -> gnd\n",
 			number(volts), number(isat), number(n), number(ohms))
-		c, list := netlist.Read("closed.bias", []byte(text), devices.Catalogue(), library{})
+		c, list := netlist.Read("closed.bias", []byte(text), devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 		if list.HasErrors() {
 			r.Fatalf("%v\n%s", list, text)
 		}

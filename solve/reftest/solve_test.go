@@ -21,7 +21,7 @@ const (
 // read resolves a text of this package's own making.
 func read(t testing.TB, name string, text []byte) *netlist.Circuit {
 	t.Helper()
-	c, list := netlist.Read(name, text, devices.Catalogue(), library{})
+	c, list := netlist.Read(name, text, devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 	if c == nil {
 		for _, d := range list {
 			t.Errorf("%s:%d:%d: %s", name, d.Span.Start.Line, d.Span.Start.Column, d.Message)
@@ -94,8 +94,3 @@ func node(t *testing.T, c *netlist.Circuit, name string) netlist.NodeID {
 func within(got, want, rel, abs float64) bool {
 	return math.Abs(got-want) <= max(rel*math.Abs(want), abs)
 }
-
-// library is the shelf that ships, and the files beside a text.
-type library struct{ netlist.Files }
-
-func (library) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }

@@ -11,11 +11,6 @@ import (
 	"biaswright/sweep/choose"
 )
 
-// withShelf is the shelf, and the files beside a text.
-type withShelf struct{ netlist.Files }
-
-func (withShelf) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
-
 // TestDemosHaveChosenValues opens again the resistor that sets each demo's current: what
 // ships is what a designer would choose from its series.
 func TestDemosHaveChosenValues(t *testing.T) {
@@ -32,7 +27,7 @@ func TestDemosHaveChosenValues(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			c, list := netlist.Read(file, text, devices.Catalogue(), withShelf{})
+			c, list := netlist.Read(file, text, devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 			if list.HasErrors() {
 				t.Fatal(list)
 			}

@@ -150,10 +150,8 @@ func (s *seeker) slopes() (*mat.Dense, bool) {
 		if err != nil {
 			return nil, false
 		}
-		width := t.Within
-		if t.Relative {
-			width *= math.Abs(t.Value)
-		}
+		low, high := t.Band()
+		width := (high - low) / 2
 		for col := range s.unknowns {
 			g := d[s.unknowns[col].slot] * s.ohms[col] / width
 			if math.IsNaN(g) || math.IsInf(g, 0) {

@@ -13,6 +13,7 @@ import (
 	"testing"
 
 	"biaswright/devices"
+	"biaswright/devices/shelf"
 	"biaswright/netlist"
 	"biaswright/netlist/quantity"
 	"biaswright/solve"
@@ -23,7 +24,7 @@ import (
 
 func read(t testing.TB, name, text string) *netlist.Circuit {
 	t.Helper()
-	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), withShelf{})
+	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 	if list.HasErrors() {
 		t.Fatalf("%s: %+v", name, list)
 	}

@@ -151,20 +151,9 @@ type draw struct {
 	follows bool // it follows others until drawn
 }
 
-// end is the number at one end of its tolerance. A percentage is of the number in
-// force.
+// end is the number at one end of its tolerance.
 func (d draw) end(c *netlist.Circuit, value float64, high bool) float64 {
-	b := &c.Slots[d.slot].Bounds
-	switch {
-	case b.Relative == 0 && high:
-		return b.High
-	case b.Relative == 0:
-		return b.Low
-	case high == (value >= 0): // the end further from 0
-		return value * (1 + b.Relative)
-	default:
-		return value * (1 - b.Relative)
-	}
+	return c.Slots[d.slot].Bounds.End(value, high)
 }
 
 // A trial judges combinations of values.
@@ -562,15 +551,7 @@ func (t *trial) lookAgainst(b *bench, p probe) (sight, bool) {
 	if gain.d == nil {
 		return sight{}, false // it has no number here, which the verdict says
 	}
-	ends, ok := t.turn(b, gain.d, p.up)
-	if len(ends) == 0 {
-		return sight{}, false // no tolerance moves it
-	}
-	g := sight{ends: append(slices.Clip(b.ends), ends...), failed: !ok}
-	if ok {
-		g.verdicts = t.verdicts(t.spread.state)
-	}
-	return g, true
+	return t.turned(b, gain.d, p.up)
 }
 
 // lookAgain turns the tolerances by the derivatives where lookAgainst has turned them to.
@@ -583,12 +564,21 @@ func (t *trial) lookAgain(p probe) (sight, bool) {
 	}) {
 		return sight{}, false
 	}
-	ends, ok := t.turn(b, now, p.up)
+	return t.turned(b, now, p.up)
+}
+
+// turned is what is seen with the tolerances turned. It reports false where none moves what
+// has the gain.
+func (t *trial) turned(b *bench, gain []float64, up bool) (sight, bool) {
+	ends, ok := t.turn(b, gain, up)
+	if len(ends) == 0 {
+		return sight{}, false
+	}
 	g := sight{ends: append(slices.Clip(b.ends), ends...), failed: !ok}
 	if ok {
 		g.verdicts = t.verdicts(t.spread.state)
 	}
-	return g, len(ends) > 0
+	return g, true
 }
 
 // gain is the derivative of left less right by slot; nil where there is none.

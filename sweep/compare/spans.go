@@ -107,18 +107,7 @@ func (m *mover) span(slots []netlist.SlotID) (Span, error) {
 // corner is the slots' values at the ends of their ranges, the high end where high says
 // so: of one that follows others, about the number that they have there.
 func (m *mover) corner(slots []netlist.SlotID, high func(netlist.SlotID) bool) []float64 {
-	end := func(id netlist.SlotID, number float64) float64 {
-		b := &m.c.Slots[id].Bounds
-		low, top := b.Low, b.High
-		if b.Relative != 0 {
-			low, top = number*(1-b.Relative), number*(1+b.Relative)
-			low, top = math.Min(low, top), math.Max(low, top)
-		}
-		if high(id) {
-			return top
-		}
-		return low
-	}
+	end := func(id netlist.SlotID, number float64) float64 { return m.c.Slots[id].Bounds.End(number, high(id)) }
 	values := m.c.Values()
 	for _, id := range slots {
 		values[id] = end(id, values[id])
@@ -202,11 +191,7 @@ func (m *mover) at(slots []netlist.SlotID, values []float64) (value, slope float
 	if list.HasErrors() {
 		return 0, 0, errors.New(list[0].Message)
 	}
-	near := map[netlist.NodeID]float64{}
-	for node, v := range m.nominal.NodeV {
-		near[netlist.NodeID(node)] = v
-	}
-	res, err := solve.Solve(moved, solve.Options{Near: near})
+	res, err := solve.Solve(moved, solve.Options{Near: m.nominal.Volts()})
 	if err != nil {
 		return 0, 0, fmt.Errorf("%s: %w", settings[0], err)
 	}

@@ -15,14 +15,9 @@ import (
 	"biaswright/sweep/hand"
 )
 
-// library is the shelf that ships, and the files beside a text.
-type library struct{ netlist.Files }
-
-func (library) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
-
 func read(t rapid.TB, name, text string) *netlist.Circuit {
 	t.Helper()
-	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), library{})
+	c, list := netlist.Read(name, []byte(text), devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 	if list.HasErrors() {
 		t.Fatalf("%s: %+v", name, list)
 	}

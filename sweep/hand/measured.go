@@ -351,7 +351,7 @@ func (f *fit) point(id netlist.SlotID, number float64) *solve.Point {
 	f.a.Circuit.Propagate(values)
 	s := f.s.Clone() // a point leans on its system
 	s.Apply(values)
-	res, err := solve.SolveSystem(s, solve.Options{Near: f.a.near()})
+	res, err := solve.SolveSystem(s, solve.Options{Near: f.a.Full.Volts()})
 	if err != nil || res.Point.Unstable {
 		return nil
 	}

@@ -43,7 +43,7 @@ type Rule struct {
 	Kind RuleKind
 	// Element is the transistor (Stiffness, Saturation, Switch) or the reference.
 	Element int
-	// Node is the base's (Stiffness, Reference), Bases the transistors fed there.
+	// Node is the base's (Stiffness, Reference, Switch), Bases the transistors fed there.
 	Node  netlist.NodeID
 	Bases []int
 	// Figure is a ratio, or volts for Saturation; Wanted is what the rule asks for: the
@@ -51,7 +51,7 @@ type Rule struct {
 	Figure, Wanted float64
 	// Beta is I_C/I_B, Emitter the emitter resistor and Divider the parallel
 	// resistance of the divider, in ohm (Stiffness). Amps is the reference's current
-	// and Base what the bases take, in A (Stiffness: Base alone).
+	// and Base what the bases take, in A (Stiffness, Switch: Base alone).
 	Beta, Emitter, Divider, Amps, Base float64
 	// Costs is by row what it costs here: the full solution over that without the
 	// bases' currents (Saturation: without the collector junction), less 1. NaN where
@@ -268,6 +268,7 @@ func (a *Answer) references(node netlist.NodeID) []Rule {
 	return out
 }
 
+// emitter is the node of a transistor's emitter.
 func (a *Answer) emitter(q int) netlist.NodeID {
 	e := &a.Circuit.Elements[q]
 	if a.Circuit.Parts[e.Part].Kind.PNP {

@@ -287,7 +287,7 @@ func (a *Answer) fillIn(fixed []fixing, amps float64) {
 // nearest solves for the point nearest to the full solution, of those that could be
 // stable if there are any.
 func (a *Answer) nearest(s *mna.System) (*solve.Point, error) {
-	res, err := solve.SolveSystem(s, solve.Options{Near: a.near()})
+	res, err := solve.SolveSystem(s, solve.Options{Near: a.Full.Volts()})
 	if err != nil {
 		return nil, err
 	}
@@ -297,15 +297,6 @@ func (a *Answer) nearest(s *mna.System) (*solve.Point, error) {
 		}
 	}
 	return res.Point, nil
-}
-
-// near are the full solution's node voltages.
-func (a *Answer) near() map[netlist.NodeID]float64 {
-	near := make(map[netlist.NodeID]float64, len(a.Full.NodeV))
-	for node := 1; node < len(a.Full.NodeV); node++ {
-		near[netlist.NodeID(node)] = a.Full.NodeV[node]
-	}
-	return near
 }
 
 // ideals are the fixed drops at a part of the way from the full solution's to the

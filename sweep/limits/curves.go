@@ -73,10 +73,7 @@ func (a *Answer) outward(name string, values []float64) (Curve, error) {
 // nominalVolts are the node voltages of the nominal point, but for those within a row of
 // the load, which are not there when the load is held.
 func (a *Answer) nominalVolts() map[netlist.NodeID]float64 {
-	out := map[netlist.NodeID]float64{}
-	for node, v := range a.Nominal.NodeV {
-		out[netlist.NodeID(node)] = v
-	}
+	out := a.Nominal.Volts()
 	c := a.Nominal.Circuit
 	for _, i := range c.Load {
 		chain := c.Elements[i].Chain

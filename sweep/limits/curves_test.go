@@ -14,15 +14,10 @@ import (
 	"biaswright/sweep/limits"
 )
 
-// withShelf are files beside a text, and the shelf.
-type withShelf struct{ netlist.Files }
-
-func (withShelf) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
-
 // A cell with two states is drawn in the one that was asked for: the curve passes
 // through the nominal point's own value and stays of its size around it.
 func TestCurveKeepsTheBranch(t *testing.T) {
-	c, list := netlist.Read("bootstrap.bias", []byte(shipped(t, "bootstrap.bias")), devices.Catalogue(), withShelf{})
+	c, list := netlist.Read("bootstrap.bias", []byte(shipped(t, "bootstrap.bias")), devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 	if list.HasErrors() {
 		t.Fatal(list[0].Message)
 	}

@@ -463,9 +463,9 @@ func TestHoldsBetweenTheLimits(t *testing.T) {
 	}
 }
 
-// Where contributions cancel no part is named: a cascoded pair whose emitter resistor and
-// junction undo each other, beside the Early effect of the mirror's output, which is what
-// moves the current (switched off, 95 % of the slope is gone).
+// Where contributions cancel no part is named: a sink into a mirror, in which emitter
+// resistor and junction undo each other, beside the Early effect of the mirror's output, which is what
+// moves the current: without it next to nothing is left of the slope.
 func TestCancellingPartsCarryNothing(t *testing.T) {
 	const text = `rail VCC = 10 V
 rail VB = 3 V
@@ -473,12 +473,24 @@ part q npn Vbe = 0.66 V at 2 mA, betaF = 150, VA = 60 V
 part p pnp Veb = 0.64 V at 1 mA, betaF = 90, VA = 40 V
 path VB -> R1 10k -> b
 path VCC -> Q2 p base=m -> m -> Q1 q base=b -> e -> RE 1k -> gnd
-path VCC -> Q3 p base=m -> out -> RL 400 -> gnd
-hold RL.I within 5%
+path VCC -> Q3 p%s base=m -> out -> RL 400 -> gnd
+hold RL.I within 5%%
 `
-	for _, r := range find(t, text).Regulation {
-		if r.Axis == "VCC.V" && (r.Through != "" || !math.IsNaN(r.Share)) {
-			t.Errorf("VCC.V acts through %s, %g of it", r.Through, r.Share)
+	slope := func(text string) limits.Regulation {
+		for _, r := range find(t, text).Regulation {
+			if r.Axis == "VCC.V" {
+				return r
+			}
 		}
+		t.Fatal("VCC.V has no slope")
+		return limits.Regulation{}
+	}
+	r := slope(fmt.Sprintf(text, ""))
+	if r.Through != "" || !math.IsNaN(r.Share) {
+		t.Errorf("VCC.V acts through %s, %g of it", r.Through, r.Share)
+	}
+	flat := slope(strings.Replace(fmt.Sprintf(text, "f"), "path VB", "part pf pnp Veb = 0.64 V at 1 mA, betaF = 90\npath VB", 1))
+	if math.Abs(flat.Relative) > 0.1*math.Abs(r.Relative) {
+		t.Errorf("without Q3's Early effect the slope is %g of %g: it is not what moves the current", flat.Relative, r.Relative)
 	}
 }

@@ -15,14 +15,9 @@ import (
 	"biaswright/sweep/limits"
 )
 
-// library is the shelf, and files beside a text.
-type library struct{ netlist.Files }
-
-func (library) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
-
 func circuit(t testing.TB, text string) *netlist.Circuit {
 	t.Helper()
-	c, list := netlist.Read("test.bias", []byte(text), devices.Catalogue(), library{})
+	c, list := netlist.Read("test.bias", []byte(text), devices.Catalogue(), netlist.Files{Shelves: shelf.All()})
 	if list.HasErrors() {
 		t.Fatalf("%v\n%s", list, text)
 	}

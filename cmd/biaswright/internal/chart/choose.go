@@ -18,7 +18,7 @@ func Choose(a *render.ChooseAnswer) (*figure.Figure, error) {
 	}
 	// Points: what the axis and the verdicts want, and the names beside them.
 	const least, axes, most = 760.0, 560.0, 1200.0
-	var panels []panel
+	var panels []*lines
 	var tints []swatch
 	list := render.ShortList(a.Found)
 	width := least
@@ -37,15 +37,8 @@ func Choose(a *render.ChooseAnswer) (*figure.Figure, error) {
 		}
 		panels = append(panels, choicesOf(a.Found, list, i))
 	}
-	if len(panels) == 0 {
-		return nil, ErrNothing
-	}
-	s := newSheet(width, titleOf(a.Circuit, a.File), "The choices, each from its nominal value (dot) to where it is worst over the stated ranges and tolerances (bar)")
-	s.legend(tints...)
-	for _, p := range panels {
-		s.row(1, p)
-	}
-	return s.done(), nil
+	return stacked(newSheet(width, titleOf(a.Circuit, a.File),
+		"The choices, each from its nominal value (dot) to where it is worst over the stated ranges and tolerances (bar)"), tints, panels)
 }
 
 // choicesOf is the panel of one requirement.

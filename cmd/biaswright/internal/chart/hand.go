@@ -13,7 +13,7 @@ import (
 // band and what was measured. The error is ErrNothing.
 func Hand(a *render.HandAnswer) (*figure.Figure, error) {
 	const width = 760.0 // points
-	var panels []panel
+	var panels []*lines
 	var tints []swatch
 	for i := range a.Hand.Rows {
 		if w := newWay(a.Hand, &a.Hand.Rows[i]); w != nil {
@@ -23,15 +23,7 @@ func Hand(a *render.HandAnswer) (*figure.Figure, error) {
 			}
 		}
 	}
-	if len(panels) == 0 {
-		return nil, ErrNothing
-	}
-	s := newSheet(width, titleOf(a.Circuit, a.File), "From the hand calculation to the full solution")
-	s.legend(tints...)
-	for _, p := range panels {
-		s.row(1, p)
-	}
-	return s.done(), nil
+	return stacked(newSheet(width, titleOf(a.Circuit, a.File), "From the hand calculation to the full solution"), tints, panels)
 }
 
 // newWay is the steps of one quantity; nil where it has no hand value.

@@ -11,7 +11,7 @@ import (
 	"biaswright/sweep/limits"
 )
 
-// curvePoints is how many steps a curve is solved at: a step is two points wide, less
+// curvePoints is how many steps a curve is solved at: a step is about two points wide, less
 // than the eye asks for.
 const curvePoints = 181
 

@@ -26,6 +26,18 @@ type entry struct {
 	draw func(f *figure.Figure, x *axis, middle float64, more bool)
 }
 
+// stacked puts panels of lines below each other on a sheet. The error is ErrNothing.
+func stacked(s *sheet, tints []swatch, panels []*lines) (*figure.Figure, error) {
+	if len(panels) == 0 {
+		return nil, ErrNothing
+	}
+	s.legend(tints...)
+	for _, p := range panels {
+		s.row(1, p)
+	}
+	return s.done(), nil
+}
+
 // lineHeight is how tall a line is, in points.
 const lineHeight = 24.0
 

@@ -119,8 +119,8 @@ func (s *sheet) done() *figure.Figure {
 	return s.f
 }
 
-// sortBy sorts stably. What package slices has for that is compiled anew for each type,
-// 8 kB of program a time.
+// sortBy sorts stably. What package slices has for that would be compiled anew for each
+// type, into a larger program.
 func sortBy[T any](list []T, key func(T) float64) {
 	sort.SliceStable(list, func(i, j int) bool { return key(list[i]) < key(list[j]) })
 }

@@ -66,8 +66,8 @@ func (e *writeError) Unwrap() error { return e.err }
 // the exit code.
 func Main(args []string, in io.Reader, out, errs io.Writer) int {
 	if os.Getenv("GOGC") == "" {
-		// A command holds little and lives for milliseconds: a fifth of them would go into
-		// collecting what the system takes back at its end.
+		// A command holds little and lives for milliseconds: some of them would go
+		// into collecting what the system takes back at its end.
 		const seldom = 400 // percent of growth before the next collection
 		debug.SetGCPercent(seldom)
 	}

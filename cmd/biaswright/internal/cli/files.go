@@ -76,9 +76,9 @@ type library struct {
 	r *runner
 }
 
-func (r *runner) library() netlist.Source { return library{r: r} }
-
-func (library) Shelf(name string) ([]byte, bool) { return shelf.Text(name) }
+func (r *runner) library() netlist.Source {
+	return library{netlist.Files{Shelves: shelf.All()}, r}
+}
 
 func (l library) Open(from, path string) (string, []byte, error) {
 	name, text, err := l.Files.Open(from, path)
@@ -160,7 +160,8 @@ func (r *runner) replace(name string, text []byte, safely bool) (err error) {
 }
 
 // create writes a file, new or in the place of an old one; no part of it is left where
-// that fails. What is no ordinary file, such as a pipe, is written to as it is.
+// that fails. What is no ordinary file, such as a pipe, is written to as it is. An old one is
+// replaced safely, or not, as replace has it.
 func (r *runner) create(name string, text []byte, safely bool) error {
 	info, err := os.Stat(name)
 	switch {

@@ -6,8 +6,8 @@ import (
 	"math"
 )
 
-// A palette gives a picture an index of its colours, which makes it a third as large and
-// much sooner written: the paints as they are, and what lies between them at an edge
+// A palette gives a picture an index of its colours, which makes it smaller and sooner
+// written: the paints as they are, and what lies between them at an edge
 // in sixteen steps a channel. It fills as colours come.
 type palette struct {
 	colours []color.NRGBA

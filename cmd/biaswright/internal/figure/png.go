@@ -25,8 +25,8 @@ func Pixels(f *Figure) float64 {
 // WritePNG writes the figure as PNG (ISO/IEC 15948) in the light scheme, so many Pixels a
 // point. The file is put together here, and not by image/png, since that wants all
 // pixels and the whole palette before it begins: strips are drawn side by side while
-// those above them are compressed, in half the time and a third of the memory. The same
-// figure gives the same bytes.
+// those above them are compressed, and never stand in memory together. The same figure
+// gives the same bytes.
 func WritePNG(w io.Writer, f *Figure) error {
 	scale := Pixels(f)
 	width, height := int(math.Round(f.Width*scale)), int(math.Round(f.Height*scale))
@@ -38,7 +38,9 @@ func WritePNG(w io.Writer, f *Figure) error {
 	whole := newPalette()
 	inStrips(f, scale, width, height, func(rows []uint8, p *palette) {
 		rename(rows, whole.join(p))
-		_, err = compress.Write(rows)
+		if err == nil {
+			_, err = compress.Write(rows)
+		}
 	})
 	if err == nil {
 		err = compress.Close()

@@ -81,7 +81,7 @@ func (a *CompareAnswer) quantity() string {
 		case name == "":
 			name = t.Target.Q.Text
 		case name != t.Target.Q.Text:
-			return "what is aimed at"
+			return "attained"
 		}
 	}
 	return name

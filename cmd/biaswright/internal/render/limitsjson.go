@@ -18,6 +18,7 @@ type limitsJSON struct {
 	Points     *[]pointJSON     `json:"points,omitempty"` // empty, with a failure
 	Failure    *failureJSON     `json:"failure,omitempty"`
 	Hold       *holdJSON        `json:"hold,omitempty"`
+	Unstable   *bool            `json:"unstable,omitempty"`
 	Limits     []limitJSON      `json:"limits,omitempty"`
 	Regulation []regulationJSON `json:"regulation,omitempty"`
 	Load       *loadAnswerJSON  `json:"load,omitempty"`
@@ -97,6 +98,7 @@ func LimitsJSON(a *LimitsAnswer) any {
 		j.Points, j.Failure = &[]pointJSON{}, failure(a.Failure)
 		return j
 	}
+	j.Unstable = &a.Limits.Nominal.Unstable
 	h := &a.Limits.Hold
 	j.Hold = &holdJSON{h.Q.Text, h.Q.Unit.String(), num(h.Nominal), [2]num{num(h.Low), num(h.High)}}
 	for i := range a.Limits.Limits {
