@@ -21,6 +21,7 @@ func BenchmarkChartCommand(b *testing.B) {
 		{"solve", []string{"solve", file}},
 		{"sweep", []string{"sweep", file, "--over", "RE=43,47,51", "--over", "VCC=0V..24V"}},
 		{"limits", []string{"limits", file}},
+		{"limits of a bank", []string{"limits", "../../testdata/circuits/sensor-bank.bias"}}, // the largest sheet that ships
 	} {
 		for _, chart := range []string{"plain", "chart.svg", "chart.png"} {
 			args := one.args
